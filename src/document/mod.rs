@@ -1,0 +1,1 @@
+//! The places in documents where questions stand and answers go.

@@ -1,0 +1,1 @@
+//! Methods: numbers, each with the plan that justifies it.

@@ -1,0 +1,1 @@
+//! The language: text to syntax tree.

@@ -1,0 +1,12 @@
+//! Numbers that keep their digits: about 31 decimal digits of precision, and
+//! probabilities that hold both tails.
+//!
+//! A probability near 1 is as precise as one near 0, because [`Chance`] holds
+//! "works" and "fails" side by side and every operation computes the smaller
+//! of the two from sums and products of positive terms.
+
+mod chance;
+mod real;
+
+pub use chance::Chance;
+pub use real::Real;

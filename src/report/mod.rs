@@ -1,0 +1,1 @@
+//! Problems as text and JSON, and what each code means.

@@ -1,0 +1,11 @@
+//! Where text comes from and what can be said about a place in it.
+//!
+//! Every later layer points at text with a [`Span`]; every complaint is a
+//! [`Problem`] with a place, a cause and a mend. Nothing here knows the
+//! language or prints anything.
+
+mod problem;
+mod span;
+
+pub use problem::{Code, Label, Level, Problem};
+pub use span::{SourceFile, Sources, Span};

@@ -1,0 +1,1 @@
+//! Steps: formula trees and their renderings.
