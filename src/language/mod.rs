@@ -1,1 +1,23 @@
 //! The language: text to syntax tree.
+//!
+//! `token` cuts a line into tokens with nom, `expr`, `clause` and `line` make
+//! a [`Tree`] of them, `print` writes a tree back as text, and `shape` knows
+//! what an answer looks like. Nothing here knows what a name means.
+
+mod clause;
+mod expr;
+mod line;
+mod print;
+mod read;
+mod shape;
+mod token;
+mod tree;
+pub mod words;
+
+pub use print::print;
+pub use read::{Source, read_block, read_expression, read_question};
+pub use shape::is_answer;
+pub use tree::*;
+pub use tree::written as written_name;
+
+pub(crate) use clause::unknown_clause;

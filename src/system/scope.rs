@@ -1,0 +1,300 @@
+//! Names in expressions: every one must be known, none may rest on itself, and
+//! a number is used as a figure or as a thing, not as both.
+
+use super::model::{DefId, Fault, Model};
+use crate::language::{Expr, ExprId, Line, Need, Sym, words};
+use crate::source::{Code, Problem, Span};
+use unicode_security::skeleton;
+
+/// What a node is used as.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+enum Use {
+    /// In arithmetic, in a clause, as a count.
+    Figure,
+    /// In a structure.
+    Thing,
+    /// As another name, as a parameter, as an argument of a question.
+    Open,
+}
+
+/// Two keys under which names that look alike are equal: one without case, one
+/// by the shapes of letters (Unicode Technical Standard 39 beyond ASCII).
+pub(super) fn look_alike_keys(name: &str) -> Vec<String> {
+    if name.is_ascii() {
+        let lower = name.to_ascii_lowercase();
+        let shapes: String = name
+            .chars()
+            .map(|c| match c {
+                'I' | '1' | 'l' => 'l',
+                'O' | '0' => 'o',
+                c => c.to_ascii_lowercase(),
+            })
+            .collect();
+        if shapes == lower {
+            return vec![lower];
+        }
+        // The mark keeps the two kinds of key apart.
+        return vec![lower, format!("~{shapes}")];
+    }
+    let shapes: String = skeleton(name).collect::<String>().to_lowercase();
+    vec![name.to_lowercase(), shapes.clone(), format!("~{shapes}")]
+}
+
+impl Model<'_> {
+    /// Looks at every name in every line once: unknown names, circles, uses both ways.
+    pub(super) fn check_names(&mut self) {
+        let mut uses: Vec<(Option<Span>, Option<Span>)> = vec![(None, None); self.defs.len()];
+        let mut below: Vec<Vec<DefId>> = vec![Vec::new(); self.defs.len()];
+        let mut only_back = true;
+        for index in 0..self.tree.statements.len() {
+            let statement = &self.tree.statements[index];
+            let params: Vec<Sym> = match &statement.line {
+                Line::Define { params: Some(params), .. } => params.iter().map(|(s, _)| *s).collect(),
+                _ => Vec::new(),
+            };
+            let owners: Vec<DefId> = match &statement.line {
+                Line::Define { names, .. } => names.iter().filter_map(|(s, _)| self.lookup(*s)).collect(),
+                _ => Vec::new(),
+            };
+            for root in roots(&statement.line) {
+                self.walk(root, &params, &mut |model, expr, def, used| {
+                    let slot = &mut uses[def.0 as usize];
+                    let place = model.tree.span(expr);
+                    match used {
+                        Use::Figure => slot.0 = slot.0.or(Some(place)),
+                        Use::Thing => slot.1 = slot.1.or(Some(place)),
+                        Use::Open => {}
+                    }
+                    for owner in &owners {
+                        below[owner.0 as usize].push(def);
+                        only_back &= def < *owner;
+                    }
+                });
+            }
+        }
+        if !only_back {
+            self.find_circles(&below);
+        }
+        self.check_both_ways(&uses);
+    }
+
+    /// Calls `found` with every name under `root` that is defined.
+    fn walk(&mut self, root: ExprId, params: &[Sym], found: &mut dyn FnMut(&Model<'_>, ExprId, DefId, Use)) {
+        let mut stack = vec![(root, Use::Open)];
+        while let Some((id, used)) = stack.pop() {
+            match self.tree.expr(id) {
+                Expr::Literal(_) | Expr::Broken => {}
+                Expr::Name(sym) => {
+                    if params.contains(&sym) {
+                        continue;
+                    }
+                    match self.name_or_prefix(sym, params) {
+                        Some(Bound::Def(def)) => found(self, id, def, used),
+                        Some(Bound::Path(def)) => found(self, id, def, Use::Open),
+                        Some(Bound::Param) => {}
+                        None if used == Use::Open && self.tree.names.text(sym).contains('[') => {}
+                        None => self.unknown_name(id, sym, params),
+                    }
+                }
+                Expr::WithUnit(x, _) | Expr::Negate(x) | Expr::Choice(_, x) => stack.push((x, Use::Figure)),
+                Expr::Group(x) => stack.push((x, used)),
+                Expr::Arith(_, a, b) => stack.extend([(a, Use::Figure), (b, Use::Figure)]),
+                Expr::Series(l) | Expr::Parallel(l) | Expr::And(l) | Expr::Or(l) => {
+                    stack.extend(self.tree.list(l).iter().map(|x| (*x, Use::Thing)));
+                }
+                Expr::AtLeast(need, l) => {
+                    if let Need::Count(k) = need {
+                        stack.push((k, Use::Figure));
+                    }
+                    stack.extend(self.tree.list(l).iter().map(|x| (*x, Use::Thing)));
+                }
+                Expr::Counted(n, x) => stack.extend([(n, Use::Figure), (x, Use::Thing)]),
+                Expr::Copy(x) | Expr::FailsWhen(x) => stack.push((x, Use::Thing)),
+                Expr::Settled(x, _) => stack.push((x, used)),
+                Expr::Call(word, args) => {
+                    if let Some(def) = self.lookup(word).filter(|d| self.def(*d).has_params) {
+                        found(self, id, def, Use::Open);
+                    }
+                    let inner = match self.tree.names.text(word) {
+                        w if words::FUNCTIONS.contains(&w) => Use::Figure,
+                        _ => Use::Open,
+                    };
+                    stack.extend(self.tree.list(args).iter().map(|x| (*x, inner)));
+                }
+                Expr::Item(clauses) => self.clause_values(clauses, &mut stack),
+                Expr::Changed(copy, clauses) => {
+                    stack.push((copy, Use::Thing));
+                    self.clause_values(clauses, &mut stack);
+                }
+                Expr::Mixed(mixed) => {
+                    self.mixed_operators(id, mixed);
+                    if let Some(first) = self.tree.mixed[mixed as usize].readings.first() {
+                        stack.push((*first, Use::Thing));
+                    }
+                }
+            }
+        }
+    }
+
+    fn clause_values(&self, clauses: crate::language::List, stack: &mut Vec<(ExprId, Use)>) {
+        for clause in self.tree.clauses(clauses) {
+            if clause.word != words::ClauseWord::Source {
+                stack.extend(clause.value.map(|v| (v, Use::Figure)));
+            }
+            stack.extend(clause.over.map(|v| (v, Use::Figure)));
+        }
+    }
+
+    /// What a name is bound to: itself, or the longest defined name that it begins with.
+    pub(super) fn name_or_prefix(&self, sym: Sym, params: &[Sym]) -> Option<Bound> {
+        if let Some(def) = self.lookup(sym) {
+            return Some(Bound::Def(def));
+        }
+        let text = self.tree.names.text(sym);
+        for (at, _) in text.rmatch_indices(['.', '[']) {
+            let Some(prefix) = self.tree.names.find(&text[..at]) else { continue };
+            if params.contains(&prefix) {
+                return Some(Bound::Param);
+            }
+            if let Some(def) = self.lookup(prefix) {
+                return Some(Bound::Path(def));
+            }
+        }
+        None
+    }
+
+    fn unknown_name(&mut self, id: ExprId, sym: Sym, params: &[Sym]) {
+        let text = self.tree.names.text(sym);
+        let mut problem = Problem::error(Code::UnknownName, self.tree.span(id), format!("unknown name \"{text}\""));
+        let near = words::nearest(text, params.iter().map(|p| self.tree.names.text(*p)));
+        problem = match near {
+            Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
+            None => self.with_nearest(problem, text),
+        };
+        if self.units.hours(text).is_some() {
+            problem = problem.mend(format!("a unit stands directly after its number, as in `4 {text}`"));
+        }
+        let fault = self.fault(problem);
+        self.faulty.insert(id, fault);
+    }
+
+    /// A line that mixes operators; what its readings give is added when all else is known.
+    fn mixed_operators(&mut self, id: ExprId, mixed: u32) {
+        let found = &self.tree.mixed[mixed as usize];
+        let operators: Vec<String> = found.operators.iter().map(|o| format!("`{o}`")).collect();
+        let message = format!("{} have no precedence between them", operators.join(" and "));
+        let mut problem = Problem::error(Code::MixedOperators, self.tree.span(id), message);
+        if found.readings.len() < 2 {
+            problem = match found.readings.first() {
+                Some(only) => problem.mend(format!("write `{}`", self.text_of(*only))),
+                None => problem.mend("put parentheses around what belongs together"),
+            };
+        }
+        let fault = self.fault(problem);
+        self.faulty.insert(id, fault);
+    }
+
+    fn find_circles(&mut self, below: &[Vec<DefId>]) {
+        // 0 not seen, 1 on the way, 2 done
+        let mut state = vec![0_u8; below.len()];
+        for start in 0..below.len() {
+            if state[start] != 0 {
+                continue;
+            }
+            state[start] = 1;
+            let mut path = vec![(start, 0_usize)];
+            while let Some((at, next)) = path.last_mut() {
+                let Some(child) = below[*at].get(*next).map(|d| d.0 as usize) else {
+                    state[*at] = 2;
+                    path.pop();
+                    continue;
+                };
+                *next += 1;
+                match state[child] {
+                    0 => {
+                        state[child] = 1;
+                        path.push((child, 0));
+                    }
+                    1 => {
+                        let from = path.iter().position(|(d, _)| *d == child).unwrap_or(0);
+                        let circle: Vec<DefId> = path[from..].iter().map(|(d, _)| DefId(*d as u32)).collect();
+                        self.circle(&circle);
+                    }
+                    _ => {}
+                }
+            }
+        }
+    }
+
+    fn circle(&mut self, circle: &[DefId]) {
+        // A long way round is shown by its ends.
+        const SHOWN: usize = 6;
+        let mut names: Vec<String> = circle.iter().take(SHOWN).map(|d| self.written(self.def(*d).name)).collect();
+        if circle.len() > SHOWN {
+            names.push(format!("… ({} more)", circle.len() - SHOWN));
+        }
+        names.push(names[0].clone());
+        let message = if circle.len() == 1 {
+            format!("`{}` rests on itself", names[0])
+        } else {
+            format!("definitions go in a circle: {}", names.join(" -> "))
+        };
+        let mut problem = Problem::error(Code::Circle, self.def(circle[0]).span, message);
+        for def in circle.iter().skip(1).take(SHOWN) {
+            problem = problem.label(self.def(*def).span, "on the way round");
+        }
+        let problem = problem.mend("define one of them without the others");
+        let fault = self.fault(problem);
+        for def in circle {
+            self.defs[def.0 as usize].broken = Some(fault);
+        }
+    }
+
+    fn check_both_ways(&mut self, uses: &[(Option<Span>, Option<Span>)]) {
+        for (index, used) in uses.iter().enumerate() {
+            let (Some(figure), Some(thing)) = *used else { continue };
+            let def = &self.defs[index];
+            let number = def.value.is_some_and(|v| {
+                matches!(
+                    self.tree.expr(self.tree.inside_groups(v)),
+                    Expr::Literal(_) | Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..)
+                )
+            });
+            if !number || def.broken.is_some() {
+                continue;
+            }
+            let (name, span) = (self.written(def.name), def.span);
+            let fault = self.fault(
+                Problem::error(Code::UsedBothWays, span, format!("`{name}` is used as a figure and as a thing"))
+                    .label(figure, "a figure here")
+                    .label(thing, "a thing here")
+                    .mend(format!("define the figure, and the thing from it on a line of its own: `{name}_item = {name} * 1`")),
+            );
+            self.defs[index].broken = Some(fault);
+        }
+    }
+
+    /// The noted fault of a node, if it has one.
+    pub(super) fn faulty(&self, id: ExprId) -> Option<Fault> {
+        self.faulty.get(&id).copied()
+    }
+}
+
+/// What a name is bound to.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub(super) enum Bound {
+    Def(DefId),
+    /// A defined name, then a path of copies or a figure under it.
+    Path(DefId),
+    Param,
+}
+
+/// The expressions of a line.
+fn roots(line: &Line) -> Vec<ExprId> {
+    match line {
+        Line::Define { value, .. } | Line::Ask { value, .. } | Line::Digits(value) | Line::Year(value) => vec![*value],
+        Line::Require { left, right, .. } => vec![*left, *right],
+        Line::Mission(phases) => phases.iter().flat_map(|p| [Some(p.amount), p.stress]).flatten().collect(),
+        Line::Exposure(_) | Line::Attribute(_) | Line::Broken(_) => Vec::new(),
+    }
+}
