@@ -6,7 +6,11 @@
 //! of the two from sums and products of positive terms.
 
 mod chance;
+mod constants;
+mod functions;
 mod real;
+#[cfg(test)]
+mod testing;
 
 pub use chance::Chance;
 pub use real::Real;
