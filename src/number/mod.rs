@@ -4,13 +4,17 @@
 //! A probability near 1 is as precise as one near 0, because [`Chance`] holds
 //! "works" and "fails" side by side and every operation computes the smaller
 //! of the two from sums and products of positive terms.
+//!
+//! [`Decimal`] is how a number comes in, exactly as written.
 
 mod chance;
 mod constants;
+mod decimal;
 mod functions;
 mod real;
 #[cfg(test)]
 mod testing;
 
 pub use chance::Chance;
+pub use decimal::Decimal;
 pub use real::Real;
