@@ -72,4 +72,76 @@ impl Chance {
             self.works * then.fails + self.fails * otherwise.fails,
         )
     }
+
+    /// From a cumulative hazard `h`, zero or more: works with exp(-h), fails
+    /// with 1 - exp(-h), both to full relative precision. Undefined below zero.
+    pub fn from_hazard(hazard: Real) -> Chance {
+        if hazard.is_negative() {
+            return Chance { works: Real::from(f64::NAN), fails: Real::from(f64::NAN) };
+        }
+        Chance::new((-hazard).exp(), -(-hazard).exp_m1())
+    }
+
+    /// The cumulative hazard -ln(works), to full relative precision however
+    /// close to 0 or 1 it works; infinite where it cannot work.
+    pub fn hazard(self) -> Real {
+        if self.fails < Real::from(0.5) { -(-self.fails).ln_1p() } else { -self.works.ln() }
+    }
+
+    /// works^n for an `n` of zero or more: n independent ones in series, or
+    /// one whose exposure is stretched n times at a constant rate.
+    ///
+    /// "Fails" is to full relative precision; the relative error of "works" is
+    /// that of any power, 2^-96 times 1 + the hazard.
+    #[must_use]
+    pub fn power(self, n: Real) -> Chance {
+        // Apart, because infinity times zero is undefined.
+        if n.is_zero() { Chance::PERFECT } else { Chance::from_hazard(self.hazard() * n) }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::super::testing::{Random, Wide, relative_error, wide};
+    use super::*;
+
+    #[test]
+    fn hazards_keep_both_tails() {
+        let mut random = Random(10);
+        for _ in 0..1000 {
+            let hazard = random.sized(-900, 9);
+            let chance = Chance::from_hazard(hazard);
+            let fails = -(-wide(hazard)).exp_m1();
+            // One function each, to its documented 2^-96.
+            let tolerance = 2f64.powi(-96);
+            assert!(relative_error(chance.fails(), &fails) <= tolerance, "{hazard:?}");
+            // The way back: the inverse's conditioning is at most 1 on the
+            // smaller side, so that the two errors add up.
+            let error = relative_error(chance.hazard(), &wide(hazard));
+            assert!(error <= 2.0 * tolerance, "{hazard:?}: {error:e}");
+        }
+        assert_eq!(Chance::from_hazard(Real::ZERO), Chance::PERFECT);
+        assert_eq!(Chance::from_hazard(Real::from(f64::INFINITY)), Chance::HOPELESS);
+        assert_eq!(Chance::HOPELESS.hazard().hi(), f64::INFINITY);
+        assert!(Chance::PERFECT.hazard().is_zero());
+        assert!(Chance::from_hazard(Real::from(-1.0)).works().hi().is_nan());
+    }
+
+    #[test]
+    fn powers_keep_both_tails() {
+        let mut random = Random(11);
+        for _ in 0..300 {
+            let fails = random.sized(-300, -1);
+            let n = 1 + random.bits() % 50;
+            let chance = Chance::new(Real::ONE - fails, fails).power(Real::from_u64(n));
+            let log = (-wide(fails)).ln_1p() * Wide::from(n);
+            // The documented error, for hazards of 35 at most.
+            let tolerance = 2f64.powi(-96) * 36.0;
+            assert!(relative_error(chance.fails(), &-log.exp_m1()) <= tolerance, "{fails:?} {n}");
+            assert!(relative_error(chance.works(), &log.exp()) <= tolerance, "{fails:?} {n}");
+        }
+        assert_eq!(Chance::HOPELESS.power(Real::ZERO), Chance::PERFECT);
+        assert_eq!(Chance::HOPELESS.power(Real::ONE), Chance::HOPELESS);
+        assert_eq!(Chance::PERFECT.power(Real::from(9.0)), Chance::PERFECT);
+    }
 }

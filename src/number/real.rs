@@ -45,6 +45,11 @@ impl Real {
     /// 1.
     pub const ONE: Real = Real { hi: 1.0, lo: 0.0 };
 
+    /// `hi + lo` as they stand, for constants that are in normal form already.
+    pub(super) const fn pair(hi: f64, lo: f64) -> Real {
+        Real { hi, lo }
+    }
+
     /// `hi + lo`, brought into normal form.
     pub fn from_parts(hi: f64, lo: f64) -> Real {
         let (hi, lo) = two_sum(hi, lo);
