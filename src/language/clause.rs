@@ -205,11 +205,8 @@ impl Reader<'_> {
 
 /// The error for a word that begins no clause.
 pub(crate) fn unknown_clause<'a>(span: Span, text: &str, declared: impl Iterator<Item = &'a str>) -> Problem {
-    let known = words::CLAUSES
-        .iter()
-        .map(|(w, _)| *w)
-        .chain(words::LATER_CLAUSES.iter().copied())
-        .chain(declared);
+    let known =
+        words::CLAUSES.iter().map(|(w, _)| *w).chain(words::LATER_CLAUSES.iter().copied()).chain(declared);
     let problem = Problem::error(Code::UnknownClause, span, format!("no clause begins with `{text}`"));
     match words::nearest(text, known) {
         Some(near) => problem.mend(format!("did you mean `{near}`?")),

@@ -106,7 +106,10 @@ impl Level {
 
     /// Whether an entry begins here.
     fn at_start(&self) -> bool {
-        self.items.is_empty() && self.operands.is_empty() && self.operators.is_empty() && self.prefixes.is_empty()
+        self.items.is_empty()
+            && self.operands.is_empty()
+            && self.operators.is_empty()
+            && self.prefixes.is_empty()
     }
 }
 
@@ -163,8 +166,12 @@ impl Reader<'_> {
     pub(crate) fn unexpected(&self, wanted: &str) -> Box<Problem> {
         let place = self.peek_span();
         Box::new(match self.peek() {
-            None => Problem::error(Code::UnfinishedLine, place, format!("the line ends where {wanted} should stand"))
-                .mend(format!("add {wanted}, or take away what is left open")),
+            None => Problem::error(
+                Code::UnfinishedLine,
+                place,
+                format!("the line ends where {wanted} should stand"),
+            )
+            .mend(format!("add {wanted}, or take away what is left open")),
             Some(Tok::Both) => later(place, "`<->`"),
             Some(tok) => {
                 let what = self.describe(tok);
@@ -304,7 +311,11 @@ impl Reader<'_> {
                         return Ok(());
                     }
                 }
-                Some(Tok::Close) if matches!(level.opened, Opened::Call(_)) && level.at_start() && level.entries.is_empty() => {
+                Some(Tok::Close)
+                    if matches!(level.opened, Opened::Call(_))
+                        && level.at_start()
+                        && level.entries.is_empty() =>
+                {
                     self.at += 1;
                     let level = levels.pop().expect("a call level is above the root");
                     let done = self.close(level, span)?;
@@ -331,8 +342,12 @@ impl Reader<'_> {
             "fails" if self.word(1) == Some("when") => {
                 if !level.at_start() || !level.chain.is_empty() || level.failing {
                     return Err(Box::new(
-                        Problem::error(Code::MixedOperators, span, "`fails when` reaches to the end of its line or parenthesis")
-                            .mend("put it in parentheses: `A -> (fails when E1 and E2)`"),
+                        Problem::error(
+                            Code::MixedOperators,
+                            span,
+                            "`fails when` reaches to the end of its line or parenthesis",
+                        )
+                        .mend("put it in parentheses: `A -> (fails when E1 and E2)`"),
                     ));
                 }
                 self.at += 2;
@@ -401,8 +416,12 @@ impl Reader<'_> {
             return self.unexpected("a name, a number or `(`");
         }
         Box::new(
-            Problem::error(Code::ReservedWord, span, format!("`{text}` is a word of the language and no name"))
-                .mend(format!("write \"{text}\" in double quotes if a thing is called so")),
+            Problem::error(
+                Code::ReservedWord,
+                span,
+                format!("`{text}` is a word of the language and no name"),
+            )
+            .mend(format!("write \"{text}\" in double quotes if a thing is called so")),
         )
     }
 
@@ -536,8 +555,12 @@ impl Reader<'_> {
                 Prefix::Of(need, at) => {
                     if !matches!(self.tree.expr(done), Expr::Counted(..)) {
                         return Err(Box::new(
-                            Problem::error(Code::UnexpectedToken, span, "after `of` stands how many there are, or a list")
-                                .mend("write `2 of 3 pump` for copies of one, `2 of (A, B, C)` for a list"),
+                            Problem::error(
+                                Code::UnexpectedToken,
+                                span,
+                                "after `of` stands how many there are, or a list",
+                            )
+                            .mend("write `2 of 3 pump` for copies of one, `2 of (A, B, C)` for a list"),
                         ));
                     }
                     let members = self.tree.add_list(&[done]);
@@ -572,13 +595,19 @@ impl Reader<'_> {
             }
             self.at += 1;
             if self.accept(Tok::Open).is_none() {
-                return Err(Box::new(self.unexpected("`(`").mend("name the parts in parentheses: `sharing (psu, bus)`")));
+                return Err(Box::new(
+                    self.unexpected("`(`").mend("name the parts in parentheses: `sharing (psu, bus)`"),
+                ));
             }
             loop {
                 match self.peek() {
                     Some(Tok::Name { sym, .. }) => {
                         let entry = (sym, self.peek_span());
-                        if sharing { settles.sharing.push(entry) } else { settles.separate.push(entry) }
+                        if sharing {
+                            settles.sharing.push(entry)
+                        } else {
+                            settles.separate.push(entry)
+                        }
                         self.at += 1;
                     }
                     _ => return Err(self.unexpected("the name of a part")),
@@ -623,9 +652,15 @@ impl Reader<'_> {
         let logic = matches!(chain, Chain::And | Chain::Or);
         if logic != level.failing {
             let (message, mend) = if logic {
-                ("`and` and `or` speak of failures and stand after `fails when` only", "write `->` where all must work, `//` where any does, or begin with `fails when`")
+                (
+                    "`and` and `or` speak of failures and stand after `fails when` only",
+                    "write `->` where all must work, `//` where any does, or begin with `fails when`",
+                )
             } else {
-                ("`->` and `//` do not stand in `fails when`", "give the structure a name of its own and use the name here, or write `and` and `or`")
+                (
+                    "`->` and `//` do not stand in `fails when`",
+                    "give the structure a name of its own and use the name here, or write `and` and `or`",
+                )
             };
             return Err(Box::new(Problem::error(Code::UnexpectedToken, span, message).mend(mend)));
         }
@@ -645,8 +680,12 @@ impl Reader<'_> {
                 Ok(true)
             }
             _ => Err(Box::new(
-                Problem::error(Code::UnexpectedToken, span, "before `of` stands one whole number, a name of one, `all` or `any`")
-                    .mend("put a calculation in parentheses: `(k + 1) of 5 pump`"),
+                Problem::error(
+                    Code::UnexpectedToken,
+                    span,
+                    "before `of` stands one whole number, a name of one, `all` or `any`",
+                )
+                .mend("put a calculation in parentheses: `(k + 1) of 5 pump`"),
             )),
         }
     }

@@ -143,8 +143,12 @@ impl Reader<'_> {
         let display = self.display()?;
         if display.is_some() && !asks {
             return Err(Box::new(
-                Problem::error(Code::MalformedQuestion, self.last_span(), "`in` chooses how an answer is shown, and nothing is asked")
-                    .mend("end the line with `?` to ask"),
+                Problem::error(
+                    Code::MalformedQuestion,
+                    self.last_span(),
+                    "`in` chooses how an answer is shown, and nothing is asked",
+                )
+                .mend("end the line with `?` to ask"),
             ));
         }
         Ok(Line::Define { names, params, value, display })
@@ -154,8 +158,12 @@ impl Reader<'_> {
         let text = self.tree.names.text(sym);
         if !quoted && words::is_reserved(text) {
             return Err(Box::new(
-                Problem::error(Code::ReservedWord, span, format!("`{text}` is a word of the language and cannot be defined"))
-                    .mend(format!("choose another name, or write \"{text}\" in double quotes")),
+                Problem::error(
+                    Code::ReservedWord,
+                    span,
+                    format!("`{text}` is a word of the language and cannot be defined"),
+                )
+                .mend(format!("choose another name, or write \"{text}\" in double quotes")),
             ));
         }
         Ok(())
@@ -164,11 +172,16 @@ impl Reader<'_> {
     /// Question names and functions cannot be defined with parameters.
     fn callable(&self, (sym, span): (Sym, Span)) -> Read<()> {
         let text = self.tree.names.text(sym);
-        let taken = [words::QUESTIONS, words::LATER_QUESTIONS, words::FUNCTIONS].iter().any(|l| l.contains(&text));
+        let taken =
+            [words::QUESTIONS, words::LATER_QUESTIONS, words::FUNCTIONS].iter().any(|l| l.contains(&text));
         if taken {
             return Err(Box::new(
-                Problem::error(Code::ReservedWord, span, format!("`{text}(…)` is a question or a function already"))
-                    .mend("choose another name for the structure"),
+                Problem::error(
+                    Code::ReservedWord,
+                    span,
+                    format!("`{text}(…)` is a question or a function already"),
+                )
+                .mend("choose another name for the structure"),
             ));
         }
         Ok(())
@@ -213,7 +226,11 @@ impl Reader<'_> {
                 if self.peek() == Some(Tok::Slash)
                     && let Some(unit) = self.per_unit()
                 {
-                    Display::Unit(Unit { form: UnitForm::PercentPer, word: unit.word, span: span.to(unit.span) })
+                    Display::Unit(Unit {
+                        form: UnitForm::PercentPer,
+                        word: unit.word,
+                        span: span.to(unit.span),
+                    })
                 } else {
                     Display::Percent
                 }
@@ -244,8 +261,12 @@ impl Reader<'_> {
         }
         if !asks && self.clause_starts() {
             return Err(Box::new(
-                Problem::error(Code::UnexpectedToken, self.peek_span(), "a clause stands without the name of its item")
-                    .mend("begin the line with `name =`"),
+                Problem::error(
+                    Code::UnexpectedToken,
+                    self.peek_span(),
+                    "a clause stands without the name of its item",
+                )
+                .mend("begin the line with `name =`"),
             ));
         }
         let value = self.expression()?;
@@ -270,8 +291,12 @@ impl Reader<'_> {
         self.at += 1;
         if asks && word != "require" {
             return Err(Box::new(
-                Problem::error(Code::MalformedQuestion, span, format!("`{word}` sets something and cannot ask"))
-                    .mend("take the `?` away"),
+                Problem::error(
+                    Code::MalformedQuestion,
+                    span,
+                    format!("`{word}` sets something and cannot ask"),
+                )
+                .mend("take the `?` away"),
             ));
         }
         match word.as_str() {
@@ -352,7 +377,9 @@ impl Reader<'_> {
             Some(Tok::AtLeast) => Limit::AtLeast,
             Some(Tok::AtMost) => Limit::AtMost,
             _ => {
-                return Err(Box::new(self.unexpected("`>=` or `<=`").mend("write `require R(feed) >= 0.98`")));
+                return Err(Box::new(
+                    self.unexpected("`>=` or `<=`").mend("write `require R(feed) >= 0.98`"),
+                ));
             }
         };
         self.at += 1;

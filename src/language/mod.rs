@@ -17,7 +17,7 @@ pub mod words;
 pub use print::print;
 pub use read::{Source, read_block, read_expression, read_question};
 pub use shape::is_answer;
-pub use tree::*;
 pub use tree::written as written_name;
+pub use tree::*;
 
 pub(crate) use clause::unknown_clause;

@@ -29,8 +29,7 @@ pub fn read_block<'a>(
         }
         let from = open.tokens.len();
         let found = problems.len();
-        let end =
-            token::line(line.text, line.at, number as u32, &mut tree.names, &mut open.tokens, problems);
+        let end = token::line(line.text, line.at, number as u32, &mut tree.names, &mut open.tokens, problems);
         if from > 0 && begins(&open.tokens[from..], &tree.names) != Begins::Other {
             // A new definition closes what was open: the rest of the line before is missing.
             let rest = open.tokens.split_off(from);

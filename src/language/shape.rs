@@ -72,14 +72,43 @@ mod tests {
     #[test]
     fn answers_are_told_from_what_a_person_wrote() {
         for yes in [
-            "", "0.98570", "1 in 69.93", "98.57%", "98.57 %", "4.000e-5", "1 - 6.403e-93", "~0.98", "~ 0.98 (0.97 to 0.99)",
-            "12.5 h", "3.0 /yr", "3.0 %/kh", "-0.5", "< 1e-300", "infinite", "none: R does not tend to 0",
-            "met: 0.98570, uses 71.5% of the allowed 0.02", "NOT met: 0.9", "UNDECIDED: ~0.9",
-            "! unknown name \"strainr\": did you mean \"strainer\"?", "12", "1 in 1.234e8",
+            "",
+            "0.98570",
+            "1 in 69.93",
+            "98.57%",
+            "98.57 %",
+            "4.000e-5",
+            "1 - 6.403e-93",
+            "~0.98",
+            "~ 0.98 (0.97 to 0.99)",
+            "12.5 h",
+            "3.0 /yr",
+            "3.0 %/kh",
+            "-0.5",
+            "< 1e-300",
+            "infinite",
+            "none: R does not tend to 0",
+            "met: 0.98570, uses 71.5% of the allowed 0.02",
+            "NOT met: 0.9",
+            "UNDECIDED: ~0.9",
+            "! unknown name \"strainr\": did you mean \"strainer\"?",
+            "12",
+            "1 in 1.234e8",
         ] {
             assert!(is_answer(yes), "{yes}");
         }
-        for no in ["see above", "0.98 I think", "about 0.98", "!important", "0,98", "0.98 h 3", "unmet: 3", "TBD", "1 in ten", "??"] {
+        for no in [
+            "see above",
+            "0.98 I think",
+            "about 0.98",
+            "!important",
+            "0,98",
+            "0.98 h 3",
+            "unmet: 3",
+            "TBD",
+            "1 in ten",
+            "??",
+        ] {
             assert!(!is_answer(no), "{no}");
         }
     }

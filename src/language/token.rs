@@ -16,7 +16,10 @@ use nom::{IResult, Parser};
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub(crate) enum Tok {
     /// A name or word; `quoted` when any part of it stands in quotes.
-    Name { sym: Sym, quoted: bool },
+    Name {
+        sym: Sym,
+        quoted: bool,
+    },
     Number,
     Percent,
     Arrow,
@@ -234,10 +237,12 @@ fn stray(c: char, after: &str, place: Span, to_end: Span) -> Problem {
     match c {
         '"' => Problem::error(Code::UnclosedQuote, to_end, "this quoted name or text has no closing quote")
             .mend("close it with `\"` on the same line; a quote inside is written `\"\"`"),
-        '“' | '”' | '„' | '‟' | '‘' | '’' => {
-            Problem::error(Code::TypographicCharacter, place, format!("the curly quote `{c}` is no quote here"))
-                .mend("write the straight quote `\"`")
-        }
+        '“' | '”' | '„' | '‟' | '‘' | '’' => Problem::error(
+            Code::TypographicCharacter,
+            place,
+            format!("the curly quote `{c}` is no quote here"),
+        )
+        .mend("write the straight quote `\"`"),
         '–' | '—' | '−' | '‐' | '‑' => {
             Problem::error(Code::TypographicCharacter, place, format!("the dash `{c}` is no minus sign here"))
                 .mend("write the plain `-`")
@@ -254,9 +259,13 @@ fn stray(c: char, after: &str, place: Span, to_end: Span) -> Problem {
             .mend("put a space before the number sign, or quote the name that holds it"),
         '|' | '&' => Problem::error(Code::StrayCharacter, place, format!("`{c}` is not used here"))
             .mend("write `//` for parallel and `->` for series; `and` and `or` belong in `fails when`"),
-        '[' | ']' => Problem::error(Code::StrayCharacter, place, format!("`{c}` stands only in names of copies"))
-            .mend("write the number of a copy directly after its name, as in `pump[1]`"),
-        '\'' => Problem::error(Code::StrayCharacter, place, "a name is quoted with `\"`").mend("write `\"…\"`"),
+        '[' | ']' => {
+            Problem::error(Code::StrayCharacter, place, format!("`{c}` stands only in names of copies"))
+                .mend("write the number of a copy directly after its name, as in `pump[1]`")
+        }
+        '\'' => {
+            Problem::error(Code::StrayCharacter, place, "a name is quoted with `\"`").mend("write `\"…\"`")
+        }
         c if c.is_control() => Problem::error(
             Code::StrayCharacter,
             place,

@@ -41,14 +41,24 @@ pub const CLAUSES: &[(&str, ClauseWord)] = &[
 
 /// Clause words of the design that a later version brings.
 pub const LATER_CLAUSES: &[&str] = &[
-    "weibull", "lognormal", "normal", "gamma", "age", "renewed", "repair", "mttr", "proof", "detected",
-    "dangerous", "tested",
+    "weibull",
+    "lognormal",
+    "normal",
+    "gamma",
+    "age",
+    "renewed",
+    "repair",
+    "mttr",
+    "proof",
+    "detected",
+    "dangerous",
+    "tested",
 ];
 
 /// Words of structure that cannot be names unless quoted.
 pub const RESERVED: &[&str] = &[
-    "of", "all", "any", "else", "with", "sharing", "separate", "routes", "perfect", "fails", "when", "and", "or",
-    "not",
+    "of", "all", "any", "else", "with", "sharing", "separate", "routes", "perfect", "fails", "when", "and",
+    "or", "not",
 ];
 
 /// Words that begin a line of their own.
@@ -56,22 +66,57 @@ pub const STARTERS: &[&str] = &["mission", "digits", "year", "use", "require", "
 
 /// Questions that this version answers.
 pub const QUESTIONS: &[&str] = &[
-    "R", "F", "cuts", "paths", "single points", "count", "rank", "steps", "assumptions", "inputs", "total",
-    "Birnbaum", "criticality", "FV", "RAW", "RRW", "doubled", "made perfect",
+    "R",
+    "F",
+    "cuts",
+    "paths",
+    "single points",
+    "count",
+    "rank",
+    "steps",
+    "assumptions",
+    "inputs",
+    "total",
+    "Birnbaum",
+    "criticality",
+    "FV",
+    "RAW",
+    "RRW",
+    "doubled",
+    "made perfect",
 ];
 
 /// Questions of the design that a later version brings.
 pub const LATER_QUESTIONS: &[&str] = &[
-    "A", "U", "PFD", "PFH", "MTTF", "MTBF", "MDT", "average rate", "hazard", "frequency", "downtime", "life",
-    "table", "solve", "trials", "diagram", "plot", "compare", "spread", "allot", "reinforce", "bound",
+    "A",
+    "U",
+    "PFD",
+    "PFH",
+    "MTTF",
+    "MTBF",
+    "MDT",
+    "average rate",
+    "hazard",
+    "frequency",
+    "downtime",
+    "life",
+    "table",
+    "solve",
+    "trials",
+    "diagram",
+    "plot",
+    "compare",
+    "spread",
+    "allot",
+    "reinforce",
+    "bound",
 ];
 
 /// Functions in formulas.
 pub const FUNCTIONS: &[&str] = &["exp", "ln", "log10", "sqrt", "min", "max"];
 
 /// First words of the two-word calls, with their second words.
-pub const TWO_WORD_CALLS: &[(&str, &str)] =
-    &[("single", "points"), ("made", "perfect"), ("average", "rate")];
+pub const TWO_WORD_CALLS: &[(&str, &str)] = &[("single", "points"), ("made", "perfect"), ("average", "rate")];
 
 /// The clause that `word` begins, if any.
 pub fn clause(word: &str) -> Option<ClauseWord> {

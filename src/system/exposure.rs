@@ -67,7 +67,8 @@ impl Model<'_> {
             };
             if amount.value.is_negative() {
                 return Err(self.fault(
-                    Problem::error(Code::OutsideRange, place, "an exposure is not below zero").mend("write it without the minus"),
+                    Problem::error(Code::OutsideRange, place, "an exposure is not below zero")
+                        .mend("write it without the minus"),
                 ));
             }
             let stress = phase.stress.map(|s| self.factor(s, "stress", None)).transpose()?;
@@ -100,8 +101,12 @@ impl Model<'_> {
             Problem::error(Code::MissingUnit, place, "an exposure needs its unit")
                 .mend("write `10 h`, `2 yr`, or a declared one such as `4 start`")
         } else {
-            Problem::error(Code::WrongUnit, place, format!("an exposure is a time or a declared exposure, and this is {what}"))
-                .mend("write `10 h`, `2 yr`, or declare one with `exposure start`")
+            Problem::error(
+                Code::WrongUnit,
+                place,
+                format!("an exposure is a time or a declared exposure, and this is {what}"),
+            )
+            .mend("write `10 h`, `2 yr`, or declare one with `exposure start`")
         };
         self.fault(problem)
     }
@@ -113,8 +118,12 @@ impl Model<'_> {
         if factor.dim != Dim::NONE {
             let what = self.units.describe(&factor.dim, &self.tree.names);
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, format!("`{word}` is a bare factor, and this is {what}"))
-                    .mend(format!("write `{word} 0.5` without a unit")),
+                Problem::error(
+                    Code::WrongUnit,
+                    place,
+                    format!("`{word}` is a bare factor, and this is {what}"),
+                )
+                .mend(format!("write `{word} 0.5` without a unit")),
             ));
         }
         let f = factor.value.to_f64();

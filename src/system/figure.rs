@@ -35,7 +35,7 @@ impl Oracle for NoOracle {
 
 enum Task {
     Visit(ExprId, Ctx),
-    Negate(ExprId),
+    Negate,
     Arith(ExprId, ArithOp),
     Unit(ExprId, u32),
     Function(ExprId, Sym, usize),
@@ -65,7 +65,7 @@ impl Model<'_> {
         while let Some(task) = tasks.pop() {
             match task {
                 Task::Visit(expr, ctx) => self.visit_figure(expr, ctx, oracle, &mut tasks, &mut values)?,
-                Task::Negate(_) => {
+                Task::Negate => {
                     if let Some(v) = values.last_mut() {
                         v.value = -v.value;
                         v.complement = None;
@@ -114,7 +114,7 @@ impl Model<'_> {
             Expr::Name(sym) => self.named_figure(expr, sym, ctx, tasks, values)?,
             Expr::Group(x) => tasks.push(Task::Visit(x, ctx)),
             Expr::WithUnit(x, unit) => tasks.extend([Task::Unit(expr, unit), Task::Visit(x, ctx)]),
-            Expr::Negate(x) => tasks.extend([Task::Negate(expr), Task::Visit(x, ctx)]),
+            Expr::Negate(x) => tasks.extend([Task::Negate, Task::Visit(x, ctx)]),
             Expr::Arith(op, a, b) => {
                 tasks.extend([Task::Arith(expr, op), Task::Visit(b, ctx), Task::Visit(a, ctx)]);
             }
@@ -137,8 +137,12 @@ impl Model<'_> {
         let text = self.text_of(expr);
         let place = self.tree.span(expr);
         self.fault(
-            Problem::error(Code::WrongKind, place, format!("`{text}` is a structure or an item and no figure"))
-                .mend(format!("ask a figure of it, as in `R({text})`")),
+            Problem::error(
+                Code::WrongKind,
+                place,
+                format!("`{text}` is a structure or an item and no figure"),
+            )
+            .mend(format!("ask a figure of it, as in `R({text})`")),
         )
     }
 
@@ -190,7 +194,12 @@ impl Model<'_> {
     pub(super) fn is_thing_only(&self, value: ExprId) -> bool {
         !matches!(
             self.tree.expr(self.tree.inside_groups(value)),
-            Expr::Literal(_) | Expr::Name(_) | Expr::WithUnit(..) | Expr::Negate(_) | Expr::Arith(..) | Expr::Call(..)
+            Expr::Literal(_)
+                | Expr::Name(_)
+                | Expr::WithUnit(..)
+                | Expr::Negate(_)
+                | Expr::Arith(..)
+                | Expr::Call(..)
         )
     }
 
@@ -211,14 +220,19 @@ impl Model<'_> {
         let place = self.tree.span(expr);
         let Some(item) = self.item_of_def(def)? else {
             return Err(self.fault(
-                Problem::error(Code::WrongKind, place, format!("`{owner}` is no item and has no clause `{word}`"))
-                    .mend("take the figure of one of its parts, or ask a question of it"),
+                Problem::error(
+                    Code::WrongKind,
+                    place,
+                    format!("`{owner}` is no item and has no clause `{word}`"),
+                )
+                .mend("take the figure of one of its parts, or ask a question of it"),
             ));
         };
         match self.item_list[item as usize].figure(&word, &self.tree.names) {
             Some(figure) => Ok(figure),
             None => {
-                let problem = Problem::error(Code::UnknownName, place, format!("`{owner}` has no clause `{word}`"));
+                let problem =
+                    Problem::error(Code::UnknownName, place, format!("`{owner}` has no clause `{word}`"));
                 let have = self.item_list[item as usize].figure_words(&self.tree.names);
                 let problem = match words::nearest(&word, have.iter().map(String::as_str)) {
                     Some(near) => problem.mend(format!("did you mean `{owner}.{near}`?")),
@@ -270,14 +284,20 @@ impl Model<'_> {
         )
     }
 
-    fn with_unit(&mut self, mut quantity: Quantity, unit: crate::language::Unit, place: Span) -> Out<Quantity> {
+    fn with_unit(
+        &mut self,
+        mut quantity: Quantity,
+        unit: crate::language::Unit,
+        place: Span,
+    ) -> Out<Quantity> {
         let (dim, factor) = match self.units.resolve(unit, &self.tree.names) {
             Ok(found) => found,
             Err(problem) => return Err(self.fault(*problem)),
         };
         if !quantity.dim.is_none() {
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place.to(unit.span), "this has a unit already").mend("take one of the two away"),
+                Problem::error(Code::WrongUnit, place.to(unit.span), "this has a unit already")
+                    .mend("take one of the two away"),
             ));
         }
         quantity.value *= factor;
@@ -297,11 +317,17 @@ impl Model<'_> {
 
     fn sum(&mut self, op: ArithOp, a: &Quantity, b: &Quantity, place: Span) -> Out<Quantity> {
         if a.dim != b.dim {
-            let (left, right) =
-                (self.units.describe(&a.dim, &self.tree.names), self.units.describe(&b.dim, &self.tree.names));
+            let (left, right) = (
+                self.units.describe(&a.dim, &self.tree.names),
+                self.units.describe(&b.dim, &self.tree.names),
+            );
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, format!("{left} and {right} cannot be added or subtracted"))
-                    .mend("give both the same kind of unit"),
+                Problem::error(
+                    Code::WrongUnit,
+                    place,
+                    format!("{left} and {right} cannot be added or subtracted"),
+                )
+                .mend("give both the same kind of unit"),
             ));
         }
         // 1 - p where the other tail of p is known: no digit is lost.
@@ -325,7 +351,8 @@ impl Model<'_> {
             ArithOp::Mul => (a.value * b.value, 1),
             _ if b.value.is_zero() => {
                 return Err(self.fault(
-                    Problem::error(Code::NoValue, place, "this divides by zero").mend("make sure that the divisor is not zero"),
+                    Problem::error(Code::NoValue, place, "this divides by zero")
+                        .mend("make sure that the divisor is not zero"),
                 ));
             }
             _ => (a.value / b.value, -1),
@@ -334,7 +361,9 @@ impl Model<'_> {
         let size = value.to_f64().abs();
         let relative = a.relative_error() + b.relative_error();
         let error = match op {
-            ArithOp::Mul if size == 0.0 => a.value.to_f64().abs() * b.error + b.value.to_f64().abs() * a.error + a.error * b.error,
+            ArithOp::Mul if size == 0.0 => {
+                a.value.to_f64().abs() * b.error + b.value.to_f64().abs() * a.error + a.error * b.error
+            }
             _ if size == 0.0 => a.error / b.value.to_f64().abs(),
             _ => size * (relative + STEP) * (1.0 + relative),
         };
@@ -344,11 +373,14 @@ impl Model<'_> {
     fn power(&mut self, a: &Quantity, b: &Quantity, place: Span) -> Out<Quantity> {
         if !b.dim.is_none() {
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, "an exponent has no unit").mend("write a bare number after `^`"),
+                Problem::error(Code::WrongUnit, place, "an exponent has no unit")
+                    .mend("write a bare number after `^`"),
             ));
         }
         let exponent = b.value.to_f64();
-        let whole = exponent == exponent.trunc() && (b.value - Real::from(exponent)).is_zero() && exponent.abs() < 1e15;
+        let whole = exponent == exponent.trunc()
+            && (b.value - Real::from(exponent)).is_zero()
+            && exponent.abs() < 1e15;
         if !a.dim.is_none() && !(whole && exponent.abs() <= 100.0) {
             return Err(self.fault(
                 Problem::error(Code::WrongUnit, place, "a figure with a unit takes only a whole power")
@@ -364,14 +396,16 @@ impl Model<'_> {
         };
         let log = a.value.to_f64().abs().ln().abs();
         let relative = exponent.abs() * a.relative_error() + log * b.error + (1.0 + exponent.abs()) * STEP;
-        let error = if a.value.is_zero() { a.error } else { value.to_f64().abs() * relative * (1.0 + relative) };
+        let error =
+            if a.value.is_zero() { a.error } else { value.to_f64().abs() * relative * (1.0 + relative) };
         self.finite(Quantity { value, complement: None, dim, error }, place)
     }
 
     fn no_value(&mut self, place: Span) -> Fault {
         self.fault(
-            Problem::error(Code::NoValue, place, "this calculation has no finite value")
-                .mend("look for a division by zero, a root or logarithm of a negative figure, or an overflow"),
+            Problem::error(Code::NoValue, place, "this calculation has no finite value").mend(
+                "look for a division by zero, a root or logarithm of a negative figure, or an overflow",
+            ),
         )
     }
 
@@ -399,8 +433,12 @@ impl Model<'_> {
         if !x.dim.is_none() {
             let what = self.units.describe(&x.dim, &self.tree.names);
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, format!("`{name}` takes a bare number, and this is {what}"))
-                    .mend("divide it by one of its unit first"),
+                Problem::error(
+                    Code::WrongUnit,
+                    place,
+                    format!("`{name}` takes a bare number, and this is {what}"),
+                )
+                .mend("divide it by one of its unit first"),
             ));
         }
         if matches!(name, "ln" | "log10") && x.value <= Real::ZERO {
@@ -422,7 +460,8 @@ impl Model<'_> {
         }
         let Some(dim) = x.dim.sqrt() else {
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, "the root of this unit is no unit").mend("divide by one of its unit first"),
+                Problem::error(Code::WrongUnit, place, "the root of this unit is no unit")
+                    .mend("divide by one of its unit first"),
             ));
         };
         let value = x.value.sqrt();

@@ -244,14 +244,19 @@ impl Model<'_> {
         let Some(known) = known else {
             let text = self.text_of(template);
             return Err(self.fault(
-                Problem::error(Code::WrongKind, place, format!("`{text}` is a structure, and a changed copy is of an item"))
-                    .mend("change the part that has the clause, and build the structure from it"),
+                Problem::error(
+                    Code::WrongKind,
+                    place,
+                    format!("`{text}` is a structure, and a changed copy is of an item"),
+                )
+                .mend("change the part that has the clause, and build the structure from it"),
             ));
         };
         let old = self.item(known).clone();
         let new = self.tree.clauses(clauses).to_vec();
         let mut item = Item { span: self.tree.span(copy), ..Item::default() };
-        let kept: Vec<Clause> = old.clauses.iter().filter(|o| !new.iter().any(|n| replaces(n, o))).copied().collect();
+        let kept: Vec<Clause> =
+            old.clauses.iter().filter(|o| !new.iter().any(|n| replaces(n, o))).copied().collect();
         if old.clauses.is_empty() && !new.iter().any(|n| is_failure(n.word)) {
             item.fixed = old.fixed;
         }
@@ -268,9 +273,13 @@ impl Model<'_> {
         {
             let shown = if word.is_empty() { "a bare probability".to_string() } else { format!("`{word}`") };
             return Err(self.fault(
-                Problem::error(Code::RepeatedClause, clause.span, format!("{shown} stands twice on one item"))
-                    .label(first.span, "first here")
-                    .mend("keep one of the two"),
+                Problem::error(
+                    Code::RepeatedClause,
+                    clause.span,
+                    format!("{shown} stands twice on one item"),
+                )
+                .label(first.span, "first here")
+                .mend("keep one of the two"),
             ));
         }
         item.clauses.push(clause);
@@ -293,8 +302,12 @@ impl Model<'_> {
         }
         if item.perfect && (item.fixed.is_some() || !item.ageing.is_empty()) {
             return Err(self.fault(
-                Problem::error(Code::ContradictoryData, clause.span, "a perfect item cannot fail, and this says how it does")
-                    .mend("take `perfect` away, or the other clause"),
+                Problem::error(
+                    Code::ContradictoryData,
+                    clause.span,
+                    "a perfect item cannot fail, and this says how it does",
+                )
+                .mend("take `perfect` away, or the other clause"),
             ));
         }
         Ok(())
@@ -310,9 +323,18 @@ impl Model<'_> {
         }
         if !figure.dim.is_none() {
             let what = self.units.describe(&figure.dim, &self.tree.names);
-            let mend = if works { "write the clause's word before it, as in `mttf 50 kh`" } else { "write `fails 0.02` or `fails 0.02 over 1 yr`" };
+            let mend = if works {
+                "write the clause's word before it, as in `mttf 50 kh`"
+            } else {
+                "write `fails 0.02` or `fails 0.02 over 1 yr`"
+            };
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, format!("a probability has no unit, and this is {what}")).mend(mend),
+                Problem::error(
+                    Code::WrongUnit,
+                    place,
+                    format!("a probability has no unit, and this is {what}"),
+                )
+                .mend(mend),
             ));
         }
         let chance = self.probability(&figure, place, works)?;
@@ -321,9 +343,13 @@ impl Model<'_> {
                 if let Some((_, first)) = item.fixed {
                     let first = first.map_or(place, |c| c.span);
                     return Err(self.fault(
-                        Problem::error(Code::ContradictoryData, clause.span, "one item has two probabilities")
-                            .label(first, "the first")
-                            .mend("keep one; two parts in series are written `A -> B`"),
+                        Problem::error(
+                            Code::ContradictoryData,
+                            clause.span,
+                            "one item has two probabilities",
+                        )
+                        .label(first, "the first")
+                        .mend("keep one; two parts in series are written `A -> B`"),
                     ));
                 }
                 item.fixed = Some((chance, Some(clause)));
@@ -332,7 +358,12 @@ impl Model<'_> {
             Some(over) => {
                 let amount = self.figure(over)?;
                 let place = self.tree.span(over);
-                let base = self.exposure_base(&amount, 1, place, "after `over` stands a time or a declared exposure")?;
+                let base = self.exposure_base(
+                    &amount,
+                    1,
+                    place,
+                    "after `over` stands a time or a declared exposure",
+                )?;
                 if amount.value <= Real::ZERO {
                     return Err(self.fault(
                         Problem::error(Code::OutsideRange, place, "the exposure after `over` is above zero")
@@ -347,10 +378,18 @@ impl Model<'_> {
     /// `fails 0.001 /start`
     fn read_each(&mut self, item: &mut Item, clause: Clause, figure: &Quantity, base: Base) -> Out<()> {
         let place = clause.value.map_or(clause.span, |v| self.tree.span(v));
-        if !matches!(base, Base::Word(w) if self.units.exposures.contains_key(&w)) || clause.word == ClauseWord::Works {
+        if !matches!(base, Base::Word(w) if self.units.exposures.contains_key(&w))
+            || clause.word == ClauseWord::Works
+        {
             return Err(self.fault(
-                Problem::error(Code::WrongUnit, place, "a probability is per mission or per occurrence, not per time")
-                    .mend("write `rate …` for a rate per time, `fails … over 1 yr` for a probability over a time"),
+                Problem::error(
+                    Code::WrongUnit,
+                    place,
+                    "a probability is per mission or per occurrence, not per time",
+                )
+                .mend(
+                    "write `rate …` for a rate per time, `fails … over 1 yr` for a probability over a time",
+                ),
             ));
         }
         let bare = Quantity { dim: Dim::NONE, ..figure.clone() };
@@ -372,7 +411,8 @@ impl Model<'_> {
         let base = self.exposure_base(&figure, power, place, &wants)?;
         if figure.value.is_negative() || (!is_rate && figure.value.is_zero()) {
             return Err(self.fault(
-                Problem::error(Code::OutsideRange, place, format!("`{word}` is above zero")).mend("write it without the minus"),
+                Problem::error(Code::OutsideRange, place, format!("`{word}` is above zero"))
+                    .mend("write it without the minus"),
             ));
         }
         let pace = if is_rate { Pace::Rate(figure) } else { Pace::Mean(figure) };
@@ -383,9 +423,13 @@ impl Model<'_> {
         if let Some(first) = item.ageing.iter().find(|a| a.base == ageing.base) {
             let first = first.clause.span;
             return Err(self.fault(
-                Problem::error(Code::ContradictoryData, ageing.clause.span, "one item has two rates for one exposure")
-                    .label(first, "the first")
-                    .mend("keep one, or add the rates: `rate 2 /Mh + 3 /Mh`"),
+                Problem::error(
+                    Code::ContradictoryData,
+                    ageing.clause.span,
+                    "one item has two rates for one exposure",
+                )
+                .label(first, "the first")
+                .mend("keep one, or add the rates: `rate 2 /Mh + 3 /Mh`"),
             ));
         }
         item.ageing.push(ageing);
@@ -402,11 +446,16 @@ impl Model<'_> {
         match figure.dim.single() {
             Some((base, p)) if p == power && fits(base, self) => Ok(base),
             None if figure.dim.is_none() => {
-                Err(self.fault(Problem::error(Code::MissingUnit, place, "this value needs its unit").mend(wants)))
+                Err(self
+                    .fault(Problem::error(Code::MissingUnit, place, "this value needs its unit").mend(wants)))
             }
             _ => {
                 let what = self.units.describe(&figure.dim, &self.tree.names);
-                let problem = Problem::error(Code::WrongUnit, place, format!("this is {what}, which does not fit here"));
+                let problem = Problem::error(
+                    Code::WrongUnit,
+                    place,
+                    format!("this is {what}, which does not fit here"),
+                );
                 Err(self.fault(problem.mend(wants)))
             }
         }
@@ -420,7 +469,8 @@ impl Model<'_> {
             "mass" => Dim::of(Base::Mass, 1),
             _ => match self.units.attributes.get(&clause.name) {
                 None => {
-                    let declared: Vec<&str> = self.units.attributes.keys().map(|s| self.tree.names.text(*s)).collect();
+                    let declared: Vec<&str> =
+                        self.units.attributes.keys().map(|s| self.tree.names.text(*s)).collect();
                     let problem = unknown_clause(clause.word_span, word, declared.into_iter());
                     let problem = problem.mend(format!("or declare it: `attribute {word}`"));
                     return Err(self.fault(problem));
@@ -441,7 +491,8 @@ impl Model<'_> {
             let want = self.units.describe(&wanted, &self.tree.names);
             let code = if figure.dim.is_none() { Code::MissingUnit } else { Code::WrongUnit };
             let symbol = self.units.symbol(&wanted, &self.tree.names);
-            let example = if symbol.is_empty() { format!("{word} 12") } else { format!("{word} 12 {symbol}") };
+            let example =
+                if symbol.is_empty() { format!("{word} 12") } else { format!("{word} 12 {symbol}") };
             let problem = Problem::error(code, place, format!("`{word}` takes {want}, and this is {have}"));
             return Err(self.fault(problem.mend(format!("write it as in `{example}`"))));
         }

@@ -190,10 +190,12 @@ impl<'a> Model<'a> {
                 format!("several names stand for the one thing `{}`", self.written(a)),
                 format!("write `a {}` for fresh copies, or one name for each line", self.written(a)),
             ),
-            Expr::Series(_) | Expr::Parallel(_) | Expr::AtLeast(..) | Expr::FailsWhen(_) | Expr::Call(..) => (
-                "several names stand for one structure".to_string(),
-                format!("write `a ({})` for fresh copies of it", self.text_of(value)),
-            ),
+            Expr::Series(_) | Expr::Parallel(_) | Expr::AtLeast(..) | Expr::FailsWhen(_) | Expr::Call(..) => {
+                (
+                    "several names stand for one structure".to_string(),
+                    format!("write `a ({})` for fresh copies of it", self.text_of(value)),
+                )
+            }
             _ => return,
         };
         let place = self.tree.span(value);
@@ -304,8 +306,12 @@ impl<'a> Model<'a> {
         let time = super::quantity::Dim::of(super::quantity::Base::Time, 1);
         if quantity.dim != time || quantity.value.to_f64() <= 0.0 {
             self.fault(
-                Problem::error(Code::BadSetting, self.tree.span(value), "the length of a year is a time above zero")
-                    .mend("write `year 8766 h`"),
+                Problem::error(
+                    Code::BadSetting,
+                    self.tree.span(value),
+                    "the length of a year is a time above zero",
+                )
+                .mend("write `year 8766 h`"),
             );
             return;
         }
@@ -319,8 +325,12 @@ impl<'a> Model<'a> {
             Some(digits @ 1..=15) => self.digits = digits as u8,
             _ => {
                 self.fault(
-                    Problem::error(Code::BadSetting, self.tree.span(value), "digits are a whole number from 1 to 15")
-                        .mend("write `digits 4`"),
+                    Problem::error(
+                        Code::BadSetting,
+                        self.tree.span(value),
+                        "digits are a whole number from 1 to 15",
+                    )
+                    .mend("write `digits 4`"),
                 );
             }
         }
@@ -367,8 +377,12 @@ impl<'a> Model<'a> {
                 let text = self.written(name);
                 let line = self.sources.line(span).map_or(0, |l| l.1);
                 let fault = self.fault(
-                    Problem::error(Code::BrokenBelow, span, format!("`{text}` rests on line {line}, which is in error"))
-                        .mend("mend that line first"),
+                    Problem::error(
+                        Code::BrokenBelow,
+                        span,
+                        format!("`{text}` rests on line {line}, which is in error"),
+                    )
+                    .mend("mend that line first"),
                 );
                 self.defs[def.0 as usize].broken = Some(fault);
                 Err(fault)
@@ -383,7 +397,10 @@ impl<'a> Model<'a> {
         let known = self.defs.iter().map(|d| self.tree.names.text(d.name));
         match words::nearest(name, known.chain(["perfect"])) {
             Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
-            None => problem.mend(format!("define it on a line of its own: `{} = …`", crate::language::written_name(name))),
+            None => problem.mend(format!(
+                "define it on a line of its own: `{} = …`",
+                crate::language::written_name(name)
+            )),
         }
     }
 }

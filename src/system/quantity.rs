@@ -62,11 +62,7 @@ impl Dim {
 
     /// The root of degree 2, where there is one.
     pub fn sqrt(&self) -> Option<Dim> {
-        self.0
-            .iter()
-            .map(|(b, p)| (p % 2 == 0).then_some((*b, p / 2)))
-            .collect::<Option<Vec<_>>>()
-            .map(Dim)
+        self.0.iter().map(|(b, p)| (p % 2 == 0).then_some((*b, p / 2))).collect::<Option<Vec<_>>>().map(Dim)
     }
 }
 

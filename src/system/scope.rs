@@ -165,7 +165,8 @@ impl Model<'_> {
 
     fn unknown_name(&mut self, id: ExprId, sym: Sym, params: &[Sym]) {
         let text = self.tree.names.text(sym);
-        let mut problem = Problem::error(Code::UnknownName, self.tree.span(id), format!("unknown name \"{text}\""));
+        let mut problem =
+            Problem::error(Code::UnknownName, self.tree.span(id), format!("unknown name \"{text}\""));
         let near = words::nearest(text, params.iter().map(|p| self.tree.names.text(*p)));
         problem = match near {
             Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
@@ -229,7 +230,8 @@ impl Model<'_> {
     fn circle(&mut self, circle: &[DefId]) {
         // A long way round is shown by its ends.
         const SHOWN: usize = 6;
-        let mut names: Vec<String> = circle.iter().take(SHOWN).map(|d| self.written(self.def(*d).name)).collect();
+        let mut names: Vec<String> =
+            circle.iter().take(SHOWN).map(|d| self.written(self.def(*d).name)).collect();
         if circle.len() > SHOWN {
             names.push(format!("… ({} more)", circle.len() - SHOWN));
         }
@@ -292,7 +294,9 @@ pub(super) enum Bound {
 /// The expressions of a line.
 fn roots(line: &Line) -> Vec<ExprId> {
     match line {
-        Line::Define { value, .. } | Line::Ask { value, .. } | Line::Digits(value) | Line::Year(value) => vec![*value],
+        Line::Define { value, .. } | Line::Ask { value, .. } | Line::Digits(value) | Line::Year(value) => {
+            vec![*value]
+        }
         Line::Require { left, right, .. } => vec![*left, *right],
         Line::Mission(phases) => phases.iter().flat_map(|p| [Some(p.amount), p.stress]).flatten().collect(),
         Line::Exposure(_) | Line::Attribute(_) | Line::Broken(_) => Vec::new(),

@@ -106,7 +106,8 @@ impl Units {
             UnitForm::Per => format!("/{word}"),
             UnitForm::PercentPer => format!("%/{word}"),
         };
-        let problem = Problem::error(Code::UnknownUnit, unit.span, format!("the unit `{shown}` is not known"));
+        let problem =
+            Problem::error(Code::UnknownUnit, unit.span, format!("the unit `{shown}` is not known"));
         let declared = self.exposures.keys().map(|s| names.text(*s));
         let known = TIMES.iter().map(|(w, _)| *w).chain(YEARS.iter().copied()).chain(declared);
         let known = known.chain(MASSES.iter().map(|(w, _)| *w)).chain(["FIT"]);
