@@ -6,7 +6,7 @@
 //! is no edit.
 
 use super::escape::{Context, escape};
-use super::markdown::{CLOSER, Fence, Line, Pair, PairForm, Row};
+use super::markdown::{CLOSER, Fence, Line, OPENER, Pair, PairForm, Row};
 use super::patch::Edit;
 use crate::source::Span;
 use std::ops::Range;
@@ -145,7 +145,8 @@ pub fn block_edit(text: &str, base: u32, pair: &Pair, lines: &[String]) -> Optio
 
 /// The edits that write answers into cells of one row: pairs of a column
 /// and its answer. Cells that the row lacks are added as far as they are
-/// needed. A row with too many cells gets none.
+/// needed. A row with too many cells gets none, nor does a cell that holds a
+/// comment pair.
 pub fn row_edits(text: &str, base: u32, row: &Row, answers: &[(usize, &str)]) -> Vec<Edit> {
     let mut edits = Vec::new();
     if row.too_many {
@@ -153,6 +154,10 @@ pub fn row_edits(text: &str, base: u32, row: &Row, answers: &[(usize, &str)]) ->
     }
     for (column, answer) in answers {
         let Some(cell) = row.cells.get(*column).filter(|c| !c.missing) else { continue };
+        // A cell that asks for itself is the writer's.
+        if slice(text, base, cell.text).contains(OPENER) {
+            continue;
+        }
         let mut new = escape(answer.trim(), Context::Cell);
         if !new.is_empty() {
             if cell.space_before {
@@ -231,3 +236,6 @@ fn edit(text: &str, span: Range<usize>, new: String) -> Option<Edit> {
 fn push(text: &str, edits: &mut Vec<Edit>, span: Range<usize>, new: String) {
     edits.extend(edit(text, span, new));
 }
+
+#[cfg(test)]
+mod tests;

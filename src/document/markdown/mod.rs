@@ -21,3 +21,6 @@ pub const CLOSER: &str = "<!--/?-->";
 pub const INFO_WORD: &str = "tieback";
 /// The question of a comment that makes the next table take part.
 pub const TABLE_WORD: &str = "table";
+
+#[cfg(test)]
+mod tests;

@@ -5,7 +5,8 @@ use crate::source::{Problem, Span};
 /// Everything found in one note.
 #[derive(Clone, PartialEq, Eq, Debug, Default)]
 pub struct Found {
-    /// The places in the order of the file. A table stands before the pairs in its cells.
+    /// The places in the order of the file; a table stands at its end, after
+    /// the pairs in its cells, because it may add cells behind them.
     pub places: Vec<Place>,
     /// Complaints about places that are not as they should be, in no particular order.
     pub problems: Vec<Problem>,

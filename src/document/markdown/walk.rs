@@ -110,8 +110,8 @@ pub(super) struct Walk<'a> {
     /// The pair that a closer in this paragraph, heading or cell would close.
     pub(super) open: Option<usize>,
     pub(super) waiting: Vec<Waiting>,
-    /// The table that takes part, as index of the places.
-    rows: Option<(usize, Rows<'a>)>,
+    /// The table under way, if it takes part.
+    rows: Option<(Table, Rows<'a>)>,
 }
 
 impl<'a> Walk<'a> {
@@ -215,7 +215,7 @@ impl<'a> Walk<'a> {
             }
             TagEnd::TableCell => self.cells = self.cells.saturating_sub(1),
             TagEnd::TableHead | TagEnd::TableRow => self.row_end(tag == TagEnd::TableHead),
-            TagEnd::Table => self.rows = None,
+            TagEnd::Table => self.found.places.extend(self.rows.take().map(|(t, _)| Place::Table(t))),
             _ => {}
         }
     }
@@ -228,10 +228,12 @@ impl<'a> Walk<'a> {
         }
     }
 
-    /// Whether a paragraph can be an answer of a block pair: an error or a picture.
+    /// Whether a paragraph can be an answer of a block pair: an error or a
+    /// picture. Behind a tab in a quote pulldown-cmark misses tables and gives
+    /// paragraphs, which begin with `|`.
     fn may_answer(&self, at: usize) -> bool {
         let rest = &self.text[at..];
-        rest.starts_with('!') || rest.starts_with("[![")
+        rest.starts_with(['!', '|']) || rest.starts_with("[![")
     }
 
     // --- blocks that wait for a closer or a table ---
@@ -319,17 +321,16 @@ impl<'a> Walk<'a> {
         let depth = self.depth;
         let ours = self.waiting.pop_if(|w| w.depth == depth && matches!(w.what, Awaits::Table(_)));
         if let Some(Waiting { what: Awaits::Table(opener), .. }) = ours {
-            self.rows = Some((self.found.places.len(), Rows::new(self.text, self.base as u32)));
-            self.found.places.push(Place::Table(Table { opener, header: Row::default(), rows: Vec::new() }));
+            let table = Table { opener, header: Row::default(), rows: Vec::new() };
+            self.rows = Some((table, Rows::new(self.text, self.base as u32)));
         } else {
             self.sibling(true);
         }
     }
 
     fn row_end(&mut self, head: bool) {
-        let Some((index, rows)) = &mut self.rows else { return };
+        let Some((table, rows)) = &mut self.rows else { return };
         let row = rows.end();
-        let Some(Place::Table(table)) = self.found.places.get_mut(*index) else { return };
         if head {
             table.header = row;
             return;
