@@ -187,12 +187,12 @@ fn row(line: &str) -> Vec<String> {
     if !line[start..].trim().is_empty() {
         cells.push(&line[start..]);
     }
-    let dashes = |c: &&str| {
+    let dashes = |c: &&str| -> bool {
         let c = c.trim();
         let inner = c.trim_matches(':');
         !inner.is_empty() && inner.bytes().all(|b| b == b'-')
     };
-    let ruler = !cells.is_empty() && cells.iter().all(|c| dashes(c));
+    let ruler = !cells.is_empty() && cells.iter().all(dashes);
     let spell = |cell: &str| {
         let cell = cell.trim();
         if ruler {
