@@ -8,7 +8,7 @@ pub mod at_least;
 //pub mod cuts;
 pub mod diagram;
 pub mod evaluate;
-//pub mod importance;
+pub mod importance;
 //pub mod listing;
 pub mod minimal;
 pub mod modules;
