@@ -5,11 +5,11 @@
 //! all drawn from the same one.
 
 pub mod at_least;
-//pub mod cuts;
+pub mod cuts;
 pub mod diagram;
 pub mod evaluate;
 pub mod importance;
-//pub mod listing;
+pub mod listing;
 pub mod minimal;
 pub mod modules;
 pub mod plan;
