@@ -74,6 +74,27 @@ fn side(need: usize, n: usize) -> (bool, usize) {
     if need <= fatal { (true, need) } else { (false, fatal) }
 }
 
+/// The chance that all members work; flipped on the way in and out, that any
+/// does.
+///
+/// Four products run side by side, since each step waits for the one before.
+/// While failure stays the smaller side, only it is computed.
+pub fn all(members: impl Iterator<Item = Chance>) -> Chance {
+    let step = |all: Chance, m: Chance| {
+        if all.fails().hi() + m.fails().hi() < 0.5 {
+            Chance::new(Real::ONE, all.fails() + all.works() * m.fails())
+        } else {
+            all.and(m)
+        }
+    };
+    let mut lanes = [Chance::PERFECT; 4];
+    for (i, m) in members.enumerate() {
+        lanes[i % 4] = step(lanes[i % 4], m);
+    }
+    let [a, b, c, d] = lanes;
+    step(step(a, b), step(c, d))
+}
+
 /// The chance that at least `need` of `members` work.
 pub fn at_least(need: usize, members: &[Chance]) -> Chance {
     let n = members.len();
@@ -84,10 +105,10 @@ pub fn at_least(need: usize, members: &[Chance]) -> Chance {
         return Chance::HOPELESS;
     }
     if need == n {
-        return members.iter().fold(Chance::PERFECT, |all, &m| all.and(m));
+        return all(members.iter().copied());
     }
     if need == 1 {
-        return members.iter().fold(Chance::HOPELESS, |any, &m| any.or(m));
+        return all(members.iter().map(|m| m.flip())).flip();
     }
     let (working, cap) = side(need, n);
     let mut count = Count::new(cap);

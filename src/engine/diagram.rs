@@ -70,7 +70,7 @@ impl Unique {
             match self.table[slot] {
                 0 => break,
                 at if self.nodes[at as usize] == branch => return Ok(at),
-                _ => slot = slot + 1 & mask,
+                _ => slot = (slot + 1) & mask,
             }
         }
         if self.nodes.len() >= self.limit {
@@ -91,7 +91,7 @@ impl Unique {
         for (at, b) in self.nodes.iter().enumerate().skip(2) {
             let mut slot = mix(b.variable, b.fails, b.works) & mask;
             while table[slot] != 0 {
-                slot = slot + 1 & mask;
+                slot = (slot + 1) & mask;
             }
             table[slot] = at as u32;
         }

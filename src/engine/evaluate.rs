@@ -3,7 +3,7 @@
 //! Every method here takes sums and products of positive terms in both tails,
 //! so relative errors add up and never multiply; [`bound`] counts them.
 
-use super::at_least::at_least;
+use super::at_least::{all, at_least};
 use super::plan::{Block, BlockId, Plan};
 use crate::number::Chance;
 
@@ -22,9 +22,9 @@ pub fn evaluate(plan: &Plan, chances: &[Chance]) -> Vec<Chance> {
             Block::Independent { need, .. } => {
                 let members = plan.members(id);
                 if need as usize == members.len() {
-                    members.iter().fold(Chance::PERFECT, |all, &m| all.and(of(m)))
+                    all(members.iter().map(|&m| of(m)))
                 } else if need == 1 {
-                    members.iter().fold(Chance::HOPELESS, |any, &m| any.or(of(m)))
+                    all(members.iter().map(|&m| of(m).flip())).flip()
                 } else {
                     inputs.clear();
                     inputs.extend(members.iter().map(|&m| of(m)));
@@ -67,7 +67,8 @@ pub fn bound(plan: &Plan) -> f64 {
                 let plain = need == 1 || need as usize == members.len();
                 // A count is summed over its cells in the end.
                 let cells = if plain { 0 } else { members.len() };
-                members.iter().map(|&m| of(m) + STEP).sum::<f64>() + cells as f64
+                // The four lanes of a plain one are joined in two steps.
+                members.iter().map(|&m| of(m) + STEP).sum::<f64>() + cells as f64 + 2.0 * STEP
             }
             Block::Conditioned { on, works, failed } => of(on) + of(works).max(of(failed)) + STEP,
             Block::Diagram => plan.parts(id).iter().map(|&b| of(b) + STEP).sum(),

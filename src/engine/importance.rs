@@ -57,7 +57,8 @@ impl Importance {
 
 /// The importance of all main blocks, by block; blocks of cases have none.
 /// `values` are the chances of all blocks as [`super::evaluate::evaluate`]
-/// gives them, `nodes` the most nodes for the cut sets of one group.
+/// gives them, `nodes` the most nodes for the cut sets of one group; the latter
+/// take most of the time where parts share things, and 0 leaves them out there.
 pub fn importance(plan: &Plan, values: &[Chance], nodes: usize) -> Vec<Option<Importance>> {
     let mut found: Vec<Option<Importance>> = vec![None; plan.len()];
     // The probability that all the rest of some minimal cut set with the block

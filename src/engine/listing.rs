@@ -29,7 +29,7 @@ pub struct Limits {
 
 impl Default for Limits {
     fn default() -> Limits {
-        Limits { order: None, first: 1000, work: 20_000_000 }
+        Limits { order: None, first: 1000, work: 5_000_000 }
     }
 }
 
@@ -62,14 +62,14 @@ pub struct Sets {
 
 /// One set while it is put together: its things are a tree in a common list.
 #[derive(Clone, Copy)]
-struct Entry {
-    chance: Real,
+pub(super) struct Entry {
+    pub(super) chance: Real,
     first: u32,
-    piece: u32,
+    pub(super) piece: u32,
 }
 
 /// The best sets of each order, best first.
-type Table = BTreeMap<u64, Vec<Entry>>;
+pub(super) type Table = BTreeMap<u64, Vec<Entry>>;
 
 #[derive(Clone, Copy)]
 enum Piece {
@@ -78,12 +78,14 @@ enum Piece {
     Both(u32, u32),
 }
 
-struct TooMuch;
+/// The limit on work is reached.
+pub(super) struct TooMuch;
 
-struct Lister<'a> {
+pub(super) struct Lister<'a> {
     sets: &'a Minimal<'a>,
     chances: &'a [Chance],
-    keep: usize,
+    /// One more than asked for, to tell whether there are more.
+    pub(super) keep: usize,
     work: usize,
     pieces: Vec<Piece>,
 }
@@ -130,7 +132,7 @@ impl Minimal<'_> {
 }
 
 impl Lister<'_> {
-    fn spend(&mut self, work: usize) -> Result<(), TooMuch> {
+    pub(super) fn spend(&mut self, work: usize) -> Result<(), TooMuch> {
         self.work = self.work.checked_sub(work).ok_or(TooMuch)?;
         Ok(())
     }
@@ -140,7 +142,12 @@ impl Lister<'_> {
         self.pieces.len() as u32 - 1
     }
 
-    fn expand(&self, piece: u32) -> Vec<u32> {
+    pub(super) fn both(&mut self, a: &Entry, b: &Entry) -> Entry {
+        let piece = self.piece(Piece::Both(a.piece, b.piece));
+        Entry { chance: a.chance * b.chance, first: a.first.min(b.first), piece }
+    }
+
+    pub(super) fn expand(&self, piece: u32) -> Vec<u32> {
         let mut set = Vec::new();
         let mut stack = vec![piece];
         while let Some(at) = stack.pop() {
@@ -157,7 +164,7 @@ impl Lister<'_> {
     /// The better of two sets of the same order comes first. Which of two sets
     /// has the lower numbers does not change when both get the same addition,
     /// as the least thing in only one of them decides.
-    fn compare(&self, a: &Entry, b: &Entry) -> Ordering {
+    pub(super) fn compare(&self, a: &Entry, b: &Entry) -> Ordering {
         (b.chance.hi().total_cmp(&a.chance.hi())).then(a.first.cmp(&b.first)).then_with(|| {
             match a.piece == b.piece {
                 true => Ordering::Equal,
@@ -166,14 +173,16 @@ impl Lister<'_> {
         })
     }
 
-    fn best(&self, mut table: Table) -> Table {
-        for entries in table.values_mut() {
+    fn best(&mut self, mut table: Table) -> Result<Table, TooMuch> {
+        for (&order, entries) in &mut table {
             if entries.len() > 1 {
+                // Ties between large sets are settled thing by thing.
+                self.spend(entries.len() * (order / 32) as usize)?;
                 entries.sort_by(|a, b| self.compare(a, b));
                 entries.truncate(self.keep);
             }
         }
-        table
+        Ok(table)
     }
 
     /// The best sets of the whole system up to an order.
@@ -261,7 +270,7 @@ impl Lister<'_> {
         Table::from([(1, vec![Entry { chance, first: leaf, piece }])])
     }
 
-    fn unit(&mut self) -> Table {
+    pub(super) fn unit(&mut self) -> Table {
         let piece = self.piece(Piece::Empty);
         Table::from([(0, vec![Entry { chance: Real::ONE, first: u32::MAX, piece }])])
     }
@@ -283,9 +292,7 @@ impl Lister<'_> {
                     }
                     self.spend(most)?;
                     for r in &right[..most] {
-                        let piece = self.piece(Piece::Both(l.piece, r.piece));
-                        let first = l.first.min(r.first);
-                        made.push(Entry { chance: l.chance * r.chance, first, piece });
+                        made.push(self.both(l, r));
                     }
                 }
                 into.entry(x + y).or_default().extend(made);
@@ -308,16 +315,19 @@ impl Lister<'_> {
                     all.entry(order).or_default().extend(entries);
                 }
             }
-            return Ok(self.best(all));
+            return self.best(all);
         }
         if taken == parts.len() {
             let mut all = self.unit();
             for part in &parts {
                 let mut next = Table::new();
                 self.join(&all, part, cap, &mut next)?;
-                all = self.best(next);
+                all = self.best(next)?;
             }
             return Ok(all);
+        }
+        if let Some(table) = self.alike(&parts, taken, cap)? {
+            return Ok(table);
         }
         // rows[r]: sets that take r of the parts seen so far.
         let mut rows = vec![Table::new(); taken + 1];
@@ -331,7 +341,7 @@ impl Lister<'_> {
                 let Some(cap) = cap.checked_sub((taken - r) as u64) else { continue };
                 let mut row = std::mem::take(&mut rows[r]);
                 self.join(&rows[r - 1], part, cap, &mut row)?;
-                rows[r] = self.best(row);
+                rows[r] = self.best(row)?;
             }
         }
         Ok(rows.pop().unwrap_or_default())
@@ -347,7 +357,8 @@ impl Lister<'_> {
             self.spend(1 + table.values().map(Vec::len).sum::<usize>())?;
             let with = &parts[b.variable as usize];
             self.join(with, &tables[b.works as usize], cap, &mut table)?;
-            tables.push(self.best(table));
+            let table = self.best(table)?;
+            tables.push(table);
         }
         Ok(std::mem::take(&mut tables[family.root() as usize]))
     }

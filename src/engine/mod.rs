@@ -1,8 +1,8 @@
 //! Methods: numbers, each with the plan that justifies it.
 //!
-//! A [`Plan`](plan::Plan) says how a system is computed. It does not depend on the chances: the
-//! value, the importance of the parts, the cut sets and the printed steps are
-//! all drawn from the same one.
+//! A [`Plan`](plan::Plan) says how a system is computed. It does not depend on
+//! the chances: the value, the importance of the parts, the cut sets and the
+//! printed steps are all drawn from the same one.
 
 pub mod at_least;
 pub mod cuts;
@@ -14,6 +14,7 @@ pub mod minimal;
 pub mod modules;
 pub mod plan;
 mod planner;
+mod subsets;
 
 #[cfg(test)]
 mod trial;

@@ -191,13 +191,8 @@ impl Graph {
                 earliest[at] = earliest[at].min(first[m]).min(earliest[m]);
                 latest[at] = latest[at].max(last[m]).max(latest[m]);
             }
+            // A leaf has nothing under it: its dates are the latest and the first.
             modules[at] = earliest[at] > first[at] && latest[at] < left[at];
-        }
-        // A leaf has no dates under it; its latest is 0, at or before any visit.
-        for at in 0..n {
-            if self.members(at as u32).is_empty() {
-                modules[at] = true;
-            }
         }
         modules
     }

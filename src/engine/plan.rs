@@ -76,8 +76,8 @@ pub enum Stands {
 /// Parts of a system that share things.
 #[derive(Clone, Debug)]
 pub struct Group {
-    /// The members of the structure node that share, or the node itself where
-    /// it is a k of n or where the group has been met under a condition.
+    /// The members of the structure node that the group is made of: all of
+    /// them, or those of a series or parallel that share ([`Stands::Part`]).
     pub members: Vec<NodeId>,
     /// The blocks that the group rests on, which share nothing with each
     /// other. Their positions are the variables of the diagram.
