@@ -1,0 +1,448 @@
+//! Makes a [`Plan`]; see there for the idea and the sources.
+
+use super::diagram::{Builder, Diagram, TooLarge};
+use super::modules::{Graph, Kind, NONE};
+use super::plan::{Block, BlockId, Group, Options, Plan, Shell, Span, Stands};
+use crate::system::{Node, NodeId, Structure};
+use rustc_hash::FxHashMap;
+
+/// Groups larger than this are not tried by cases: nobody would follow them.
+const CASE_NODES: usize = 2000;
+/// Nor those with more shared things than this, however the cases fall.
+const CASE_SHARED: usize = 40;
+
+/// Why a group was not planned.
+enum Stop {
+    TooLarge(TooLarge),
+    TooManyCases,
+}
+
+impl From<TooLarge> for Stop {
+    fn from(error: TooLarge) -> Stop {
+        Stop::TooLarge(error)
+    }
+}
+
+/// A group on its own: its leaves are numbered by its frontier.
+struct Local {
+    structure: Structure,
+    /// The node of the whole system that each local node came from.
+    origin: Vec<NodeId>,
+    root: NodeId,
+    members: Vec<NodeId>,
+    frontier: Vec<BlockId>,
+}
+
+/// Where a structure stands that is being planned.
+struct Place<'a> {
+    graph: &'a Graph,
+    modules: Vec<bool>,
+    block_of: Vec<u32>,
+    /// For a case: the nodes of the whole system that the graph's came from.
+    origin: Option<&'a [NodeId]>,
+}
+
+impl Place<'_> {
+    fn node(&self, at: u32) -> NodeId {
+        let local = self.graph.origin(at);
+        match self.origin {
+            Some(origin) => origin[local.0 as usize],
+            None => local,
+        }
+    }
+
+    fn stands(&self, at: u32) -> Stands {
+        match self.origin {
+            Some(_) => Stands::Given(self.node(at)),
+            None => Stands::Node(self.node(at)),
+        }
+    }
+}
+
+pub(super) fn plan(structure: &Structure, root: NodeId, options: Options) -> Result<Plan, TooLarge> {
+    let mut plan = Plan {
+        shells: Vec::new(),
+        pool: Vec::new(),
+        groups: Vec::new(),
+        root: BlockId(0),
+        by_node: vec![NONE; structure.len()],
+        by_leaf: FxHashMap::default(),
+    };
+    let graph = Graph::new(structure, root);
+    let mut planner = Planner { plan: &mut plan, options };
+    let block_of = match planner.structure(&graph, root, None, &mut 0) {
+        Ok(block_of) => block_of,
+        Err(Stop::TooLarge(error)) => return Err(error),
+        // Only a case can have too many cases, and its group then catches it.
+        Err(Stop::TooManyCases) => return Err(TooLarge { limit: options.nodes }),
+    };
+    for id in 0..structure.len() as u32 {
+        if let Some(at) = graph.place(NodeId(id)) {
+            plan.by_node[id as usize] = block_of[at as usize];
+        }
+    }
+    plan.root = BlockId(plan.by_node[root.0 as usize]);
+    Ok(plan)
+}
+
+struct Planner<'a> {
+    plan: &'a mut Plan,
+    options: Options,
+}
+
+impl Planner<'_> {
+    /// Plans a whole structure, or what a case has left of a group, given by
+    /// its frontier and origins; gives the block of each module.
+    ///
+    /// It calls itself through [`Planner::condition`] only, which the number
+    /// of cases bounds.
+    fn structure(
+        &mut self,
+        graph: &Graph,
+        root: NodeId,
+        case: Option<(&[BlockId], &[NodeId])>,
+        splits: &mut usize,
+    ) -> Result<Vec<u32>, Stop> {
+        let top = graph.place(root).unwrap_or(0);
+        let mut place = Place {
+            graph,
+            modules: graph.modules(top),
+            block_of: vec![NONE; graph.len()],
+            origin: case.map(|(_, origin)| origin),
+        };
+        let mut groups = Grouping::new(graph.len());
+        for at in 0..graph.len() as u32 {
+            if !place.modules[at as usize] {
+                continue;
+            }
+            let block = match graph.kind(at) {
+                Kind::Works => self.push(Block::Works, place.stands(at)),
+                Kind::Leaf(leaf) => match case {
+                    Some((frontier, _)) => frontier[leaf as usize],
+                    None => {
+                        let block = self.push(Block::Leaf(leaf), place.stands(at));
+                        self.plan.by_leaf.insert(leaf, block);
+                        block
+                    }
+                },
+                Kind::AtLeast { need, .. } => self.node(&place, &mut groups, at, need, splits)?,
+            };
+            place.block_of[at as usize] = block.0;
+        }
+        Ok(place.block_of)
+    }
+
+    fn push(&mut self, block: Block, stands: Stands) -> BlockId {
+        self.plan.shells.push(Shell { block, stands, group: NONE });
+        BlockId(self.plan.shells.len() as u32 - 1)
+    }
+
+    fn independent(&mut self, need: u32, members: &[BlockId], stands: Stands) -> BlockId {
+        let start = self.plan.pool.len() as u32;
+        self.plan.pool.extend_from_slice(members);
+        let end = self.plan.pool.len() as u32;
+        self.push(Block::Independent { need, members: Span { start, end } }, stands)
+    }
+
+    /// Plans an "at least" node that is a module.
+    fn node(
+        &mut self,
+        place: &Place<'_>,
+        groups: &mut Grouping,
+        at: u32,
+        need: u32,
+        splits: &mut usize,
+    ) -> Result<BlockId, Stop> {
+        let members = place.graph.members(at);
+        let stands = place.stands(at);
+        let series = need as usize == members.len();
+        let Some(split) = groups.split(place, members) else {
+            let blocks: Vec<BlockId> = members.iter().map(|&m| BlockId(place.block_of[m as usize])).collect();
+            return Ok(self.independent(need, &blocks, stands));
+        };
+        if split.len() == 1 || !(series || need == 1) {
+            let local = groups.local(place, need, members, at);
+            return self.group(local, stands, splits);
+        }
+        let mut blocks = Vec::with_capacity(split.len());
+        for part in split {
+            blocks.push(match part[..] {
+                [only] => BlockId(place.block_of[only as usize]),
+                _ => {
+                    let need = if series { part.len() as u32 } else { 1 };
+                    let local = groups.local(place, need, &part, at);
+                    let stands = match stands {
+                        Stands::Node(node) => Stands::Part(node),
+                        other => other,
+                    };
+                    self.group(local, stands, splits)?
+                }
+            });
+        }
+        let need = if series { blocks.len() as u32 } else { 1 };
+        Ok(self.independent(need, &blocks, stands))
+    }
+
+    /// Plans parts that share things: by cases if few do, else by a diagram.
+    /// Within a case it is by cases or not at all.
+    fn group(&mut self, local: Local, stands: Stands, splits: &mut usize) -> Result<BlockId, Stop> {
+        let uses = uses(&local.structure, local.root, local.frontier.len());
+        if let Stands::Given(_) = stands {
+            return self.condition(&local, &uses, stands, splits);
+        }
+        let diagram = diagram(&local, self.options.nodes)?;
+        let shared = uses.iter().filter(|&&u| u > 1).count();
+        let mut block = None;
+        if local.structure.len() <= CASE_NODES && shared <= CASE_SHARED && self.options.cases > 1 {
+            let mark = (self.plan.shells.len(), self.plan.pool.len());
+            let mut splits = self.options.cases - 1;
+            match self.condition(&local, &uses, stands, &mut splits) {
+                Ok(made) => block = Some(made),
+                Err(Stop::TooManyCases) => {
+                    self.plan.shells.truncate(mark.0);
+                    self.plan.pool.truncate(mark.1);
+                }
+                Err(error) => return Err(error),
+            }
+        }
+        let block = block.unwrap_or_else(|| self.push(Block::Diagram, stands));
+        self.plan.shells[block.0 as usize].group = self.plan.groups.len() as u32;
+        let Local { members, frontier, .. } = local;
+        self.plan.groups.push(Group { members, frontier, uses, diagram });
+        Ok(block)
+    }
+
+    /// Splits a group over the thing that it uses most, the first of equals.
+    fn condition(
+        &mut self,
+        local: &Local,
+        uses: &[u32],
+        stands: Stands,
+        splits: &mut usize,
+    ) -> Result<BlockId, Stop> {
+        *splits = splits.checked_sub(1).ok_or(Stop::TooManyCases)?;
+        let most = uses.iter().copied().max().unwrap_or(0);
+        let pivot = uses.iter().position(|&u| u == most).unwrap_or(0) as u32;
+        let works = self.case(local, pivot, true, splits)?;
+        let failed = self.case(local, pivot, false, splits)?;
+        let on = local.frontier[pivot as usize];
+        Ok(self.push(Block::Conditioned { on, works, failed }, stands))
+    }
+
+    fn case(&mut self, local: &Local, pivot: u32, works: bool, splits: &mut usize) -> Result<BlockId, Stop> {
+        let whole = Stands::Given(local.origin[local.root.0 as usize]);
+        match reduce(local, pivot, works) {
+            Left::Works => Ok(self.push(Block::Works, whole)),
+            Left::Fails => Ok(self.push(Block::Fails, whole)),
+            Left::Node { structure, origin, root } => {
+                let graph = Graph::new(&structure, root);
+                let case = Some((&local.frontier[..], &origin[..]));
+                let block_of = self.structure(&graph, root, case, splits)?;
+                let at = graph.place(root).unwrap_or(0);
+                Ok(BlockId(block_of[at as usize]))
+            }
+        }
+    }
+}
+
+/// What a case leaves of a group.
+enum Left {
+    Works,
+    Fails,
+    Node { structure: Structure, origin: Vec<NodeId>, root: NodeId },
+}
+
+/// A group with one of its things known to work or to have failed.
+fn reduce(local: &Local, pivot: u32, works: bool) -> Left {
+    #[derive(Clone, Copy)]
+    enum Now {
+        Works,
+        Fails,
+        Is(NodeId),
+    }
+    let old = &local.structure;
+    let mut structure = Structure::default();
+    let mut origin = Vec::with_capacity(old.len());
+    let mut now: Vec<Now> = Vec::with_capacity(old.len());
+    let mut left = Vec::new();
+    for id in (0..old.len() as u32).map(NodeId) {
+        let value = match old.node(id) {
+            Node::Works => Now::Works,
+            Node::Leaf(leaf) if leaf == pivot => {
+                if works {
+                    Now::Works
+                } else {
+                    Now::Fails
+                }
+            }
+            Node::Leaf(leaf) => Now::Is(structure.leaf(leaf)),
+            Node::AtLeast { need, .. } => {
+                let mut need = need as usize;
+                left.clear();
+                for member in old.members(id) {
+                    match now[member.0 as usize] {
+                        Now::Works => need = need.saturating_sub(1),
+                        Now::Fails => {}
+                        Now::Is(node) => left.push(node),
+                    }
+                }
+                if need == 0 {
+                    Now::Works
+                } else if need > left.len() {
+                    Now::Fails
+                } else {
+                    Now::Is(structure.at_least(need as u32, &left))
+                }
+            }
+        };
+        if let Now::Is(_) = value {
+            // A node of one member is that member and adds none.
+            origin.resize(structure.len(), local.origin[id.0 as usize]);
+        }
+        now.push(value);
+    }
+    match now[local.root.0 as usize] {
+        Now::Works => Left::Works,
+        Now::Fails => Left::Fails,
+        Now::Is(root) => Left::Node { structure, origin, root },
+    }
+}
+
+/// How many times each of the frontier is used as a member in a group.
+fn uses(structure: &Structure, root: NodeId, frontier: usize) -> Vec<u32> {
+    let mut uses = vec![0; frontier];
+    let mut live = vec![false; structure.len()];
+    live[root.0 as usize] = true;
+    for id in (0..=root.0).rev().map(NodeId) {
+        if live[id.0 as usize] {
+            for &member in structure.members(id) {
+                live[member.0 as usize] = true;
+                if let Node::Leaf(leaf) = structure.node(member) {
+                    uses[leaf as usize] += 1;
+                }
+            }
+        }
+    }
+    uses
+}
+
+fn diagram(local: &Local, limit: usize) -> Result<Diagram, TooLarge> {
+    let mut builder = Builder::new(limit);
+    let mut made: Vec<u32> = Vec::with_capacity(local.structure.len());
+    let mut members = Vec::new();
+    for id in (0..local.structure.len() as u32).map(NodeId) {
+        made.push(match local.structure.node(id) {
+            Node::Works => super::diagram::WORKS,
+            Node::Leaf(leaf) => builder.variable(leaf)?,
+            Node::AtLeast { need, .. } => {
+                members.clear();
+                members.extend(local.structure.members(id).iter().map(|m| made[m.0 as usize]));
+                builder.at_least(need as usize, &members)?
+            }
+        });
+    }
+    Ok(builder.finish(made[local.root.0 as usize]))
+}
+
+/// Splits the members of nodes by what they share. The nodes between a module
+/// and the modules next below it belong to no other module, so the marks of
+/// all nodes fit in one table and the whole takes linear time.
+struct Grouping {
+    owner: Vec<u32>,
+    local: Vec<u32>,
+    stack: Vec<u32>,
+}
+
+impl Grouping {
+    fn new(nodes: usize) -> Grouping {
+        Grouping { owner: vec![NONE; nodes], local: vec![NONE; nodes], stack: Vec::new() }
+    }
+
+    /// The members in parts that share nothing with each other, in the order
+    /// of their first members; nothing if no two members share anything.
+    fn split(&mut self, place: &Place<'_>, members: &[u32]) -> Option<Vec<Vec<u32>>> {
+        let mut parent: Vec<u32> = (0..members.len() as u32).collect();
+        fn find(parent: &mut [u32], mut at: u32) -> u32 {
+            while parent[at as usize] != at {
+                parent[at as usize] = parent[parent[at as usize] as usize];
+                at = parent[at as usize];
+            }
+            at
+        }
+        // A member twice in a k of n is shared with itself.
+        let mut joined = false;
+        for (i, &member) in members.iter().enumerate() {
+            let mine = i as u32;
+            self.stack.push(member);
+            while let Some(at) = self.stack.pop() {
+                let owner = &mut self.owner[at as usize];
+                if *owner == NONE {
+                    *owner = mine;
+                    if !place.modules[at as usize] {
+                        self.stack.extend_from_slice(place.graph.members(at));
+                    }
+                } else if *owner != mine {
+                    joined = true;
+                    let (a, b) = (find(&mut parent, *owner), find(&mut parent, mine));
+                    parent[a.max(b) as usize] = a.min(b);
+                }
+            }
+        }
+        if !joined {
+            return None;
+        }
+        let mut part_of = vec![NONE; members.len()];
+        let mut parts: Vec<Vec<u32>> = Vec::new();
+        for (i, &member) in members.iter().enumerate() {
+            let top = find(&mut parent, i as u32) as usize;
+            if part_of[top] == NONE {
+                part_of[top] = parts.len() as u32;
+                parts.push(Vec::new());
+            }
+            parts[part_of[top] as usize].push(member);
+        }
+        Some(parts)
+    }
+
+    /// "At least `need` of `members`" down to the next modules, on its own.
+    ///
+    /// A node's own leaves are taken before its other members: in a deep nest
+    /// the diagram then grows from the inside out, each level in one step.
+    fn local(&mut self, place: &Place<'_>, need: u32, members: &[u32], at: u32) -> Local {
+        let mut structure = Structure::default();
+        let mut origin = Vec::new();
+        let mut frontier = Vec::new();
+        let ordered = |members: &[u32]| -> Vec<u32> {
+            let (leaves, others): (Vec<u32>, Vec<u32>) =
+                members.iter().partition(|&&m| place.modules[m as usize]);
+            [leaves, others].concat()
+        };
+        // A visit is entered once to send its members ahead, then left.
+        let mut stack: Vec<(u32, bool)> = ordered(members).into_iter().rev().map(|m| (m, false)).collect();
+        let mut inner = Vec::new();
+        while let Some((node, ready)) = stack.pop() {
+            if self.local[node as usize] != NONE {
+                continue;
+            }
+            if place.modules[node as usize] {
+                self.local[node as usize] = structure.leaf(frontier.len() as u32).0;
+                frontier.push(BlockId(place.block_of[node as usize]));
+            } else if !ready {
+                stack.push((node, true));
+                stack.extend(ordered(place.graph.members(node)).into_iter().rev().map(|m| (m, false)));
+                continue;
+            } else if let Kind::AtLeast { need, .. } = place.graph.kind(node) {
+                inner.clear();
+                let members = place.graph.members(node);
+                inner.extend(members.iter().map(|&m| NodeId(self.local[m as usize])));
+                self.local[node as usize] = structure.at_least(need, &inner).0;
+            }
+            origin.resize(structure.len(), place.node(node));
+        }
+        let tops: Vec<NodeId> = members.iter().map(|&m| NodeId(self.local[m as usize])).collect();
+        let root = structure.at_least(need, &tops);
+        origin.resize(structure.len(), place.node(at));
+        let members = members.iter().map(|&m| place.node(m)).collect();
+        Local { structure, origin, root, members, frontier }
+    }
+}
