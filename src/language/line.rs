@@ -214,7 +214,7 @@ impl Reader<'_> {
     }
 
     /// `in chances`, `in %`, `in yr`.
-    fn display(&mut self) -> Read<Option<Display>> {
+    pub(crate) fn display(&mut self) -> Read<Option<Display>> {
         if self.word(0) != Some("in") {
             return Ok(None);
         }

@@ -6,6 +6,7 @@
 
 mod clause;
 mod expr;
+mod grid;
 mod line;
 mod print;
 mod read;
@@ -14,6 +15,7 @@ mod token;
 mod tree;
 pub mod words;
 
+pub use grid::{CellAsk, Grid, ask_grid, read_grid};
 pub use print::print;
 pub use read::{Source, read_block, read_expression, read_question};
 pub use shape::is_answer;

@@ -359,6 +359,16 @@ impl Tree {
         self.exprs.is_empty()
     }
 
+    /// The mixed line whose node stands exactly at `place`.
+    pub fn mixed_at(&self, place: Span) -> Option<&Mixed> {
+        let found =
+            self.exprs.iter().zip(&self.spans).find(|(e, s)| matches!(e, Expr::Mixed(_)) && **s == place);
+        match found {
+            Some((Expr::Mixed(id), _)) => self.mixed.get(*id as usize),
+            _ => None,
+        }
+    }
+
     /// The node without the parentheses around it.
     pub fn inside_groups(&self, mut id: ExprId) -> ExprId {
         while let Expr::Group(inner) = self.expr(id) {

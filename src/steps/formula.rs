@@ -66,6 +66,10 @@ pub enum Formula {
     Power(Box<Formula>, Box<Formula>),
     /// Binomial coefficient.
     Choose(u32, u32),
+    /// −a
+    Negate(Box<Formula>),
+    /// `exp`, `ln`, `log10`, `sqrt`, `min`, `max` of figures.
+    Function(&'static str, Vec<Formula>),
     /// P(at least k of these independent things work), `Works`; its complement, `Fails`.
     AtLeast(u32, Vec<usize>, Side),
 }
@@ -121,6 +125,11 @@ impl Formula {
             }
             Formula::Power(a, b) => power(a.evaluate(results), b.evaluate(results).0),
             Formula::Choose(n, k) => (choose(*n, *k), None),
+            Formula::Negate(a) => (-a.evaluate(results).0, None),
+            Formula::Function(name, args) => {
+                let values: Vec<Real> = args.iter().map(|a| a.evaluate(results).0).collect();
+                (function(name, &values), None)
+            }
             Formula::AtLeast(need, members, side) => {
                 let chances: Vec<Chance> = members.iter().map(|m| results[*m]).collect();
                 let chance = at_least::at_least(*need as usize, &chances);
@@ -150,7 +159,8 @@ impl Formula {
                 a.collect(found);
                 b.collect(found);
             }
-            Formula::OneMinus(a) | Formula::ExpMinus(a) => a.collect(found),
+            Formula::OneMinus(a) | Formula::ExpMinus(a) | Formula::Negate(a) => a.collect(found),
+            Formula::Function(_, args) => args.iter().for_each(|f| f.collect(found)),
             Formula::AtLeast(_, members, _) => found.extend(members),
         }
     }
@@ -176,6 +186,18 @@ fn power((base, complement): Tails, exponent: Real) -> Tails {
             (chance.works(), Some(chance.fails()))
         }
         _ => (base.powf(exponent), None),
+    }
+}
+
+fn function(name: &str, values: &[Real]) -> Real {
+    let first = values.first().copied().unwrap_or(Real::ZERO);
+    match name {
+        "exp" => first.exp(),
+        "ln" => first.ln(),
+        "log10" => first.log10(),
+        "sqrt" => first.sqrt(),
+        "min" => values.iter().copied().fold(first, Real::min),
+        _ => values.iter().copied().fold(first, Real::max),
     }
 }
 

@@ -78,6 +78,8 @@ struct Instance {
 enum LabelName {
     Sym(Sym),
     Text(Span),
+    /// A copy of something without a name: only its number shows.
+    Bare,
 }
 
 #[derive(Clone, Copy, Debug)]
@@ -580,7 +582,7 @@ impl Model<'_> {
         }));
     }
 
-    fn unknown_call(&mut self, expr: ExprId, word: Sym) -> Fault {
+    pub(crate) fn unknown_call(&mut self, expr: ExprId, word: Sym) -> Fault {
         let text = self.tree.names.text(word);
         let place = self.tree.span(expr);
         let problem = if words::QUESTIONS.contains(&text) || words::FUNCTIONS.contains(&text) {
@@ -622,7 +624,8 @@ impl Model<'_> {
         let (name, template) = match self.tree.expr(of) {
             Expr::Name(sym) => (LabelName::Sym(sym), self.lookup(sym).map_or(NONE, |d| d.0)),
             Expr::Call(word, _) => (LabelName::Sym(word), NONE),
-            _ => (LabelName::Text(self.tree.span(of)), NONE),
+            Expr::Literal(_) => (LabelName::Text(self.tree.span(of)), NONE),
+            _ => (LabelName::Bare, NONE),
         };
         let label = if visit.whole { outer.label } else { self.next_label(outer.label, name) };
         let parent = self.ctx(ctx).frame;
@@ -836,10 +839,11 @@ impl Model<'_> {
         }
         let mut out = String::new();
         for part in parts.iter().rev() {
-            if !out.is_empty() {
+            if !out.is_empty() && part.name != LabelName::Bare {
                 out.push('.');
             }
             match part.name {
+                LabelName::Bare => {}
                 LabelName::Sym(sym) => out.push_str(self.tree.names.text(sym)),
                 LabelName::Text(span) => out.push_str(self.sources.text(span)),
             }

@@ -1,0 +1,504 @@
+//! Questions that a table or a list answers.
+
+use super::desk::{Desk, node_name};
+use super::figure::{Number, SET_NODES, Subject, chance_text, figure_text, measure, no_thing};
+use super::reply::Reply;
+use crate::engine::cuts::{Minimal, single_points};
+use crate::engine::listing::{CutBy, Limits};
+use crate::engine::minimal::Which;
+use crate::language::{Clause, Expr, ExprId, List, words};
+use crate::number::{Chance, Real, format_number};
+use crate::source::{Code, Problem};
+use crate::steps::{Formula, Outcome, Rule, Side, Step, StepList, folded, shown, write};
+use crate::system::{Base, Exposure, Model, Node, NodeId, Out, STEP};
+
+/// Sets listed where the question does not say how many.
+const FIRST: usize = 100;
+/// The most steps that are written.
+const MOST_STEPS: usize = 10_000;
+
+/// Limits of `cuts(x, order 3)`, `cuts(x, first 20)`.
+///
+/// # Errors
+/// Another choice, or one that is no whole number.
+pub(super) fn limits(model: &mut Model<'_>, args: List) -> Out<Limits> {
+    let mut limits = Limits { first: FIRST, ..Limits::default() };
+    for arg in model.tree.list(args).to_vec().into_iter().skip(1) {
+        let place = model.tree.span(arg);
+        let Expr::Choice(word, value) = model.tree.expr(arg) else { return Err(bad_limit(model, place)) };
+        let Some(value @ 1..) = model.figure(value)?.whole() else { return Err(bad_limit(model, place)) };
+        match model.tree.names.text(word) {
+            "order" => limits.order = Some(u64::from(value)),
+            "first" => limits.first = value as usize,
+            _ => return Err(bad_limit(model, place)),
+        }
+    }
+    Ok(limits)
+}
+
+fn bad_limit(model: &mut Model<'_>, place: crate::source::Span) -> crate::system::Fault {
+    model.fault(
+        Problem::error(
+            Code::WrongArguments,
+            place,
+            "a list of sets is limited by `order` or `first` and a whole number",
+        )
+        .mend("write `cuts(x, order 3)` or `cuts(x, first 20)`"),
+    )
+}
+
+impl Desk {
+    /// The answer to a question whose answer is a list; `None` where it is a number.
+    ///
+    /// # Errors
+    /// What prevents it.
+    pub fn list(&mut self, model: &mut Model<'_>, expr: ExprId) -> Out<Option<Reply>> {
+        let call = model.tree.inside_groups(expr);
+        let Expr::Call(word, args) = model.tree.expr(call) else { return Ok(None) };
+        let text = model.tree.names.text(word).to_string();
+        if !matches!(
+            text.as_str(),
+            "cuts" | "paths" | "single points" | "rank" | "steps" | "assumptions" | "inputs"
+        ) {
+            return Ok(None);
+        }
+        let Some(&thing) = model.tree.list(args).first() else { return Err(no_thing(model, call)) };
+        if text == "steps" {
+            let steps = self.steps(model, thing)?;
+            return Ok(Some(self.steps_reply(model, &steps)));
+        }
+        self.no_figure(model, thing)?;
+        match text.as_str() {
+            "cuts" => self.sets(model, call, args, Which::Cuts).map(Some),
+            "paths" => self.sets(model, call, args, Which::Paths).map(Some),
+            "single points" => self.single_points(model, call, args).map(Some),
+            "rank" => self.rank_table(model, call, args).map(Some),
+            "assumptions" => {
+                let prepared = self.prepare(model, thing)?;
+                let given: Vec<ExprId> = model.tree.list(args)[1..].to_vec();
+                let exposure = self.exposure(model, &given, model.tree.span(call))?;
+                let entries =
+                    assumptions(model, &prepared.system, &exposure).into_iter().map(|l| vec![l]).collect();
+                Ok(Some(Reply::List { entries, numbered: false }))
+            }
+            _ => self.inputs(model, thing).map(Some),
+        }
+    }
+
+    fn sets(&mut self, model: &mut Model<'_>, call: ExprId, args: List, which: Which) -> Out<Reply> {
+        let limits = limits(model, args)?;
+        let thing = model.tree.list(args)[0];
+        let subject = self.subject(model, call, args, usize::MAX)?;
+        let minimal = match Minimal::new(&subject.prepared.plan, which, SET_NODES) {
+            Ok(minimal) => minimal,
+            Err(large) => return Err(super::desk::too_large(model, thing, large.limit)),
+        };
+        let sets = minimal.list(&subject.valued.chances, limits);
+        if sets.sets.is_empty() && sets.cut_by.is_none() {
+            return Ok(Reply::Line(match which {
+                Which::Cuts => "none: it cannot fail".to_string(),
+                Which::Paths => "none: it cannot fail, whatever else does".to_string(),
+            }));
+        }
+        let foot = sets.cut_by.map(|cut| {
+            let total = minimal.count().map_or_else(|_| "more".to_string(), |n| n.to_string());
+            match cut {
+                CutBy::Order => format!("… {total} in all; those of higher order are left out"),
+                CutBy::First => format!("… {total} in all; the first {} are shown", sets.sets.len()),
+                CutBy::Work { complete } => {
+                    format!("… {total} in all; complete up to order {complete}, the rest would take too long")
+                }
+            }
+        });
+        let (title, measure) = match which {
+            Which::Cuts => ("cut set", "all have failed"),
+            Which::Paths => ("path set", "all work"),
+        };
+        let rows = sets
+            .sets
+            .iter()
+            .zip(&sets.chances)
+            .map(|(set, chance)| {
+                let names: Vec<String> = set
+                    .iter()
+                    .map(|l| model.leaf_name(&subject.prepared.system.leaves[*l as usize]))
+                    .collect();
+                vec![
+                    set.len().to_string(),
+                    names.join(", "),
+                    probability_text(model, *chance, which, &subject, set),
+                ]
+            })
+            .collect();
+        let head = vec!["order".to_string(), title.to_string(), measure.to_string()];
+        Ok(Reply::Table { head, rows, foot })
+    }
+
+    fn single_points(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
+        let subject = self.subject(model, call, args, 1)?;
+        let points = single_points(&subject.prepared.plan);
+        if points.is_empty() {
+            return Ok(Reply::Line("none: no thing alone can fail it".to_string()));
+        }
+        let mut rows: Vec<(Real, Vec<String>)> = points
+            .iter()
+            .map(|&number| {
+                let chance = subject.valued.chances[number as usize];
+                let name = model.leaf_name(&subject.prepared.system.leaves[number as usize]);
+                let fails = chance_text(chance, Side::Fails, model.digits, subject.valued.bound);
+                (chance.fails(), vec![name, fails])
+            })
+            .collect();
+        rows.sort_by(|a, b| b.0.partial_cmp(&a.0).unwrap_or(std::cmp::Ordering::Equal));
+        let rows = rows.into_iter().map(|(_, r)| r).collect();
+        Ok(Reply::Table { head: vec!["single point".to_string(), "F".to_string()], rows, foot: None })
+    }
+
+    fn rank_table(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
+        const COLUMNS: [&str; 7] = ["Birnbaum", "criticality", "FV", "RAW", "RRW", "doubled", "made perfect"];
+        let subject = self.subject(model, call, args, 1)?;
+        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given);
+        let system = &subject.prepared.system;
+        let mut lines: Vec<(f64, ExprId, Vec<String>, Vec<String>)> = Vec::new();
+        for (number, leaf) in system.leaves.iter().enumerate() {
+            let Some(block) = subject.prepared.plan.of_leaf(number as u32) else { continue };
+            let Some(found) = ranked.get(block.0 as usize).copied().flatten() else { continue };
+            let weight = (found.birnbaum * found.own.fails()).to_f64();
+            let mut cells = vec![chance_text(found.own, Side::Fails, model.digits, subject.valued.bound)];
+            for word in COLUMNS {
+                cells.push(match measure(word, &found, subject.valued.chance, subject.valued.bound) {
+                    Number::Figure(q) => figure_text(model, &q, None).unwrap_or_default(),
+                    Number::Infinite => "infinite".to_string(),
+                    _ => "none".to_string(),
+                });
+            }
+            lines.push((weight, leaf.template, vec![model.leaf_name(leaf)], cells));
+        }
+        if lines.is_empty() {
+            return Ok(Reply::Line("none: nothing in it can fail".to_string()));
+        }
+        // Highest first; like copies with like values become one row.
+        lines.sort_by(|a, b| b.0.total_cmp(&a.0));
+        let mut rows: Vec<(ExprId, Vec<String>, Vec<String>)> = Vec::new();
+        let mut at: rustc_hash::FxHashMap<(ExprId, Vec<String>), usize> = rustc_hash::FxHashMap::default();
+        for (_, template, name, cells) in lines {
+            match at.get(&(template, cells.clone())) {
+                Some(&row) => rows[row].1.extend(name),
+                None => {
+                    at.insert((template, cells.clone()), rows.len());
+                    rows.push((template, name, cells));
+                }
+            }
+        }
+        let mut head = vec!["thing".to_string(), "F".to_string()];
+        head.extend(COLUMNS.iter().map(|c| (*c).to_string()));
+        let rows = rows
+            .into_iter()
+            .map(|(_, names, cells)| std::iter::once(folded(&names)).chain(cells).collect())
+            .collect();
+        Ok(Reply::Table { head, rows, foot: None })
+    }
+
+    fn inputs(&mut self, model: &mut Model<'_>, thing: ExprId) -> Out<Reply> {
+        let prepared = self.prepare(model, thing)?;
+        let mut rows: Vec<(u32, Vec<String>)> = Vec::new();
+        let mut at: rustc_hash::FxHashMap<u32, usize> = rustc_hash::FxHashMap::default();
+        for (name, item) in model.things_under(prepared.asked) {
+            match at.get(&item) {
+                Some(&row) => rows[row].1.push(name),
+                None => {
+                    at.insert(item, rows.len());
+                    rows.push((item, vec![name]));
+                }
+            }
+        }
+        for leaf in &prepared.system.leaves {
+            if !at.contains_key(&leaf.item) {
+                at.insert(leaf.item, rows.len());
+                rows.push((leaf.item, vec![model.leaf_name(leaf)]));
+            }
+        }
+        let rows = rows
+            .into_iter()
+            .map(|(item, names)| {
+                let item = model.item(item);
+                let data = if item.clauses.is_empty() {
+                    item.fixed.map_or(String::new(), |(c, _)| super::plain(c.works()))
+                } else {
+                    let own = item.clauses.iter().filter(|c| c.word != words::ClauseWord::Source);
+                    own.map(|c| clause_text(model, c)).collect::<Vec<_>>().join(", ")
+                };
+                let source = item
+                    .source
+                    .map_or("no source given".to_string(), |s| model.tree.names.text(s).to_string());
+                vec![folded(&names), data, source]
+            })
+            .collect();
+        let head = ["thing", "data", "source"].map(str::to_string).to_vec();
+        Ok(Reply::Table { head, rows, foot: None })
+    }
+
+    /// The steps of `R(x)`, `F(x)` or a formula of them.
+    ///
+    /// # Errors
+    /// What prevents the answer itself, or that there are too many steps.
+    pub fn steps(&mut self, model: &mut Model<'_>, asked: ExprId) -> Out<StepList> {
+        let inner = model.tree.inside_groups(asked);
+        let mut list = StepList::default();
+        if let Expr::Call(word, args) = model.tree.expr(inner)
+            && matches!(model.tree.names.text(word), "R" | "F")
+        {
+            let _certain = self.steps_of(model, inner, args, &mut list)?;
+            return Ok(list);
+        }
+        let number = self.number(model, asked)?;
+        let Number::Figure(quantity) = number else {
+            let place = model.tree.span(asked);
+            return Err(model.fault(
+                Problem::error(Code::WrongKind, place, "steps are written for R, F and formulas of them")
+                    .mend("write `steps(R(feed))`"),
+            ));
+        };
+        let formula = self.formula(model, inner, &mut list)?;
+        let unit = model.units.symbol(&quantity.dim, &model.tree.names);
+        let works = formula.clone();
+        let fails = formula.one_minus();
+        let place = Some(model.tree.span(asked));
+        list.steps.push(Step {
+            thing: model.text_of(asked),
+            place,
+            rule: Rule::Arithmetic,
+            works,
+            fails,
+            shown: Side::Works,
+            outcome: Outcome::Figure(quantity.value, unit),
+        });
+        Ok(list)
+    }
+
+    /// Adds the steps of one `R(…)` or `F(…)`; its last step, or what it is for certain.
+    fn steps_of(
+        &mut self,
+        model: &mut Model<'_>,
+        call: ExprId,
+        args: List,
+        list: &mut StepList,
+    ) -> Out<Result<usize, bool>> {
+        let Subject { prepared, given, thing, .. } = self.subject(model, call, args, 1)?;
+        if prepared.plan.len() > MOST_STEPS {
+            let text = model.text_of(thing);
+            let place = model.tree.span(call);
+            return Err(model.fault(
+                Problem::error(
+                    Code::TooLarge,
+                    place,
+                    format!("the steps of `{text}` would be more than {MOST_STEPS}"),
+                )
+                .mend("ask for the steps of its parts"),
+            ));
+        }
+        let exposure = self.exposure(model, &given, model.tree.span(call))?;
+        let known = std::mem::take(list);
+        let (mut done, root) = write(model, &prepared.system, &prepared.plan, &exposure, known);
+        for line in assumptions(model, &prepared.system, &exposure) {
+            if !done.assumptions.contains(&line) {
+                done.assumptions.push(line);
+            }
+        }
+        if let Err(works) = root {
+            done.remarks.push(format!(
+                "{} {} for certain",
+                model.text_of(thing),
+                if works { "works" } else { "fails" }
+            ));
+        }
+        *list = done;
+        Ok(root)
+    }
+
+    /// A formula of questions and figures as a tree; the steps of its questions go to `list`.
+    fn formula(&mut self, model: &mut Model<'_>, expr: ExprId, list: &mut StepList) -> Out<Formula> {
+        let place = model.tree.span(expr);
+        self.depth += 1;
+        let out = if self.depth > 100 {
+            Err(model.fault(
+                Problem::error(Code::TooDeep, place, "this formula is nested too deep for its steps")
+                    .mend("give parts of it names on lines of their own"),
+            ))
+        } else {
+            self.formula_inner(model, expr, list)
+        };
+        self.depth -= 1;
+        out
+    }
+
+    fn formula_inner(&mut self, model: &mut Model<'_>, expr: ExprId, list: &mut StepList) -> Out<Formula> {
+        use crate::language::ArithOp;
+        Ok(match model.tree.expr(expr) {
+            Expr::Group(inner) => self.formula(model, inner, list)?,
+            Expr::Negate(inner) => Formula::Negate(Box::new(self.formula(model, inner, list)?)),
+            Expr::Arith(op, a, b) => {
+                let (a, b) = (self.formula(model, a, list)?, self.formula(model, b, list)?);
+                match op {
+                    ArithOp::Add => Formula::Sum(vec![a, b]),
+                    ArithOp::Sub if a == Formula::Whole(1) => b.one_minus(),
+                    ArithOp::Sub => Formula::Sum(vec![a, Formula::Negate(Box::new(b))]),
+                    ArithOp::Mul => Formula::Product(vec![a, b]),
+                    ArithOp::Div => Formula::Quotient(Box::new(a), Box::new(b)),
+                    ArithOp::Pow => Formula::Power(Box::new(a), Box::new(b)),
+                }
+            }
+            Expr::Call(word, args) => {
+                let text = model.tree.names.text(word);
+                if let Some(name) = words::FUNCTIONS.iter().find(|f| **f == text) {
+                    let args = model.tree.list(args).to_vec();
+                    let args =
+                        args.into_iter().map(|a| self.formula(model, a, list)).collect::<Out<Vec<_>>>()?;
+                    return Ok(Formula::Function(name, args));
+                }
+                if matches!(text, "R" | "F") {
+                    let side = if text == "R" { Side::Works } else { Side::Fails };
+                    return Ok(match self.steps_of(model, expr, args, list)? {
+                        Ok(step) => Formula::Step(step, side),
+                        Err(works) => Formula::Whole(u32::from(works == (side == Side::Works))),
+                    });
+                }
+                self.datum(model, expr)?
+            }
+            Expr::Name(sym) => match model.lookup(sym).and_then(|d| model.def(d).value) {
+                Some(value)
+                    if matches!(
+                        model.tree.expr(model.tree.inside_groups(value)),
+                        Expr::Arith(..) | Expr::Call(..)
+                    ) =>
+                {
+                    self.formula(model, value, list)?
+                }
+                _ => self.datum(model, expr)?,
+            },
+            Expr::Literal(_) => {
+                let quantity = model.figure(expr)?;
+                if quantity.whole() == Some(1) { Formula::Whole(1) } else { self.datum(model, expr)? }
+            }
+            _ => self.datum(model, expr)?,
+        })
+    }
+
+    fn datum(&mut self, model: &mut Model<'_>, expr: ExprId) -> Out<Formula> {
+        let quantity = model.figure_with(expr, crate::system::Ctx::TOP, self)?;
+        let unit = model.units.symbol(&quantity.dim, &model.tree.names);
+        let number = super::plain(quantity.value);
+        let text = if unit.is_empty() { number } else { format!("{number} {unit}") };
+        Ok(Formula::Datum {
+            symbol: model.text_of(expr),
+            value: quantity.value,
+            complement: quantity.complement,
+            text,
+        })
+    }
+
+    /// Steps as a numbered list.
+    pub fn steps_reply(&self, model: &Model<'_>, list: &StepList) -> Reply {
+        let digits = (model.digits + 3).min(15);
+        let mut entries: Vec<Vec<String>> = Vec::new();
+        for step in shown(list, model.sources, digits) {
+            let mut about = vec![step.thing.clone()];
+            about.extend((!step.place.is_empty()).then(|| step.place.clone()));
+            about.push(step.rule.to_string());
+            if !step.rests_on.is_empty() {
+                let on: Vec<String> = step.rests_on.iter().map(ToString::to_string).collect();
+                about.push(format!("from {}", on.join(", ")));
+            }
+            let mut formula = format!("{} = {}", step.left, step.symbols);
+            if step.numbers != step.symbols {
+                formula.push_str(&format!(" = {}", step.numbers));
+            }
+            if step.result != step.numbers {
+                formula.push_str(&format!(" = {}", step.result));
+            }
+            if !step.other.is_empty() {
+                formula.push_str(&format!("; {}", step.other));
+            }
+            entries.push(vec![about.join(", "), formula]);
+        }
+        for remark in &list.remarks {
+            entries.push(vec![remark.clone()]);
+        }
+        for line in &list.assumptions {
+            entries.push(vec![format!("assumed: {line}")]);
+        }
+        Reply::List { entries, numbered: true }
+    }
+}
+
+fn probability_text(model: &Model<'_>, value: Real, which: Which, subject: &Subject, set: &[u32]) -> String {
+    let bound = subject.valued.bound + set.len() as f64 * STEP;
+    // A path set's chance is near 1 and counts its digits on the other side.
+    let side = if which == Which::Cuts { Side::Fails } else { Side::Works };
+    let chance = match which {
+        Which::Paths => set.iter().fold(Chance::PERFECT, |c, l| c.and(subject.valued.chances[*l as usize])),
+        Which::Cuts => Chance::new(Real::ONE - value, value),
+    };
+    if value.is_zero() {
+        return format_number(value, model.digits, bound).unwrap_or_else(|| "0".to_string());
+    }
+    chance_text(chance, side, model.digits, bound)
+}
+
+fn clause_text(model: &Model<'_>, clause: &Clause) -> String {
+    model.sources.text(clause.span).split_whitespace().collect::<Vec<_>>().join(" ")
+}
+
+/// The defaults that act on a system under an exposure.
+pub fn assumptions(model: &Model<'_>, system: &crate::system::System, exposure: &Exposure) -> Vec<String> {
+    let mut lines = Vec::new();
+    let mut groups: Vec<String> = Vec::new();
+    for number in 0..system.structure.len() as u32 {
+        let node = NodeId(number);
+        if let Node::AtLeast { need, .. } = system.structure.node(node)
+            && (need as usize) < system.structure.members(node).len()
+        {
+            let name = node_name(model, system, node).unwrap_or_else(|| {
+                system
+                    .places
+                    .get(number as usize)
+                    .copied()
+                    .flatten()
+                    .map_or(String::new(), |e| model.text_of(e))
+            });
+            if !groups.contains(&name) {
+                groups.push(name);
+            }
+        }
+    }
+    if !groups.is_empty() {
+        lines.push(format!("no common cause in the redundant groups: {}", folded(&groups)));
+    }
+    lines.push("things fail independently of each other".to_string());
+    let names_where = |wanted: &dyn Fn(&crate::system::Item) -> bool| {
+        let mut names: Vec<String> = Vec::new();
+        for leaf in &system.leaves {
+            if wanted(model.item(leaf.item)) {
+                names.push(model.leaf_name(leaf));
+            }
+        }
+        names
+    };
+    let ageing = names_where(&|item| !item.ageing.is_empty());
+    if !ageing.is_empty() {
+        lines.push(format!(
+            "constant failure rates, all new at the start, nothing repaired meanwhile: {}",
+            folded(&ageing)
+        ));
+    }
+    let fixed = names_where(&|item| item.fixed.is_some());
+    if !fixed.is_empty() {
+        let how = if exposure.asked { "whatever the exposure asked" } else { "for one mission" };
+        lines.push(format!("probabilities taken as given, {how}: {}", folded(&fixed)));
+    }
+    let full = names_where(&|item| item.duty.is_none() && item.ageing.iter().any(|a| a.base == Base::Time));
+    if !full.is_empty() {
+        lines.push(format!("running all of the time (duty 100%): {}", folded(&full)));
+    }
+    lines
+}

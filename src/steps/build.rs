@@ -1,0 +1,592 @@
+//! From a plan and its data to steps: each step's result is what its formula
+//! evaluates to.
+
+use super::formula::{Formula, Side};
+use super::list::{Outcome, Rule, Step, StepList};
+use crate::engine::diagram;
+use crate::engine::plan::{Block, BlockId, Plan, Stands};
+use crate::number::{Chance, Real};
+use crate::source::Span;
+use crate::system::{Base, Exposure, Item, Model, NodeId, Pace, System};
+use rustc_hash::FxHashMap;
+
+/// Members of an unlike k of n whose states are written out one by one.
+const WRITTEN_OUT: usize = 4;
+/// Members of a like k of n whose binomial terms are written out.
+const BINOMIAL: usize = 12;
+
+/// What a block comes to among the steps.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+enum Operand {
+    Step(usize),
+    Works,
+    Fails,
+}
+
+/// Writes the steps of one system.
+struct Writer<'w, 'a> {
+    model: &'w Model<'a>,
+    system: &'w System,
+    plan: &'w Plan,
+    exposure: &'w Exposure,
+    list: StepList,
+    results: Vec<Chance>,
+    known: FxHashMap<String, usize>,
+    blocks: Vec<Option<Operand>>,
+    names: Vec<Vec<String>>,
+}
+
+/// Adds the steps of a system to `list`; returns the number of its last step,
+/// or what it is for certain.
+pub fn write(
+    model: &Model<'_>,
+    system: &System,
+    plan: &Plan,
+    exposure: &Exposure,
+    list: StepList,
+) -> (StepList, Result<usize, bool>) {
+    let results = list.results();
+    let names = list.steps.iter().map(|s| vec![s.thing.clone()]).collect();
+    let mut writer = Writer {
+        model,
+        system,
+        plan,
+        exposure,
+        list,
+        results,
+        known: FxHashMap::default(),
+        blocks: vec![None; plan.len()],
+        names,
+    };
+    for id in plan.blocks() {
+        if !plan.is_case(id) {
+            let operand = writer.main_block(id);
+            writer.blocks[id.0 as usize] = Some(operand);
+        }
+    }
+    let root = writer.operand(plan.root());
+    writer.finish_names();
+    let root = match root {
+        Operand::Step(step) => Ok(step),
+        Operand::Works => Err(true),
+        Operand::Fails => Err(false),
+    };
+    (writer.list, root)
+}
+
+impl Writer<'_, '_> {
+    fn operand(&self, id: BlockId) -> Operand {
+        self.blocks[id.0 as usize].unwrap_or(Operand::Fails)
+    }
+
+    fn main_block(&mut self, id: BlockId) -> Operand {
+        match self.plan.block(id) {
+            Block::Works => Operand::Works,
+            Block::Fails => Operand::Fails,
+            Block::Leaf(leaf) => Operand::Step(self.leaf(leaf)),
+            Block::Independent { need, .. } => {
+                let members: Vec<Operand> = self.plan.members(id).iter().map(|m| self.operand(*m)).collect();
+                let (name, place) = self.about(id);
+                self.vote(need as usize, &members, name, place, "")
+            }
+            Block::Conditioned { .. } => {
+                let (name, place) = self.about(id);
+                self.case(id, &name, place, &mut Vec::new())
+            }
+            Block::Diagram => self.diagram(id),
+        }
+    }
+
+    /// The name and the place of what a block stands for.
+    fn about(&self, id: BlockId) -> (String, Option<Span>) {
+        match self.plan.stands(id) {
+            Stands::Node(node) | Stands::Given(node) => (self.node_name(node), self.node_place(node)),
+            Stands::Part(node) => {
+                let members = self.plan.group(id).map_or(&[][..], |g| &g.members);
+                let names: Vec<String> = members.iter().map(|m| self.node_name(*m)).collect();
+                (format!("in {}: {}", self.node_name(node), names.join(", ")), self.node_place(node))
+            }
+        }
+    }
+
+    fn node_name(&self, node: NodeId) -> String {
+        if let Some(name) = self.system.names.get(&node) {
+            return name.clone();
+        }
+        if let crate::system::Node::Leaf(leaf) = self.system.structure.node(node) {
+            return self.model.leaf_name(&self.system.leaves[leaf as usize]);
+        }
+        let text = match self.system.places.get(node.0 as usize).copied().flatten() {
+            Some(expr) => self.model.text_of(expr),
+            None => "the whole".to_string(),
+        };
+        shortened(&text)
+    }
+
+    fn node_place(&self, node: NodeId) -> Option<Span> {
+        let expr = self.system.places.get(node.0 as usize).copied().flatten()?;
+        Some(self.model.tree.span(expr))
+    }
+
+    /// Adds a step, or finds the one that computes the same for a like thing.
+    fn add(
+        &mut self,
+        key: String,
+        name: String,
+        place: Option<Span>,
+        rule: Rule,
+        tails: (Formula, Formula),
+        shown: Side,
+    ) -> usize {
+        if let Some(&step) = self.known.get(&key) {
+            if !self.names[step].contains(&name) {
+                self.names[step].push(name);
+            }
+            return step;
+        }
+        let (works, fails) = tails;
+        let chance = Chance::new(works.evaluate(&self.results).0, fails.evaluate(&self.results).0);
+        self.results.push(chance);
+        self.names.push(vec![name.clone()]);
+        self.list.steps.push(Step {
+            thing: name,
+            place,
+            rule,
+            works,
+            fails,
+            shown,
+            outcome: Outcome::Chance(chance),
+        });
+        let step = self.list.steps.len() - 1;
+        self.known.insert(key, step);
+        step
+    }
+
+    fn finish_names(&mut self) {
+        for (step, names) in self.list.steps.iter_mut().zip(&self.names) {
+            step.thing = folded(names);
+        }
+    }
+
+    fn leaf(&mut self, number: u32) -> usize {
+        let leaf = self.system.leaves[number as usize];
+        let item = self.model.item(leaf.item);
+        let name = self.model.leaf_name(&leaf);
+        let place = self.model.tree.span(leaf.template);
+        let (rule, tails, shown) = self.item_formula(item);
+        // Copies of one template have the same data; so do items on one right side.
+        self.add(format!("item {}", leaf.item), name, Some(place), rule, tails, shown)
+    }
+
+    fn item_formula(&self, item: &Item) -> (Rule, (Formula, Formula), Side) {
+        let mut factors = Vec::new();
+        let mut shown = Side::Works;
+        if let Some((chance, clause)) = item.fixed {
+            let fails = clause.is_some_and(|c| c.word == crate::language::words::ClauseWord::Fails);
+            let (symbol, value, complement) = if fails {
+                ("q", chance.fails(), chance.works())
+            } else {
+                ("p", chance.works(), chance.fails())
+            };
+            let datum = Formula::Datum {
+                symbol: symbol.to_string(),
+                value,
+                complement: Some(complement),
+                text: plain(value),
+            };
+            if item.ageing.is_empty() {
+                let other = datum.clone().one_minus();
+                let tails = if fails { (other, datum) } else { (datum, other) };
+                return (Rule::Given, tails, if fails { Side::Fails } else { Side::Works });
+            }
+            factors.push(if fails { datum.one_minus() } else { datum });
+        }
+        let mut hazards = Vec::new();
+        for ageing in &item.ageing {
+            let amount = self.amount(item, ageing.base);
+            match &ageing.pace {
+                Pace::Rate(rate) => {
+                    let mut product = vec![self.datum("λ", rate.value, &rate.dim)];
+                    product.extend(amount);
+                    hazards.push(Formula::product(product));
+                }
+                Pace::Mean(mean) => hazards.push(Formula::Quotient(
+                    Box::new(Formula::product(amount)),
+                    Box::new(self.datum("θ", mean.value, &mean.dim)),
+                )),
+                Pace::Each(each) => {
+                    let q = Formula::Datum {
+                        symbol: "q".to_string(),
+                        value: each.fails(),
+                        complement: Some(each.works()),
+                        text: plain(each.fails()),
+                    };
+                    factors.push(Formula::Power(Box::new(q.one_minus()), Box::new(Formula::product(amount))));
+                }
+                Pace::Over(each, over) => {
+                    let p = Formula::Datum {
+                        symbol: "p".to_string(),
+                        value: each.works(),
+                        complement: Some(each.fails()),
+                        text: plain(each.works()),
+                    };
+                    let ratio = Formula::Quotient(
+                        Box::new(Formula::product(amount)),
+                        Box::new(self.datum("T", over.value, &over.dim)),
+                    );
+                    factors.push(Formula::Power(Box::new(p), Box::new(ratio)));
+                }
+            }
+        }
+        if !hazards.is_empty() {
+            factors.push(Formula::ExpMinus(Box::new(Formula::sum(hazards))));
+            shown = if item.fixed.is_none() && factors.len() == 1 { Side::Fails } else { Side::Works };
+        }
+        let works = Formula::product(factors);
+        let fails = works.clone().one_minus();
+        (Rule::Exposure, (works, fails), shown)
+    }
+
+    fn datum(&self, symbol: &str, value: Real, dim: &crate::system::Dim) -> Formula {
+        let unit = self.model.units.symbol(dim, &self.model.tree.names);
+        let text = if unit.is_empty() { plain(value) } else { format!("{} {unit}", plain(value)) };
+        Formula::Datum { symbol: symbol.to_string(), value, complement: None, text }
+    }
+
+    /// The exposure that an item bears, as factors.
+    fn amount(&self, item: &Item, base: Base) -> Vec<Formula> {
+        let mut factors = Vec::new();
+        if let Some(duty) = &item.duty {
+            factors.push(self.datum("duty", duty.value, &duty.dim));
+        }
+        if let Some(stress) = &item.stress {
+            factors.push(self.datum("stress", stress.value, &stress.dim));
+        }
+        let parts: Vec<Formula> = self.exposure.of(base).map(|part| self.phase(part, base)).collect();
+        factors.push(Formula::sum(parts));
+        factors
+    }
+
+    fn phase(&self, part: &crate::system::Part, base: Base) -> Formula {
+        let names = &self.model.tree.names;
+        let symbol = match (part.name, base) {
+            (Some(name), _) => format!("t({})", names.text(name)),
+            (None, Base::Word(word)) => format!("n({})", names.text(word)),
+            (None, _) => "t".to_string(),
+        };
+        let amount = self.datum(&symbol, part.amount.value, &part.amount.dim);
+        match &part.stress {
+            Some(stress) => {
+                let name = part.name.map_or("stress".to_string(), |n| format!("stress({})", names.text(n)));
+                Formula::Product(vec![self.datum(&name, stress.value, &stress.dim), amount])
+            }
+            None => amount,
+        }
+    }
+
+    /// At least `need` of members that share nothing.
+    fn vote(
+        &mut self,
+        need: usize,
+        members: &[Operand],
+        name: String,
+        place: Option<Span>,
+        case: &str,
+    ) -> Operand {
+        let fixed = members.iter().filter(|m| **m == Operand::Works).count();
+        let steps: Vec<usize> = members
+            .iter()
+            .filter_map(|m| match m {
+                Operand::Step(step) => Some(*step),
+                _ => None,
+            })
+            .collect();
+        let need = need.saturating_sub(fixed);
+        if need == 0 {
+            return Operand::Works;
+        }
+        if need > steps.len() {
+            return Operand::Fails;
+        }
+        if let [only] = steps.as_slice() {
+            return Operand::Step(*only);
+        }
+        let mut sorted = steps.clone();
+        sorted.sort_unstable();
+        let key = format!("{case}{need} of {sorted:?}");
+        let (rule, tails, shown) = vote_formula(need, &steps);
+        Operand::Step(self.add(key, name, place, rule, tails, shown))
+    }
+
+    /// A block of a group under conditions; recursion is as deep as there are
+    /// cases, which the planner bounds.
+    fn case(&mut self, id: BlockId, base: &str, place: Option<Span>, given: &mut Vec<String>) -> Operand {
+        if self.plan.is_case(id) || given.is_empty() {
+            match self.plan.block(id) {
+                Block::Conditioned { on, works, failed } => {
+                    return self.conditioned(id, on, works, failed, base, place, given);
+                }
+                Block::Independent { need, .. } => {
+                    let members: Vec<BlockId> = self.plan.members(id).to_vec();
+                    let operands: Vec<Operand> =
+                        members.into_iter().map(|m| self.case(m, base, place, given)).collect();
+                    let (own, own_place) = self.about(id);
+                    let name = format!("{own}, given {}", given.join(", "));
+                    return self.vote(need as usize, &operands, name, own_place, "case ");
+                }
+                Block::Works => return Operand::Works,
+                Block::Fails => return Operand::Fails,
+                Block::Leaf(_) | Block::Diagram => {}
+            }
+        }
+        self.operand(id)
+    }
+
+    #[expect(clippy::too_many_arguments, reason = "one call site; the parts of one conditioned block")]
+    fn conditioned(
+        &mut self,
+        id: BlockId,
+        on: BlockId,
+        works: BlockId,
+        failed: BlockId,
+        base: &str,
+        place: Option<Span>,
+        given: &mut Vec<String>,
+    ) -> Operand {
+        let (on_name, _) = self.about(on);
+        given.push(format!("{on_name} works"));
+        let up = self.case(works, base, place, given);
+        given.pop();
+        given.push(format!("{on_name} has failed"));
+        let down = self.case(failed, base, place, given);
+        given.pop();
+        let condition = self.operand(on);
+        let Operand::Step(condition) = condition else {
+            return if condition == Operand::Works { up } else { down };
+        };
+        if up == down {
+            return up;
+        }
+        let tails = (total(condition, up, down, Side::Works), total(condition, up, down, Side::Fails));
+        let shown = if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
+        let own = if given.is_empty() {
+            base.to_string()
+        } else {
+            format!("{}, given {}", self.about(id).0, given.join(", "))
+        };
+        Operand::Step(self.add(
+            format!("on {condition}: {up:?} {down:?}"),
+            own,
+            place,
+            Rule::TotalProbability,
+            tails,
+            shown,
+        ))
+    }
+
+    fn smaller_is_failure(&self, tails: &(Formula, Formula)) -> bool {
+        tails.1.evaluate(&self.results).0 < tails.0.evaluate(&self.results).0
+    }
+
+    /// One step for each node of a diagram, from the ends up.
+    fn diagram(&mut self, id: BlockId) -> Operand {
+        let (name, place) = self.about(id);
+        let Some(group) = self.plan.group(id) else { return Operand::Fails };
+        let frontier: Vec<Operand> = group.frontier.iter().map(|b| self.operand(*b)).collect();
+        let variables: Vec<String> = group.frontier.iter().map(|b| self.about(*b).0).collect();
+        let branches: Vec<diagram::Branch> = group.diagram.nodes().to_vec();
+        let root = group.diagram.root() as usize;
+        let mut done: Vec<Operand> = Vec::with_capacity(branches.len());
+        self.list.remarks.push(format!(
+            "{name} shares too much to be written in a few cases: its steps are the {} nodes of a decision diagram",
+            branches.len().saturating_sub(2)
+        ));
+        for (at, branch) in branches.iter().enumerate() {
+            let operand = match at as u32 {
+                diagram::FAILS => Operand::Fails,
+                diagram::WORKS => Operand::Works,
+                _ => {
+                    let (up, down) = (done[branch.works as usize], done[branch.fails as usize]);
+                    match frontier[branch.variable as usize] {
+                        Operand::Works => up,
+                        Operand::Fails => down,
+                        Operand::Step(on) => {
+                            let tails = (total(on, up, down, Side::Works), total(on, up, down, Side::Fails));
+                            let own = if at == root {
+                                name.clone()
+                            } else {
+                                format!("{name}, node {} on {}", at - 1, variables[branch.variable as usize])
+                            };
+                            let shown =
+                                if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
+                            let key = format!("node {} {at}", id.0);
+                            Operand::Step(self.add(key, own, place, Rule::DiagramNode, tails, shown))
+                        }
+                    }
+                }
+            };
+            done.push(operand);
+        }
+        done.get(root).copied().unwrap_or(Operand::Fails)
+    }
+}
+
+/// R(x) · side(up) + F(x) · side(down), without the terms that are 0.
+fn total(on: usize, up: Operand, down: Operand, side: Side) -> Formula {
+    let certain = if side == Side::Works { Operand::Works } else { Operand::Fails };
+    let mut terms = Vec::new();
+    for (weight, case) in [(Side::Works, up), (Side::Fails, down)] {
+        let weight = Formula::Step(on, weight);
+        match case {
+            Operand::Step(step) => terms.push(Formula::Product(vec![weight, Formula::Step(step, side)])),
+            case if case == certain => terms.push(weight),
+            _ => {}
+        }
+    }
+    if terms.is_empty() { Formula::Whole(0) } else { Formula::sum(terms) }
+}
+
+fn vote_formula(need: usize, steps: &[usize]) -> (Rule, (Formula, Formula), Side) {
+    let n = steps.len();
+    if need == n {
+        let works = powers(steps, Side::Works);
+        let fails = works.clone().one_minus();
+        return (Rule::Series, (works, fails), Side::Works);
+    }
+    if need == 1 {
+        let fails = powers(steps, Side::Fails);
+        let works = fails.clone().one_minus();
+        return (Rule::Parallel, (works, fails), Side::Fails);
+    }
+    let alike = steps.iter().all(|s| *s == steps[0]);
+    let shown = if n - need < need { Side::Works } else { Side::Fails };
+    if alike && n <= BINOMIAL {
+        let term = |j: usize| binomial_term(steps[0], n as u32, j as u32);
+        let works = Formula::sum((need..=n).map(term).collect());
+        let fails = Formula::sum((0..need).map(term).collect());
+        return (Rule::LikeVote, (works, fails), shown);
+    }
+    if n <= WRITTEN_OUT {
+        let states = |wanted: bool| {
+            let terms = (0..1_u32 << n).rev().filter(|s| (s.count_ones() as usize >= need) == wanted);
+            Formula::sum(terms.map(|s| state(steps, s)).collect())
+        };
+        return (Rule::UnlikeVote, (states(true), states(false)), shown);
+    }
+    let rule = if alike { Rule::LikeVote } else { Rule::UnlikeVote };
+    let of = |side| Formula::AtLeast(need as u32, steps.to_vec(), side);
+    (rule, (of(Side::Works), of(Side::Fails)), shown)
+}
+
+/// The probability of exactly this set of working members.
+fn state(steps: &[usize], working: u32) -> Formula {
+    let side = |i: usize| if working >> i & 1 == 1 { Side::Works } else { Side::Fails };
+    Formula::product(steps.iter().enumerate().map(|(i, s)| Formula::Step(*s, side(i))).collect())
+}
+
+fn binomial_term(step: usize, n: u32, working: u32) -> Formula {
+    let mut factors = Vec::new();
+    if working > 0 && working < n {
+        factors.push(Formula::Choose(n, working));
+    }
+    if working > 0 {
+        factors.push(Formula::power(Formula::Step(step, Side::Works), working));
+    }
+    if working < n {
+        factors.push(Formula::power(Formula::Step(step, Side::Fails), n - working));
+    }
+    Formula::product(factors)
+}
+
+/// The product of one side of all, equal ones as a power.
+fn powers(steps: &[usize], side: Side) -> Formula {
+    let mut counted: Vec<(usize, u32)> = Vec::new();
+    let mut at: FxHashMap<usize, usize> = FxHashMap::default();
+    for &step in steps {
+        match at.get(&step) {
+            Some(&i) => counted[i].1 += 1,
+            None => {
+                at.insert(step, counted.len());
+                counted.push((step, 1));
+            }
+        }
+    }
+    Formula::product(counted.into_iter().map(|(s, n)| Formula::power(Formula::Step(s, side), n)).collect())
+}
+
+/// A value in as few digits as say it, at most 15.
+pub(crate) fn plain(value: Real) -> String {
+    const SLACK: f64 = 1e-28;
+    let Some(digits) = crate::number::round_significant(value, 15, SLACK, crate::number::Rounding::Nearest)
+    else {
+        return "0".to_string();
+    };
+    let size = value.to_f64().abs();
+    let text = if value.is_zero() {
+        "0".to_string()
+    } else if (1e-4..1e7).contains(&size) {
+        digits.plain()
+    } else {
+        digits.scientific()
+    };
+    trimmed(&text)
+}
+
+/// Without zeros at the end of the decimals.
+fn trimmed(text: &str) -> String {
+    let (mantissa, exponent) = text.split_once('e').map_or((text, None), |(m, e)| (m, Some(e)));
+    let short =
+        if mantissa.contains('.') { mantissa.trim_end_matches('0').trim_end_matches('.') } else { mantissa };
+    match exponent {
+        Some(e) => format!("{short}e{e}"),
+        None => short.to_string(),
+    }
+}
+
+fn shortened(text: &str) -> String {
+    const MOST: usize = 48;
+    if text.chars().count() <= MOST {
+        return text.to_string();
+    }
+    let start: String = text.chars().take(MOST - 1).collect();
+    format!("{start}…")
+}
+
+/// Names of like things as one: `feed.pump[1..3]`.
+pub fn folded(names: &[String]) -> String {
+    match names {
+        [] => String::new(),
+        [one] => one.clone(),
+        [first, rest @ ..] => {
+            if let Some(range) = range_of(first, rest) {
+                return range;
+            }
+            const SHOWN: usize = 3;
+            let mut out = names.iter().take(SHOWN).cloned().collect::<Vec<_>>().join(", ");
+            if names.len() > SHOWN {
+                out.push_str(&format!(" and {} more", names.len() - SHOWN));
+            }
+            out
+        }
+    }
+}
+
+/// One range where names differ in one number of a copy that counts on.
+fn range_of(first: &str, rest: &[String]) -> Option<String> {
+    for (open, _) in first.match_indices('[') {
+        let close = open + first[open..].find(']')?;
+        let start: u32 = first[open + 1..close].parse().ok()?;
+        let fits = rest.iter().enumerate().all(|(i, name)| {
+            *name == format!("{}{}{}", &first[..=open], start as usize + i + 1, &first[close..])
+        });
+        if fits {
+            return Some(format!(
+                "{}{start}..{}{}",
+                &first[..=open],
+                start as usize + rest.len(),
+                &first[close..]
+            ));
+        }
+    }
+    None
+}

@@ -1,0 +1,68 @@
+//! Steps as JSON: the data that every other form is drawn from.
+
+use super::list::{Outcome, StepList};
+use super::render::shown;
+use crate::source::Sources;
+use serde::Serialize;
+
+#[derive(Serialize)]
+struct JsonStep {
+    number: usize,
+    thing: String,
+    file: Option<String>,
+    line: Option<usize>,
+    rule: &'static str,
+    source: &'static str,
+    left: String,
+    symbols: String,
+    numbers: String,
+    result: String,
+    /// Both tails to 15 digits, as text: JSON readers round numbers.
+    works: Option<String>,
+    fails: Option<String>,
+    value: Option<String>,
+    rests_on: Vec<usize>,
+}
+
+#[derive(Serialize)]
+struct JsonSteps {
+    steps: Vec<JsonStep>,
+    assumptions: Vec<String>,
+    remarks: Vec<String>,
+}
+
+/// The steps as one JSON object.
+pub fn json(list: &StepList, sources: &Sources, digits: u8) -> String {
+    let texts = shown(list, sources, digits);
+    let steps = list
+        .steps
+        .iter()
+        .zip(texts)
+        .enumerate()
+        .map(|(i, (step, text))| {
+            let place = step.place.and_then(|p| sources.line(p));
+            let (works, fails, value) = match &step.outcome {
+                Outcome::Chance(c) => (Some(super::plain(c.works())), Some(super::plain(c.fails())), None),
+                Outcome::Figure(v, _) => (None, None, Some(super::plain(*v))),
+            };
+            JsonStep {
+                number: i + 1,
+                thing: text.thing,
+                file: place.map(|(f, _)| f.to_string()),
+                line: place.map(|(_, l)| l),
+                rule: text.rule,
+                source: text.source,
+                left: text.left,
+                symbols: text.symbols,
+                numbers: text.numbers,
+                result: text.result,
+                works,
+                fails,
+                value,
+                rests_on: text.rests_on,
+            }
+        })
+        .collect();
+    let all = JsonSteps { steps, assumptions: list.assumptions.clone(), remarks: list.remarks.clone() };
+    serde_json::to_string_pretty(&all).unwrap_or_default()
+}

@@ -1,0 +1,123 @@
+//! Steps: one for each thing that is computed, in the order they rest on each other.
+
+use super::formula::{Formula, Side};
+use crate::number::{Chance, Real};
+use crate::source::Span;
+
+/// How a step computes, with its published source.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Rule {
+    /// The probability as the note gives it.
+    Given,
+    /// Constant rates and probabilities per occurrence over the exposure.
+    Exposure,
+    /// All of several independent things.
+    Series,
+    /// Any of several independent things.
+    Parallel,
+    /// At least k of n things with equal chances.
+    LikeVote,
+    /// At least k of n things with unequal chances.
+    UnlikeVote,
+    /// Over the states of a thing that stands in several places.
+    TotalProbability,
+    /// A node of a decision diagram.
+    DiagramNode,
+    /// Arithmetic that the note asks for.
+    Arithmetic,
+}
+
+impl Rule {
+    /// The rule's name.
+    pub fn name(self) -> &'static str {
+        match self {
+            Rule::Given => "as given",
+            Rule::Exposure => "exponential law",
+            Rule::Series => "series",
+            Rule::Parallel => "parallel",
+            Rule::LikeVote => "k of n, like members",
+            Rule::UnlikeVote => "k of n, unlike members",
+            Rule::TotalProbability => "total probability",
+            Rule::DiagramNode => "diagram node",
+            Rule::Arithmetic => "arithmetic",
+        }
+    }
+
+    /// Where the rule is published; empty for the note's own data and arithmetic.
+    /// Sources are cited from memory.
+    pub fn source(self) -> &'static str {
+        match self {
+            Rule::Given | Rule::Arithmetic => "",
+            Rule::Exposure => "IEC 61703; Rausand and Hoyland, System Reliability Theory, ch. 2",
+            Rule::Series | Rule::Parallel => "IEC 61078, reliability block diagrams",
+            Rule::LikeVote => "IEC 61078, m out of n, binomial law",
+            Rule::UnlikeVote => "Barlow and Heidtmann, IEEE Trans. Reliability R-33 (1984)",
+            Rule::TotalProbability => {
+                "Barlow and Proschan, Statistical Theory of Reliability (1975), pivotal decomposition"
+            }
+            Rule::DiagramNode => "Bryant, IEEE Trans. Computers C-35 (1986); Rauzy (1993)",
+        }
+    }
+}
+
+/// What a step comes to.
+#[derive(Clone, PartialEq, Debug)]
+pub enum Outcome {
+    /// A probability, both tails.
+    Chance(Chance),
+    /// A figure in a unit.
+    Figure(Real, String),
+}
+
+/// One step.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Step {
+    /// The thing or things that it is about; like copies share a step.
+    pub thing: String,
+    /// Where the thing is written.
+    pub place: Option<Span>,
+    /// How it is computed.
+    pub rule: Rule,
+    /// The formula for "works", or for the figure.
+    pub works: Formula,
+    /// The formula for "fails".
+    pub fails: Formula,
+    /// Which of the two is printed.
+    pub shown: Side,
+    /// What it comes to.
+    pub outcome: Outcome,
+}
+
+impl Step {
+    /// The formula that is printed.
+    pub fn formula(&self) -> &Formula {
+        match self.shown {
+            Side::Works => &self.works,
+            Side::Fails => &self.fails,
+        }
+    }
+}
+
+/// All steps of an answer.
+#[derive(Clone, PartialEq, Debug, Default)]
+pub struct StepList {
+    /// The steps; a formula refers to them by position.
+    pub steps: Vec<Step>,
+    /// The defaults that acted.
+    pub assumptions: Vec<String>,
+    /// What the reader should know of the list itself.
+    pub remarks: Vec<String>,
+}
+
+impl StepList {
+    /// The chances of all steps by position; figures stand as perfect, and no formula uses them.
+    pub fn results(&self) -> Vec<Chance> {
+        self.steps
+            .iter()
+            .map(|s| match s.outcome {
+                Outcome::Chance(chance) => chance,
+                Outcome::Figure(..) => Chance::PERFECT,
+            })
+            .collect()
+    }
+}

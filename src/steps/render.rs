@@ -1,0 +1,153 @@
+//! Steps as text: formulas in symbols and with numbers.
+
+use super::formula::{Formula, Side};
+use super::list::{Outcome, Step, StepList};
+use crate::number::{Chance, format_fails, format_number, format_works};
+use crate::source::Sources;
+
+/// Relative error that a step's printed digits allow for; the engine's is far smaller.
+const BOUND: f64 = 1e-25;
+
+/// A step's parts as text.
+#[derive(Clone, PartialEq, Debug)]
+pub struct Shown {
+    /// The thing.
+    pub thing: String,
+    /// `line 12`, or empty.
+    pub place: String,
+    /// Rule and source.
+    pub rule: &'static str,
+    /// Published source of the rule.
+    pub source: &'static str,
+    /// `R(feed)`, the left side.
+    pub left: String,
+    /// The formula in symbols.
+    pub symbols: String,
+    /// The same with numbers.
+    pub numbers: String,
+    /// The result of the printed side, or the figure.
+    pub result: String,
+    /// The other side, with its letter: `F = 0.01430`; empty for a figure.
+    pub other: String,
+    /// Steps that it rests on, counted from 1.
+    pub rests_on: Vec<usize>,
+}
+
+/// One side of a chance in `digits` digits of the smaller side.
+pub fn side_text(side: Side, chance: Chance, digits: u8) -> String {
+    let text = match side {
+        Side::Works => format_works(chance, digits, BOUND),
+        Side::Fails => format_fails(chance, digits, BOUND),
+    };
+    text.unwrap_or_else(|| "~".to_string())
+}
+
+/// The parts of every step.
+pub fn shown(list: &StepList, sources: &Sources, digits: u8) -> Vec<Shown> {
+    list.steps.iter().map(|step| show(list, step, sources, digits)).collect()
+}
+
+fn show(list: &StepList, step: &Step, sources: &Sources, digits: u8) -> Shown {
+    let formula = step.formula();
+    let render = |numbers: bool| Renderer { list, numbers, digits }.text(formula, 0);
+    let (left, result, other) = match &step.outcome {
+        Outcome::Chance(chance) => {
+            let other = if step.shown == Side::Works { Side::Fails } else { Side::Works };
+            (
+                format!("{}({})", step.shown.letter(), step.thing),
+                side_text(step.shown, *chance, digits),
+                format!("{} = {}", other.letter(), side_text(other, *chance, digits)),
+            )
+        }
+        Outcome::Figure(value, unit) => {
+            let number = format_number(*value, digits, BOUND).unwrap_or_else(|| "~".to_string());
+            let result = if unit.is_empty() { number } else { format!("{number} {unit}") };
+            (step.thing.clone(), result, String::new())
+        }
+    };
+    let place =
+        step.place.and_then(|p| sources.line(p)).map_or(String::new(), |(_, line)| format!("line {line}"));
+    Shown {
+        thing: step.thing.clone(),
+        place,
+        rule: step.rule.name(),
+        source: step.rule.source(),
+        left,
+        symbols: render(false),
+        numbers: render(true),
+        result,
+        other,
+        rests_on: formula.uses().into_iter().map(|s| s + 1).collect(),
+    }
+}
+
+struct Renderer<'a> {
+    list: &'a StepList,
+    numbers: bool,
+    digits: u8,
+}
+
+/// Binding strength of what stands around: a sum inside a product needs parentheses.
+const SUM: u8 = 1;
+const PRODUCT: u8 = 2;
+const POWER: u8 = 3;
+
+impl Renderer<'_> {
+    fn text(&self, formula: &Formula, around: u8) -> String {
+        let (text, own) = match formula {
+            Formula::Datum { symbol, text, .. } => {
+                let shown = if self.numbers { text } else { symbol };
+                (shown.clone(), if self.numbers && text.contains(' ') { PRODUCT } else { POWER + 1 })
+            }
+            Formula::Step(step, side) => (self.step(*step, *side), self.step_binding(*step, *side)),
+            Formula::Whole(n) => (n.to_string(), POWER + 1),
+            Formula::Sum(terms) => (self.joined(terms, " + ", SUM), SUM),
+            Formula::Product(factors) => (self.joined(factors, " · ", PRODUCT), PRODUCT),
+            Formula::Quotient(a, b) => {
+                (format!("{} / {}", self.text(a, PRODUCT), self.text(b, POWER)), PRODUCT)
+            }
+            Formula::OneMinus(a) => (format!("1 - {}", self.text(a, PRODUCT)), SUM),
+            Formula::Negate(a) => (format!("-{}", self.text(a, PRODUCT)), SUM),
+            Formula::ExpMinus(a) => (format!("exp(-{})", self.text(a, PRODUCT)), POWER + 1),
+            Formula::Power(a, b) => {
+                (format!("{}^{}", self.text(a, POWER + 1), self.text(b, POWER + 1)), POWER)
+            }
+            Formula::Choose(n, k) => (format!("C({n}, {k})"), POWER + 1),
+            Formula::Function(name, args) => (format!("{name}({})", self.joined(args, ", ", 0)), POWER + 1),
+            Formula::AtLeast(need, members, side) => (self.at_least(*need, members, *side), POWER + 1),
+        };
+        if own < around || (own == around && own == SUM && text.starts_with("1 - ")) {
+            format!("({text})")
+        } else {
+            text
+        }
+    }
+
+    fn joined(&self, parts: &[Formula], between: &str, around: u8) -> String {
+        parts.iter().map(|p| self.text(p, around)).collect::<Vec<_>>().join(between)
+    }
+
+    fn step(&self, step: usize, side: Side) -> String {
+        let found = &self.list.steps[step];
+        match (&found.outcome, self.numbers) {
+            (Outcome::Chance(chance), true) => side_text(side, *chance, self.digits),
+            _ => format!("{}({})", side.letter(), found.thing),
+        }
+    }
+
+    /// `1 - 6.4e-93` among factors needs parentheses.
+    fn step_binding(&self, step: usize, side: Side) -> u8 {
+        if self.step(step, side).contains(" - ") && self.numbers { SUM } else { POWER + 1 }
+    }
+
+    fn at_least(&self, need: u32, members: &[usize], side: Side) -> String {
+        let n = members.len();
+        let names: Vec<String> = members.iter().map(|m| self.step(*m, Side::Works)).collect();
+        let alike = members.iter().all(|m| *m == members[0]);
+        let of = if alike { format!("{n} × {}", names[0]) } else { names.join(", ") };
+        match side {
+            Side::Works => format!("P(at least {need} of {n} work: {of})"),
+            Side::Fails => format!("P(fewer than {need} of {n} work: {of})"),
+        }
+    }
+}
