@@ -5,6 +5,7 @@ pub mod command;
 pub mod document;
 pub mod engine;
 pub mod language;
+pub mod note;
 pub mod number;
 pub mod report;
 pub mod source;
