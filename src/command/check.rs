@@ -29,10 +29,14 @@ fn one(input: &Input) -> Outcome {
         Ok(text) => text,
         Err(unread) => return Outcome::new(input, unread.filled),
     };
-    let mut outcome = Outcome::new(input, note::fill(&input.name(), &text));
+    judge(input, note::fill(&input.name(), &text))
+}
+
+/// Adds what is stale to what filling gave.
+fn judge(input: &Input, filled: Filled) -> Outcome {
+    let mut outcome = Outcome::new(input, filled);
     let filled = &mut outcome.filled;
     let stale: Vec<Problem> = filled.asked.iter().filter(|a| a.stale).map(stale).collect();
-    let unmet: Vec<Problem> = filled.asked.iter().filter_map(|a| unmet(a, filled)).collect();
     if !stale.is_empty() {
         outcome.summary = format!(
             "{} of {} stale; `tieback fill` writes them",
@@ -43,7 +47,6 @@ fn one(input: &Input) -> Outcome {
     outcome.changed = matches!(filled.rewrite, Rewrite::Patched(_));
     outcome.verdict.stale = !stale.is_empty() || outcome.changed;
     filled.problems.extend(stale);
-    filled.problems.extend(unmet);
     outcome
 }
 
@@ -65,10 +68,51 @@ fn stale(asked: &Asked) -> Problem {
     Problem::error(Code::Stale, asked.place, message).mark(mark)
 }
 
-/// The error for a requirement that is not met, unless it has been made already.
-fn unmet(asked: &Asked, filled: &Filled) -> Option<Problem> {
-    let overlaps = |p: &Problem| p.place.start <= asked.place.end && asked.place.start <= p.place.end;
-    let said = filled.problems.iter().any(|p| p.code == Code::NotMet && overlaps(p));
-    (asked.unmet && !said)
-        .then(|| Problem::error(Code::NotMet, asked.place, "a requirement is not met").mark(&asked.new))
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::source::{Sources, Span};
+
+    fn asked(old: &str, new: &str) -> Asked {
+        Asked {
+            place: Span::new(0, 4),
+            question: "R(g)".to_string(),
+            old: old.to_string(),
+            new: new.to_string(),
+            stale: old != new,
+            error: false,
+            unmet: new.starts_with("NOT met"),
+        }
+    }
+
+    fn judged(asked: Vec<Asked>) -> (u8, String, Vec<(Code, String)>) {
+        let mut sources = Sources::default();
+        sources.add("gate.md", "R(g) ?");
+        let filled = Filled { sources, problems: Vec::new(), asked, unmet: 0, rewrite: Rewrite::Unchanged };
+        let outcome = judge(&Input::Stdin, filled);
+        let problems = outcome.filled.problems.into_iter().map(|p| (p.code, p.mark));
+        (outcome.verdict.code(), outcome.summary, problems.collect())
+    }
+
+    #[test]
+    fn answers_that_stand_are_not_mentioned() {
+        assert_eq!(judged(vec![asked("0.98", "0.98")]), (0, String::new(), Vec::new()));
+    }
+
+    #[test]
+    fn a_stale_answer_shows_what_was_and_what_is() {
+        let (code, summary, problems) =
+            judged(vec![asked("0.97", "0.98"), asked("", "1\n2"), asked("1", "1")]);
+        assert_eq!(code, 1);
+        assert_eq!(summary, "2 of 3 answers stale; `tieback fill` writes them");
+        let marks: Vec<&str> = problems.iter().map(|(_, mark)| mark.as_str()).collect();
+        assert_eq!(marks, ["was 0.97, now 0.98", "now 1 …"]);
+    }
+
+    #[test]
+    fn an_unmet_requirement_weighs_more_than_a_stale_answer() {
+        let (code, _, problems) = judged(vec![asked("0.97", "NOT met: 0.98")]);
+        assert_eq!(code, 4);
+        assert_eq!(problems.iter().map(|p| p.0).collect::<Vec<_>>(), [Code::NotMet, Code::Stale]);
+    }
 }

@@ -3,10 +3,10 @@
 use super::Voice;
 use super::input::Input;
 use super::verdict::Verdict;
-use crate::note::Filled;
+use crate::note::{Asked, Filled};
 use crate::report::json::{FileReport, Run};
 use crate::report::render;
-use crate::source::Code;
+use crate::source::{Code, Problem};
 use rayon::prelude::*;
 use serde::Serialize;
 
@@ -31,7 +31,9 @@ pub(super) struct Outcome {
 
 impl Outcome {
     /// The outcome of a note from what filling gave.
-    pub(super) fn new(input: &Input, filled: Filled) -> Outcome {
+    pub(super) fn new(input: &Input, mut filled: Filled) -> Outcome {
+        let unmet: Vec<Problem> = filled.asked.iter().filter_map(|a| unmet(a, &filled)).collect();
+        filled.problems.extend(unmet);
         Outcome {
             name: input.name(),
             verdict: Verdict::of(&filled),
@@ -49,6 +51,18 @@ impl Outcome {
             self.filled.problems.retain(|p| p.code != Code::NothingToDo);
         }
     }
+}
+
+/// The error for a requirement that is not met, unless it has been made already.
+fn unmet(asked: &Asked, filled: &Filled) -> Option<Problem> {
+    let overlaps = |p: &Problem| p.place.start <= asked.place.end && asked.place.start <= p.place.end;
+    let said = filled.problems.iter().any(|p| p.code == Code::NotMet && overlaps(p));
+    let message = if asked.new.starts_with("UNDECIDED") {
+        "a requirement is undecided"
+    } else {
+        "a requirement is not met"
+    };
+    (asked.unmet && !said).then(|| Problem::error(Code::NotMet, asked.place, message).mark(&asked.new))
 }
 
 /// So many notes are held in memory at once.

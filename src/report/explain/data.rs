@@ -75,13 +75,20 @@ pub(super) const FIXED_PROBABILITY: Explanation = Explanation {
 
 pub(super) const MISSING_ATTRIBUTE: Explanation = Explanation {
     what: "A total is asked, and some things under it do not have the property. Counting them as nothing would make the total too \
-           small. The message names them; give each its value, `cost 0` if it is none.",
-    wrong: note!("pump = 0.98, cost 900", "pipe = 0.999", "line = pump -> pipe", "total(line, cost) ?"),
+           small. The message names them; give each its value, 0 if it is none.",
+    wrong: note!(
+        "attribute power W",
+        "pump = 0.98, power 900 W",
+        "lamp = 0.999",
+        "line = pump -> lamp",
+        "total(line, power) ?"
+    ),
     mended: note!(
-        "pump = 0.98, cost 900",
-        "pipe = 0.999, cost 40",
-        "line = pump -> pipe",
-        "total(line, cost) ?"
+        "attribute power W",
+        "pump = 0.98, power 900 W",
+        "lamp = 0.999, power 40 W",
+        "line = pump -> lamp",
+        "total(line, power) ?"
     ),
 };
 

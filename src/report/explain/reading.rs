@@ -37,7 +37,7 @@ pub(super) const UNBALANCED_PARENTHESIS: Explanation = Explanation {
     what: "A parenthesis has no partner. An open parenthesis keeps the line going, so the missing one may belong \
            on an earlier line than where the text stops making sense. The next line that begins a definition \
            closes what is open, and the rest of the note is read as usual.",
-    wrong: note!("S1, S2, S3 = 0.97", "level = 2 of (S1, S2, S3", "R(level) ?"),
+    wrong: note!("S1, S2, S3 = 0.97", "level = 2 of (S1, S2, S3))", "R(level) ?"),
     mended: note!("S1, S2, S3 = 0.97", "level = 2 of (S1, S2, S3)", "R(level) ?"),
 };
 
