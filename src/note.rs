@@ -6,7 +6,8 @@ use crate::document::answer_place::{
 };
 use crate::document::escape::{Context, escape, same_answer, same_block, unescape};
 use crate::document::markdown::{Fence, Found, Pair, PairForm, Place, Table, find};
-use crate::document::patch::{Edit, Rewrite, apply};
+pub use crate::document::patch::Rewrite;
+use crate::document::patch::{Edit, apply};
 use crate::language::{self, Line, Mark, Source, Tree, is_answer};
 use crate::source::{Code, Level, Problem, Sources, Span};
 use crate::steps::json as steps_json;

@@ -362,6 +362,9 @@ impl Reader<'_> {
             }
             "else" | "with" | "routes" => return Err(Box::new(later(span, &format!("`{text}`")))),
             "" => {}
+            // `total(feed, mass)`: attribute words are arguments of questions.
+            _ if matches!(level.opened, Opened::Call(_))
+                && words::clause(text) == Some(words::ClauseWord::Attribute) => {}
             _ if words::is_reserved(text) => return Err(self.reserved_as_operand(span, text)),
             _ => {}
         }

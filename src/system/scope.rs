@@ -119,7 +119,10 @@ impl Model<'_> {
                         w if words::FUNCTIONS.contains(&w) => Use::Figure,
                         _ => Use::Open,
                     };
-                    stack.extend(self.tree.list(args).iter().map(|x| (*x, inner)));
+                    let total = self.tree.names.text(word) == "total";
+                    let args = self.tree.list(args).iter().enumerate();
+                    // The second argument of `total` is the word of an attribute, no name.
+                    stack.extend(args.filter(|(i, _)| !(total && *i == 1)).map(|(_, x)| (*x, inner)));
                 }
                 Expr::Item(clauses) => self.clause_values(clauses, &mut stack),
                 Expr::Changed(copy, clauses) => {

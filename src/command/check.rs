@@ -1,0 +1,118 @@
+//! `tieback check`: says whether the notes are as tieback would leave them.
+
+use super::Voice;
+use super::each::{Outcome, counted, each};
+use super::input::{Input, expand};
+use super::verdict::Verdict;
+use crate::note::{self, Asked, Filled, Rewrite};
+use crate::source::{Code, Problem};
+use clap::Args;
+use std::path::PathBuf;
+
+/// Find stale answers, unmet requirements and errors, and change nothing
+#[derive(Args, Debug)]
+#[command(after_help = "Example:\n  tieback check notes/")]
+pub(super) struct Check {
+    /// Notes, folders of notes, or patterns; `-` for standard input
+    #[arg(value_name = "FILE", required = true)]
+    files: Vec<PathBuf>,
+}
+
+impl Check {
+    pub(super) fn run(&self, voice: Voice) -> Verdict {
+        each(&expand(&self.files), voice, one)
+    }
+}
+
+fn one(input: &Input) -> Outcome {
+    let text = match input.read() {
+        Ok(text) => text,
+        Err(unread) => return Outcome::new(input, unread.filled),
+    };
+    judge(input, note::fill(&input.name(), &text))
+}
+
+/// Adds what is stale to what filling gave.
+fn judge(input: &Input, filled: Filled) -> Outcome {
+    let mut outcome = Outcome::new(input, filled);
+    let filled = &mut outcome.filled;
+    let stale: Vec<Problem> = filled.asked.iter().filter(|a| a.stale).map(stale).collect();
+    if !stale.is_empty() {
+        outcome.summary = format!(
+            "{} of {} stale; `tieback fill` writes them",
+            stale.len(),
+            counted(filled.asked.len(), "answer")
+        );
+    }
+    outcome.changed = matches!(filled.rewrite, Rewrite::Patched(_));
+    outcome.verdict.stale = !stale.is_empty() || outcome.changed;
+    filled.problems.extend(stale);
+    outcome
+}
+
+fn stale(asked: &Asked) -> Problem {
+    let message = if asked.old.is_empty() {
+        "this question is not answered yet".to_string()
+    } else {
+        "this answer is not what follows from the note now".to_string()
+    };
+    let first = |answer: &str| match answer.split_once('\n') {
+        Some((line, _)) => format!("{line} …"),
+        None => answer.to_string(),
+    };
+    let mark = if asked.old.is_empty() {
+        format!("now {}", first(&asked.new))
+    } else {
+        format!("was {}, now {}", first(&asked.old), first(&asked.new))
+    };
+    Problem::error(Code::Stale, asked.place, message).mark(mark)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::source::{Sources, Span};
+
+    fn asked(old: &str, new: &str) -> Asked {
+        Asked {
+            place: Span::new(0, 4),
+            question: "R(g)".to_string(),
+            old: old.to_string(),
+            new: new.to_string(),
+            stale: old != new,
+            error: false,
+            unmet: new.starts_with("NOT met"),
+        }
+    }
+
+    fn judged(asked: Vec<Asked>) -> (u8, String, Vec<(Code, String)>) {
+        let mut sources = Sources::default();
+        sources.add("gate.md", "R(g) ?");
+        let filled = Filled { sources, problems: Vec::new(), asked, unmet: 0, rewrite: Rewrite::Unchanged };
+        let outcome = judge(&Input::Stdin, filled);
+        let problems = outcome.filled.problems.into_iter().map(|p| (p.code, p.mark));
+        (outcome.verdict.code(), outcome.summary, problems.collect())
+    }
+
+    #[test]
+    fn answers_that_stand_are_not_mentioned() {
+        assert_eq!(judged(vec![asked("0.98", "0.98")]), (0, String::new(), Vec::new()));
+    }
+
+    #[test]
+    fn a_stale_answer_shows_what_was_and_what_is() {
+        let (code, summary, problems) =
+            judged(vec![asked("0.97", "0.98"), asked("", "1\n2"), asked("1", "1")]);
+        assert_eq!(code, 1);
+        assert_eq!(summary, "2 of 3 answers stale; `tieback fill` writes them");
+        let marks: Vec<&str> = problems.iter().map(|(_, mark)| mark.as_str()).collect();
+        assert_eq!(marks, ["was 0.97, now 0.98", "now 1 …"]);
+    }
+
+    #[test]
+    fn an_unmet_requirement_weighs_more_than_a_stale_answer() {
+        let (code, _, problems) = judged(vec![asked("0.97", "NOT met: 0.98")]);
+        assert_eq!(code, 4);
+        assert_eq!(problems.iter().map(|p| p.0).collect::<Vec<_>>(), [Code::NotMet, Code::Stale]);
+    }
+}
