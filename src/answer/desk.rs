@@ -4,7 +4,7 @@ use crate::engine::evaluate::{bound, evaluate};
 use crate::engine::importance::{Importance, importance};
 use crate::engine::plan::Plan;
 use crate::language::{Expr, ExprId, Phase};
-use crate::number::Chance;
+use crate::number::{Chance, Real};
 use crate::source::{Code, Problem, Span};
 use crate::system::{Base, Exposure, Fault, Model, NodeId, Out, System};
 use rustc_hash::FxHashMap;
@@ -155,6 +155,7 @@ impl Desk {
             let chances = leaf_chances(model, &prepared.system, &exposure, place)?;
             let values = evaluate(&prepared.plan, &chances);
             let chance = values.get(prepared.plan.root().0 as usize).copied().unwrap_or(Chance::PERFECT);
+            let chance = not_quite_zero(&prepared.plan, &chances, chance);
             // Two operations more than the plan counts, for each datum.
             let bound = bound(&prepared.plan) + crate::system::STEP * 16.0;
             Ok(Rc::new(Valued { chances, values, chance, bound }))
@@ -194,6 +195,32 @@ impl Desk {
         let entry = self.ranked.entry(key);
         entry.or_insert_with(|| Rc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
     }
+}
+
+/// A side that came to zero although it is possible has left the range of
+/// numbers: it is carried as the smallest one there is, and is written `< 1e-300`.
+///
+/// A side is possible if the system does so when every thing that can do so does.
+fn not_quite_zero(plan: &Plan, chances: &[Chance], chance: Chance) -> Chance {
+    let least = Real::from(f64::from_bits(1));
+    let root = plan.root().0 as usize;
+    let settled = |of: &dyn Fn(Chance) -> Chance| {
+        let all: Vec<Chance> = chances.iter().map(|c| of(*c)).collect();
+        evaluate(plan, &all).get(root).copied().unwrap_or(Chance::PERFECT)
+    };
+    if chance.fails().is_zero() {
+        let worst = settled(&|c| if c.fails().is_zero() { Chance::PERFECT } else { Chance::HOPELESS });
+        if worst.works().is_zero() {
+            return Chance::new(Real::ONE, least);
+        }
+    }
+    if chance.works().is_zero() {
+        let best = settled(&|c| if c.works().is_zero() { Chance::HOPELESS } else { Chance::PERFECT });
+        if best.fails().is_zero() {
+            return Chance::new(least, Real::ONE);
+        }
+    }
+    chance
 }
 
 /// The error for a system whose diagram passes its limit.

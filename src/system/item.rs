@@ -127,7 +127,14 @@ impl Item {
             };
         }
         if !self.ageing.is_empty() {
-            chance = chance.and(Chance::from_hazard(hazard));
+            let aged = Chance::from_hazard(hazard);
+            // exp(-Λ) is never zero: what left the range of numbers is carried as the least of them.
+            let aged = if aged.works().is_zero() && hazard.is_finite() {
+                Chance::new(Real::from(f64::from_bits(1)), Real::ONE)
+            } else {
+                aged
+            };
+            chance = chance.and(aged);
         }
         chance
     }
