@@ -49,7 +49,7 @@ fn answer(input: &str) -> IResult<&str, ()> {
     alt((
         value((), all_consuming(plain)),
         value((), all_consuming((tag("< "), number, opt(unit)))),
-        value((), all_consuming((tag("> "), number, opt(unit)))),
+        value((), all_consuming((tag("> "), opt(tag("1 - ")), number, opt(unit)))),
         value((), all_consuming(tag("infinite"))),
         value((), all_consuming(tag("none"))),
         value((), preceded(tag("none: "), rest)),

@@ -73,9 +73,9 @@ pub fn format_works(chance: Chance, digits: u8, bound: f64) -> Option<String> {
 /// exactly 1 minus the smaller one as it is written, with as many decimals, so
 /// that the two of an answer add up: F = 4.000e-5 beside R = 0.99996000. Where
 /// the smaller side, after rounding, is below 1e-15, the larger one is written
-/// `1 - 6.403e-93`; where it is below 1e-300 they are `< 1e-300` and `1`, the
-/// latter being right to 300 digits. Sides that are exactly 0 and 1 are `0`
-/// and `1`.
+/// `1 - 6.403e-93`; where it is below 1e-300 they are `< 1e-300` and
+/// `> 1 - 1e-300`. Sides that are exactly 0 and 1 are `0` and `1`: only those,
+/// so that a `1` is never a large number of nines.
 pub fn format_fails(chance: Chance, digits: u8, bound: f64) -> Option<String> {
     format_side(chance.fails(), chance.works(), digits, bound)
 }
@@ -84,9 +84,12 @@ fn format_side(side: Real, other: Real, digits: u8, bound: f64) -> Option<String
     if side <= other {
         return format_number(side, digits, bound);
     }
+    if other.is_zero() {
+        return Some("1".into());
+    }
     let rounded = significant(other, digits, bound)?;
     Some(if rounded.is_zero() || rounded.exponent() < LEAST {
-        "1".into()
+        "> 1 - 1e-300".into()
     } else if rounded.exponent() < NINES {
         format!("1 - {}", rounded.scientific())
     } else {
@@ -172,7 +175,7 @@ mod tests {
             ("9.99999e-16", "0.999999999999999000", "1.000e-15"),
             ("9.9991e-16", "1 - 9.999e-16", "9.999e-16"),
             ("6.403e-93", "1 - 6.403e-93", "6.403e-93"),
-            ("1e-305", "1", "< 1e-300"),
+            ("1e-305", "> 1 - 1e-300", "< 1e-300"),
             ("0.99999999999999999999", "1.000e-20", "1 - 1.000e-20"),
             // A tie: away from zero on the smaller side, and the larger follows.
             ("0.123450", "0.8765", "0.1235"),
