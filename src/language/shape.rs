@@ -17,17 +17,18 @@ fn number(input: &str) -> IResult<&str, &str> {
     .parse(input)
 }
 
+/// `%`, `%/kh`, `/yr`, `h`, `kg*h/start^2`
 fn unit(input: &str) -> IResult<&str, &str> {
     alt((
-        recognize(char('%')),
-        recognize((space0, opt(char('%')), char('/'), word)),
+        recognize((space0, char('%'), opt((char('/'), word)))),
+        recognize((space0, char('/'), word)),
         recognize((space1, word)),
     ))
     .parse(input)
 }
 
 fn word(input: &str) -> IResult<&str, &str> {
-    take_while1(|c: char| c.is_alphanumeric() || c == '_').parse(input)
+    take_while1(|c: char| c.is_alphanumeric() || matches!(c, '_' | '^' | '/' | '*')).parse(input)
 }
 
 /// `[~]number [unit]`, also `1 - 6.403e-93` and the interval of a `~` value.
@@ -36,7 +37,11 @@ fn plain(input: &str) -> IResult<&str, ()> {
         (),
         (
             opt((char('~'), space0)),
-            alt((recognize((tag("1 - "), number)), recognize((tag("1 in "), number)), number)),
+            alt((
+                recognize((alt((tag("1 - "), tag("100 - "))), number)),
+                recognize((tag("1 in "), number)),
+                number,
+            )),
             opt(unit),
             opt(tag(" from bounds")),
             opt(recognize((tag(" ("), take_till1(|c| c == ')'), char(')')))),
@@ -79,6 +84,8 @@ mod tests {
             "98.57 %",
             "4.000e-5",
             "1 - 6.403e-93",
+            "100 - 6.4e-91%",
+            "3.2 kg*h/start^2",
             "~0.98",
             "~ 0.98 (0.97 to 0.99)",
             "12.5 h",

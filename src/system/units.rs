@@ -148,7 +148,7 @@ impl Units {
             let text = if size == 1 { word } else { format!("{word}^{size}") };
             if *power > 0 { above.push(text) } else { below.push(text) }
         }
-        let mut out = above.join(" ");
+        let mut out = above.join("*");
         for text in below {
             out.push('/');
             out.push_str(&text);
