@@ -39,12 +39,15 @@ pub struct Valued {
     pub bound: f64,
 }
 
+/// The importance of each leaf, where it has one.
+type Ranked = Rc<Vec<Option<Importance>>>;
+
 /// Keeps what has been worked out for one set of notes.
 #[derive(Default)]
 pub struct Desk {
     prepared: FxHashMap<ExprKey, Out<Rc<Prepared>>>,
     valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Rc<Valued>>>,
-    ranked: FxHashMap<(ExprKey, Vec<ExprId>), Rc<Vec<Option<Importance>>>>,
+    ranked: FxHashMap<(ExprKey, Vec<ExprId>), Ranked>,
     /// Questions within questions.
     pub(super) depth: u32,
     /// What the answer at hand rests on; each becomes one folded remark.
@@ -190,7 +193,7 @@ impl Desk {
         prepared: &Prepared,
         valued: &Valued,
         given: &[ExprId],
-    ) -> Rc<Vec<Option<Importance>>> {
+    ) -> Ranked {
         let key = (Self::key(model, thing), given.to_vec());
         let entry = self.ranked.entry(key);
         entry.or_insert_with(|| Rc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()

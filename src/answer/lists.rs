@@ -11,6 +11,7 @@ use crate::number::{Chance, Real, format_number};
 use crate::source::{Code, Problem};
 use crate::steps::{Formula, Outcome, Rule, Side, Step, StepList, folded, shown, write};
 use crate::system::{Base, Exposure, Model, Node, NodeId, Out, STEP};
+use std::collections::hash_map::Entry;
 
 /// Sets listed where the question does not say how many.
 const FIRST: usize = 100;
@@ -213,8 +214,8 @@ impl Desk {
             }
         }
         for leaf in &prepared.system.leaves {
-            if !at.contains_key(&leaf.item) {
-                at.insert(leaf.item, rows.len());
+            if let Entry::Vacant(free) = at.entry(leaf.item) {
+                free.insert(rows.len());
                 rows.push((leaf.item, vec![model.leaf_name(leaf)]));
             }
         }
