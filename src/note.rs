@@ -199,9 +199,6 @@ fn show_readings(model: &mut Model<'_>, desk: &mut Desk) {
         let place = model.problems[index].place;
         let tree = model.tree;
         let Some(mixed) = tree.mixed_at(place) else { continue };
-        if mixed.readings.len() < 2 {
-            continue;
-        }
         let mut mends = Vec::new();
         for reading in &mixed.readings {
             let text = model.text_of(*reading);
@@ -351,7 +348,10 @@ impl Work<'_> {
     /// The message of an answer that is none.
     fn message(&self, fault: Fault, span: Span, mark: Mark, model: &Model<'_>) -> String {
         let whole = Span { start: span.start, end: span.end.max(mark.at + 1) };
-        let own = |p: &Problem| whole.start <= p.place.start && p.place.start <= whole.end;
+        let within = |place: Span| whole.start <= place.start && place.start <= whole.end;
+        let own = |p: &Problem| {
+            within(p.place) || (p.code == Code::UnknownName && p.labels.iter().any(|l| within(l.place)))
+        };
         let problem = if fault.0 == u32::MAX {
             self.read.problems.iter().find(|p| p.level == Level::Error && own(p))
         } else {

@@ -82,7 +82,7 @@ fn cases(text: &str) -> Vec<Case> {
             match line.strip_prefix("=> ") {
                 None => writeln!(kept, "{line}").unwrap(),
                 Some(mend) => mended.push(match mend.split_once(": ") {
-                    Some((number, text)) => (number.parse().unwrap(), Some(text.to_string())),
+                    Some((number, text)) => (number.parse().unwrap(), Some(text.replace("\\n", "\n"))),
                     None => (mend.parse().unwrap(), None),
                 }),
             }
@@ -169,7 +169,7 @@ fn every_wrong_note_is_told_exactly_what_is_wrong() {
             write!(blessed, "\n\n=== {}\n{}\n---\n{found}", case.title, case.body.join("\n")).unwrap();
             for (line, text) in &case.mended {
                 match text {
-                    Some(text) => writeln!(blessed, "=> {line}: {text}").unwrap(),
+                    Some(text) => writeln!(blessed, "=> {line}: {}", text.replace('\n', "\\n")).unwrap(),
                     None => writeln!(blessed, "=> {line}").unwrap(),
                 }
             }

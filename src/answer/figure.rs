@@ -175,6 +175,7 @@ impl Desk {
         let Some(def) = model.lookup(sym) else { return Ok(()) };
         let Some(value) = model.def(def).value else { return Ok(()) };
         let (figure, why) = match model.tree.expr(model.tree.inside_groups(value)) {
+            _ if asks_within(model, value) => (true, "the answer to a question".to_string()),
             Expr::Literal(_) | Expr::WithUnit(..) | Expr::Arith(..) | Expr::Negate(_) => {
                 match model.figure_with(value, Ctx::TOP, self) {
                     Ok(quantity) if quantity.dim.is_none() => (false, String::new()),
@@ -434,6 +435,28 @@ impl Desk {
         };
         model.fault(problem)
     }
+}
+
+/// Whether a formula has a question in it.
+fn asks_within(model: &Model<'_>, value: ExprId) -> bool {
+    let mut stack = vec![value];
+    while let Some(at) = stack.pop() {
+        match model.tree.expr(at) {
+            Expr::Group(x) | Expr::Negate(x) | Expr::WithUnit(x, _) => stack.push(x),
+            Expr::Arith(_, a, b) => stack.extend([a, b]),
+            Expr::Call(word, args) => {
+                let text = model.tree.names.text(word);
+                if words::QUESTIONS.contains(&text) {
+                    return true;
+                }
+                if words::FUNCTIONS.contains(&text) {
+                    stack.extend(model.tree.list(args));
+                }
+            }
+            _ => {}
+        }
+    }
+    false
 }
 
 fn wrong_total(model: &mut Model<'_>, place: Span) -> Fault {

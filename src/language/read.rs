@@ -97,7 +97,15 @@ pub fn read_expression(source: Source<'_>, tree: &mut Tree) -> Result<ExprId, Bo
     let value = reader.right_side()?;
     match reader.peek() {
         None => Ok(value),
-        Some(_) => Err(reader.unexpected("an operator or the end of the cell")),
+        Some(_) => Err(Box::new(with_a_mend(*reader.missing_operator("an operator or the end of the cell")))),
+    }
+}
+
+/// Whatever stands in the wrong place can at least be taken away.
+fn with_a_mend(problem: Problem) -> Problem {
+    match problem.mends.is_empty() {
+        true => problem.mend("write what is missing before it, or take it away"),
+        false => problem,
     }
 }
 
@@ -167,7 +175,7 @@ impl Open {
             reader.line(asks).map_err(Some)
         };
         let line = line.unwrap_or_else(|problem| {
-            problems.extend(problem.map(|p| *p));
+            problems.extend(problem.map(|p| with_a_mend(*p)));
             Line::Broken(names_before_equals(&open.tokens))
         });
         tree.statements.push(Statement { line, span, mark, block });

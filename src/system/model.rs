@@ -56,6 +56,8 @@ pub struct Model<'a> {
     by_name: Vec<u32>,
     /// Names that nothing defines, by the node that uses them; lines that mix operators.
     pub(super) faulty: FxHashMap<ExprId, Fault>,
+    /// Names that nothing defines, with the one error of each.
+    pub(super) unknown: FxHashMap<Sym, Fault>,
     pub(super) items: FxHashMap<ExprId, Out<u32>>,
     pub(super) item_list: Vec<Item>,
     pub(super) figures: FxHashMap<ExprId, Out<Quantity>>,
@@ -77,6 +79,7 @@ impl<'a> Model<'a> {
             problems: Vec::new(),
             by_name: vec![NONE; tree.names.len()],
             faulty: FxHashMap::default(),
+            unknown: FxHashMap::default(),
             items: FxHashMap::default(),
             item_list: Vec::new(),
             figures: FxHashMap::default(),
