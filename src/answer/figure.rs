@@ -254,18 +254,21 @@ impl Desk {
             _ => return Err(wrong_total(model, place)),
         };
         let text = model.tree.names.text(word).to_string();
-        if !matches!(text.as_str(), "cost" | "mass") && !model.units.attributes.contains_key(&word) {
-            return Err(model.fault(
-                Problem::error(
-                    Code::Undeclared,
-                    model.tree.span(args[1]),
-                    format!("`{text}` is no attribute"),
-                )
-                .mend(format!("declare it: `attribute {text}`")),
-            ));
-        }
         self.no_figure(model, thing)?;
+        // The things first: an item that has the word undeclared says so itself.
         let prepared = self.prepare(model, thing)?;
+        if !matches!(text.as_str(), "cost" | "mass") && !model.units.attributes.contains_key(&word) {
+            let names = &model.tree.names;
+            let declared = model.units.attributes.keys().map(|s| names.text(*s)).chain(["cost", "mass"]);
+            let near = words::nearest(&text, declared).map(|near| format!("did you mean `{near}`?"));
+            let problem = Problem::error(
+                Code::Undeclared,
+                model.tree.span(args[1]),
+                format!("no line declares the attribute `{text}`"),
+            );
+            let mend = near.unwrap_or_else(|| format!("declare it on a line of its own: `attribute {text}`"));
+            return Err(model.fault(problem.mend(mend)));
+        }
         let mut sum: Option<Quantity> = None;
         let mut lacking: Vec<String> = Vec::new();
         for (name, item) in model.things_under(prepared.asked) {
@@ -325,6 +328,9 @@ impl Desk {
 
     /// The block of a named thing within a system; `None` for a perfect one.
     fn find_block(&mut self, model: &mut Model<'_>, subject: &Subject, name: ExprId) -> Out<Option<BlockId>> {
+        if let Some(fault) = model.faulty(name) {
+            return Err(fault);
+        }
         let wanted = match model.tree.expr(model.tree.inside_groups(name)) {
             Expr::Name(sym) => model.tree.names.text(sym).to_string(),
             _ => model.text_of(name),
@@ -471,7 +477,7 @@ pub(super) fn no_thing(model: &mut Model<'_>, call: ExprId) -> Fault {
     let text = model.text_of(call);
     let place = model.tree.span(call);
     model.fault(
-        Problem::error(Code::WrongArguments, place, format!("`{text}` says of nothing what it asks"))
+        Problem::error(Code::WrongArguments, place, format!("`{text}` asks about nothing"))
             .mend("put the thing in the parentheses, as in `R(feed)`"),
     )
 }

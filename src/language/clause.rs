@@ -184,7 +184,9 @@ impl Reader<'_> {
             self.at += 1;
             return self.clause_value(ClauseWord::Attribute, sym, span);
         }
-        if self.tokens.get(self.at + 1).is_none_or(|t| t.tok == Tok::Comma) && !text.is_empty() && start > 0 {
+        let ends = self.tokens.get(self.at + 1).is_none_or(|t| t.tok == Tok::Comma);
+        let says = matches!(self.tokens.get(self.at + 1), Some(t) if matches!(t.tok, Tok::Name { quoted: true, .. }));
+        if (ends || says) && !text.is_empty() && start > 0 {
             return Err(Box::new(unknown_clause(span, text, std::iter::empty())));
         }
         self.bare_probability(start)

@@ -448,13 +448,17 @@ impl Reader<'_> {
                     .mend("name the things whose failure counts; a thing called so is written \"not\""),
             );
         }
+        let problem = Problem::error(
+            Code::ReservedWord,
+            span,
+            format!("`{text}` is a word of the language and no name"),
+        );
+        let problem = match words::begins_clause(text) {
+            true => problem.mend(format!("data stand on a line of their own, as in `item = {text} …`")),
+            false => problem,
+        };
         Box::new(
-            Problem::error(
-                Code::ReservedWord,
-                span,
-                format!("`{text}` is a word of the language and no name"),
-            )
-            .mend(format!("write \"{text}\" in double quotes if a thing is called so")),
+            problem.mend(format!("write \"{text}\" in double quotes if a thing is called so")),
         )
     }
 

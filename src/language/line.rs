@@ -299,7 +299,7 @@ impl Reader<'_> {
                     span,
                     format!("`{word}` sets something and cannot ask"),
                 )
-                .mend("take the `?` away"),
+                .mend("a setting stands on a line of a block, without `?`"),
             ));
         }
         match word.as_str() {

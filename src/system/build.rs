@@ -218,7 +218,11 @@ impl Model<'_> {
             Expr::Item(_) | Expr::Changed(..) => {
                 let _ = self.item_at(self.tree.inside_groups(value));
             }
-            Expr::Literal(_) | Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..) | Expr::Name(_) => {}
+            // `1 in 0` or an unknown unit is wrong wherever it will be used.
+            Expr::Literal(_) => {
+                let _ = self.figure(self.tree.inside_groups(value));
+            }
+            Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..) | Expr::Name(_) => {}
             Expr::Call(word, _) if self.lookup(word).is_none() => {}
             _ => {
                 let mut tasks = Vec::new();

@@ -9,7 +9,7 @@ use super::quantity::{Dim, Quantity, STEP};
 use super::scope::Bound;
 use crate::language::{ArithOp, Expr, ExprId, Literal, Suffix, Sym, words};
 use crate::number::{Decimal, Real};
-use crate::source::{Code, Problem, Span};
+use crate::source::{Code, Label, Problem, Span};
 
 /// Answers the questions in a formula.
 pub trait Oracle {
@@ -296,6 +296,14 @@ impl Model<'_> {
         let (dim, factor) = match self.units.resolve(unit, &self.tree.names) {
             Ok(found) => found,
             Err(problem) => {
+                if let Some(fault) = self.unknown_units.get(&unit.word).copied() {
+                    let label = Label { place: unit.span, text: "and here".to_string() };
+                    let known = &mut self.problems[fault.0 as usize];
+                    if known.place != unit.span && !known.labels.contains(&label) && known.labels.len() < 8 {
+                        known.labels.push(label);
+                    }
+                    return Err(fault);
+                }
                 // `10LAC10` reads as a number and its unit.
                 let word = self.tree.names.text(unit.word);
                 let mut problem = *problem;
@@ -303,7 +311,9 @@ impl Model<'_> {
                     let number = self.sources.text(place);
                     problem.mends.insert(0, format!("a name that begins with a digit is quoted: \"{number}{word}\""));
                 }
-                return Err(self.fault(problem));
+                let fault = self.fault(problem);
+                self.unknown_units.insert(unit.word, fault);
+                return Err(fault);
             }
         };
         if !quantity.dim.is_none() {
@@ -454,7 +464,8 @@ impl Model<'_> {
             ));
         }
         if matches!(name, "ln" | "log10") && x.value <= Real::ZERO {
-            return Err(self.no_value(place));
+            let problem = Problem::error(Code::NoValue, place, "a logarithm is of a figure above zero");
+            return Err(self.fault(problem.mend("look at the figure in its parentheses")));
         }
         let (value, slope) = match name {
             "exp" => (x.value.exp(), x.value.to_f64().exp()),
@@ -468,7 +479,8 @@ impl Model<'_> {
 
     fn root(&mut self, x: &Quantity, place: Span) -> Out<Quantity> {
         if x.value.is_negative() {
-            return Err(self.no_value(place));
+            let problem = Problem::error(Code::NoValue, place, "a root is of a figure that is not below zero");
+            return Err(self.fault(problem.mend("look at the figure in its parentheses")));
         }
         let Some(dim) = x.dim.sqrt() else {
             return Err(self.fault(

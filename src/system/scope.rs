@@ -355,7 +355,7 @@ impl Model<'_> {
     }
 
     /// The noted fault of a node, if it has one.
-    pub(super) fn faulty(&self, id: ExprId) -> Option<Fault> {
+    pub(crate) fn faulty(&self, id: ExprId) -> Option<Fault> {
         self.faulty.get(&id).copied()
     }
 }
