@@ -321,8 +321,7 @@ impl Work<'_> {
     fn place(&mut self, index: usize, mark: Mark, reply: Out<Reply>, unmet: bool, model: &Model<'_>) {
         let read = self.read;
         let statement = &read.tree.statements[index];
-        let reply =
-            reply.unwrap_or_else(|fault| {
+        let reply = reply.unwrap_or_else(|fault| {
             let in_cell = matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
             Reply::Error(self.message(fault, statement.span, mark, in_cell, model))
         });
@@ -367,7 +366,9 @@ impl Work<'_> {
             false => whole.start <= place.start && place.start <= whole.end,
         };
         let own = |p: &Problem| {
-            within(p.place) || (matches!(p.code, Code::UnknownName | Code::UnknownUnit) && p.labels.iter().any(|l| within(l.place)))
+            within(p.place)
+                || (matches!(p.code, Code::UnknownName | Code::UnknownUnit)
+                    && p.labels.iter().any(|l| within(l.place)))
         };
         let below = fault.0 != u32::MAX && model.rests_below(fault);
         let own_line = below && in_cell && within(model.problem(fault).place);

@@ -128,7 +128,8 @@ fn sound(case: &Case, filled: &Filled, note: &str) -> Vec<String> {
     let mut wrong = Vec::new();
     for problem in &filled.problems {
         let message = &problem.message;
-        if message.ends_with('.') || problem.level == Level::Error && message.starts_with(char::is_uppercase) {
+        if message.ends_with('.') || problem.level == Level::Error && message.starts_with(char::is_uppercase)
+        {
             wrong.push(format!("{}: message in another style: {message}", case.title));
         }
         if problem.level == Level::Error && problem.mends.is_empty() {

@@ -264,12 +264,8 @@ impl Reader<'_> {
         let problem = self.unexpected(wanted);
         let before = self.at.checked_sub(1).map(|i| self.tokens[i].tok);
         let mend = match (before, self.peek()) {
-            (Some(Tok::Number), Some(Tok::Number)) => {
-                "write one number without a space in it"
-            }
-            (Some(_), Some(Tok::Number)) => {
-                "a name that begins with a digit stands in double quotes"
-            }
+            (Some(Tok::Number), Some(Tok::Number)) => "write one number without a space in it",
+            (Some(_), Some(Tok::Number)) => "a name that begins with a digit stands in double quotes",
             (Some(Tok::Name { .. } | Tok::Close), Some(Tok::Name { .. } | Tok::Open))
                 if !self.word(0).is_some_and(words::is_reserved) =>
             {
@@ -457,9 +453,7 @@ impl Reader<'_> {
             true => problem.mend(format!("data stand on a line of their own, as in `item = {text} …`")),
             false => problem,
         };
-        Box::new(
-            problem.mend(format!("write \"{text}\" in double quotes if a thing is called so")),
-        )
+        Box::new(problem.mend(format!("write \"{text}\" in double quotes if a thing is called so")))
     }
 
     /// `a` is the article only directly before a name or `(`; `a(` is a call.

@@ -59,9 +59,13 @@ pub fn read_block<'a>(
 /// A line that begins with `?` below no question.
 fn stray_answer(line: Source<'_>) -> Problem {
     let start = line.at + (line.text.len() - line.text.trim_start().len()) as u32;
-    Problem::error(Code::MalformedQuestion, Span { start, end: start + 1 }, "nothing is asked before this `?`")
-        .mend("write the question left of it, as in `R(pump) ?`")
-        .mend("delete the line if it is an answer whose question is gone")
+    Problem::error(
+        Code::MalformedQuestion,
+        Span { start, end: start + 1 },
+        "nothing is asked before this `?`",
+    )
+    .mend("write the question left of it, as in `R(pump) ?`")
+    .mend("delete the line if it is an answer whose question is gone")
 }
 
 /// Reads one question that stands alone, as in a comment pair: the text left

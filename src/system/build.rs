@@ -505,7 +505,8 @@ impl Model<'_> {
             Expr::WithUnit(..) => self.figure(inner).ok()?.dim,
             _ => return None,
         };
-        let (name, span, place) = (self.written(self.def(def).name), self.def(def).span, self.tree.span(expr));
+        let (name, span, place) =
+            (self.written(self.def(def).name), self.def(def).span, self.tree.span(expr));
         let what = self.units.describe(&dim, &self.tree.names);
         Some(
             self.fault(

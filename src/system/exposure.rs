@@ -45,7 +45,8 @@ impl Model<'_> {
             let statement = &self.tree.statements[index];
             // A mission that cannot be read is none: what ages rests on that line.
             let first = self.sources.text(statement.span).split_whitespace().next();
-            if matches!(statement.line, Line::Broken(_)) && first == Some("mission") && self.mission.is_none() {
+            if matches!(statement.line, Line::Broken(_)) && first == Some("mission") && self.mission.is_none()
+            {
                 self.mission = Some(Err(self.broken_line("the mission", statement.span)));
             }
             if let Line::Mission(phases) = &statement.line
@@ -135,11 +136,12 @@ impl Model<'_> {
         if f < 0.0 || most.is_some_and(|m| f > m) {
             let range = if most.is_some() { "from 0 to 100%" } else { "zero or more" };
             return Err(self.fault(
-                Problem::error(Code::OutsideRange, place, format!("`{word}` is {range}"))
-                    .mend(match f < 0.0 {
+                Problem::error(Code::OutsideRange, place, format!("`{word}` is {range}")).mend(
+                    match f < 0.0 {
                         true => "write it without the minus",
                         false => "a factor on the pace of ageing above 1 is written with `stress`",
-                    }),
+                    },
+                ),
             ));
         }
         Ok(factor)

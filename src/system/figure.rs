@@ -309,7 +309,9 @@ impl Model<'_> {
                 let mut problem = *problem;
                 if place.end == unit.span.start && word.contains(|c: char| c.is_ascii_digit()) {
                     let number = self.sources.text(place);
-                    problem.mends.insert(0, format!("a name that begins with a digit is quoted: \"{number}{word}\""));
+                    problem
+                        .mends
+                        .insert(0, format!("a name that begins with a digit is quoted: \"{number}{word}\""));
                 }
                 let fault = self.fault(problem);
                 self.unknown_units.insert(unit.word, fault);
@@ -479,7 +481,8 @@ impl Model<'_> {
 
     fn root(&mut self, x: &Quantity, place: Span) -> Out<Quantity> {
         if x.value.is_negative() {
-            let problem = Problem::error(Code::NoValue, place, "a root is of a figure that is not below zero");
+            let problem =
+                Problem::error(Code::NoValue, place, "a root is of a figure that is not below zero");
             return Err(self.fault(problem.mend("look at the figure in its parentheses")));
         }
         let Some(dim) = x.dim.sqrt() else {

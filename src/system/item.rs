@@ -410,15 +410,13 @@ impl Model<'_> {
         };
         let base = self.exposure_base(&figure, power, place, &wants)?;
         if figure.value.is_negative() || (!is_rate && figure.value.is_zero()) {
-            return Err(self.fault(
-                if is_rate {
-                    Problem::error(Code::OutsideRange, place, format!("`{word}` is not below zero"))
-                        .mend("write it without the minus")
-                } else {
-                    Problem::error(Code::OutsideRange, place, format!("`{word}` is above zero"))
-                        .mend("write the mean time to a failure; what cannot fail is `perfect`")
-                },
-            ));
+            return Err(self.fault(if is_rate {
+                Problem::error(Code::OutsideRange, place, format!("`{word}` is not below zero"))
+                    .mend("write it without the minus")
+            } else {
+                Problem::error(Code::OutsideRange, place, format!("`{word}` is above zero"))
+                    .mend("write the mean time to a failure; what cannot fail is `perfect`")
+            }));
         }
         let pace = if is_rate { Pace::Rate(figure) } else { Pace::Mean(figure) };
         self.add_pace(item, Ageing { base, pace, clause })
@@ -519,7 +517,9 @@ impl Model<'_> {
             let mut problem = Problem::error(Code::OutsideRange, place, "a probability lies between 0 and 1");
             let text = self.sources.text(place);
             // `98` was meant as a percentage, `1.2` or `3 in 2` hardly.
-            if (2.0..=100.0).contains(&value.to_f64()) && text.bytes().all(|b| b == b'.' || b.is_ascii_digit()) {
+            if (2.0..=100.0).contains(&value.to_f64())
+                && text.bytes().all(|b| b == b'.' || b.is_ascii_digit())
+            {
                 problem = problem.mend(format!("write a percentage with its sign: `{text}%`"));
             } else {
                 problem = problem.mend("write it as a decimal from 0 to 1, as `98%`, or as `1 in 500`");

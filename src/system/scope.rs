@@ -119,14 +119,18 @@ impl Model<'_> {
                     if let Some(def) = self.lookup(word).filter(|d| self.def(*d).has_params) {
                         found(self, id, def, Use::Open);
                     }
-                    let inner = match self.tree.names.text(word) {
+                    let text = self.tree.names.text(word);
+                    let inner = match text {
                         w if words::FUNCTIONS.contains(&w) => Use::Figure,
                         _ => Use::Open,
                     };
+                    // What is asked about is a thing; `steps` may be asked of a figure.
+                    let asked = words::QUESTIONS.contains(&text) && text != "steps";
+                    let of = |i: usize| if asked && i == 0 { Use::Thing } else { inner };
                     let total = self.tree.names.text(word) == "total";
                     let args = self.tree.list(args).iter().enumerate();
                     // The second argument of `total` is the word of an attribute, no name.
-                    stack.extend(args.filter(|(i, _)| !(total && *i == 1)).map(|(_, x)| (*x, inner)));
+                    stack.extend(args.filter(|(i, _)| !(total && *i == 1)).map(|(i, x)| (*x, of(i))));
                 }
                 Expr::Item(clauses) => self.clause_values(clauses, &mut stack),
                 Expr::Changed(copy, clauses) => {
@@ -277,10 +281,12 @@ impl Model<'_> {
             let (Some(figure), Some(thing)) = *used else { continue };
             let def = &self.defs[index];
             let number = def.value.is_some_and(|v| {
-                matches!(
-                    self.tree.expr(self.tree.inside_groups(v)),
-                    Expr::Literal(_) | Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..)
-                )
+                match self.tree.expr(self.tree.inside_groups(v)) {
+                    // A figure with a unit is never a thing: the use that takes it for one is told.
+                    Expr::Literal(id) => !matches!(self.tree.literals[id as usize].suffix, Suffix::Unit(_)),
+                    Expr::Arith(..) | Expr::Negate(_) => true,
+                    _ => false,
+                }
             });
             if !number || def.broken.is_some() {
                 continue;
