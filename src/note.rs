@@ -165,9 +165,8 @@ fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Answere
     let mut problems = read.found.problems.clone();
     problems.extend(read.problems.iter().cloned());
     show_readings(&mut model, &mut desk);
-    problems.append(&mut model.problems);
+    problems.append(&mut model.take_problems());
     problems.append(&mut work.problems);
-    problems.retain(|p| p.code != Code::BrokenBelow);
     problems.sort_by_key(|p| (p.place.start, p.place.end));
     problems.dedup();
     let edits = std::mem::take(&mut work.edits);
@@ -199,9 +198,6 @@ fn show_readings(model: &mut Model<'_>, desk: &mut Desk) {
         let place = model.problems[index].place;
         let tree = model.tree;
         let Some(mixed) = tree.mixed_at(place) else { continue };
-        if mixed.readings.len() < 2 {
-            continue;
-        }
         let mut mends = Vec::new();
         for reading in &mixed.readings {
             let text = model.text_of(*reading);
@@ -302,6 +298,12 @@ impl Work<'_> {
                 format!("{list} {verb} in several places and {count}"),
             ));
         }
+        for text in desk.take_cut_short() {
+            self.problems.push(
+                Problem::remark(Code::CutShort, place, text)
+                    .mend("ask for a number of your own, `first 200`, for low orders, `order 3`, or for their `count(…)`"),
+            );
+        }
         let unscaled = desk.take_unscaled();
         if !unscaled.is_empty() {
             let list = crate::steps::folded(&unscaled);
@@ -319,12 +321,15 @@ impl Work<'_> {
     fn place(&mut self, index: usize, mark: Mark, reply: Out<Reply>, unmet: bool, model: &Model<'_>) {
         let read = self.read;
         let statement = &read.tree.statements[index];
-        let reply =
-            reply.unwrap_or_else(|fault| Reply::Error(self.message(fault, statement.span, mark, model)));
+        let reply = reply.unwrap_or_else(|fault| {
+            let in_cell = matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
+            Reply::Error(self.message(fault, statement.span, mark, in_cell, model))
+        });
         let error = matches!(reply, Reply::Error(_));
+        let broken = matches!(statement.line, Line::Broken(_));
         let (old, stale) = match &read.found.places[statement.block as usize] {
-            Place::Fence(fence) => self.in_fence(fence, mark, &reply),
-            Place::Pair(pair) => self.in_pair(pair, &reply),
+            Place::Fence(fence) => self.in_fence(fence, mark, &reply, broken),
+            Place::Pair(pair) => self.in_pair(pair, &reply, broken),
             Place::Table(table) => {
                 let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
                     return;
@@ -349,16 +354,31 @@ impl Work<'_> {
     }
 
     /// The message of an answer that is none.
-    fn message(&self, fault: Fault, span: Span, mark: Mark, model: &Model<'_>) -> String {
+    fn message(&self, fault: Fault, span: Span, mark: Mark, in_cell: bool, model: &Model<'_>) -> String {
         let whole = Span { start: span.start, end: span.end.max(mark.at + 1) };
-        let own = |p: &Problem| whole.start <= p.place.start && p.place.start <= whole.end;
-        let problem = if fault.0 == u32::MAX {
+        // A question in a cell is its header and its row.
+        let row = model.sources.line(Span { start: mark.at, end: mark.at }).map(|l| l.1);
+        let within = |place: Span| match in_cell {
+            true => {
+                (span.start <= place.start && place.start <= span.end)
+                    || model.sources.line(place).map(|l| l.1) == row
+            }
+            false => whole.start <= place.start && place.start <= whole.end,
+        };
+        let own = |p: &Problem| {
+            within(p.place)
+                || (matches!(p.code, Code::UnknownName | Code::UnknownUnit)
+                    && p.labels.iter().any(|l| within(l.place)))
+        };
+        let below = fault.0 != u32::MAX && model.rests_below(fault);
+        let own_line = below && in_cell && within(model.problem(fault).place);
+        let problem = if fault.0 == u32::MAX || own_line {
             self.read.problems.iter().find(|p| p.level == Level::Error && own(p))
         } else {
             Some(model.problem(fault))
         };
         let text = match problem {
-            Some(problem) if own(problem) && problem.code != Code::BrokenBelow => {
+            Some(problem) if own(problem) && (own_line || !below) => {
                 let hint = problem.mends.iter().find(|m| m.starts_with("did you mean"));
                 match hint {
                     Some(hint) => format!("{}: {hint}", problem.message),
@@ -384,7 +404,7 @@ impl Work<'_> {
         );
     }
 
-    fn in_fence(&mut self, fence: &Fence, mark: Mark, reply: &Reply) -> (String, bool) {
+    fn in_fence(&mut self, fence: &Fence, mark: Mark, reply: &Reply, broken: bool) -> (String, bool) {
         let line = &fence.lines[mark.line as usize];
         let old_lines = old_answer_lines(self.text, self.base, fence, mark.line as usize);
         let mut old = self.slice(mark.answer).to_string();
@@ -395,7 +415,10 @@ impl Work<'_> {
             old.push_str(self.slice(fence.lines[number].text).trim_start().trim_start_matches("? "));
         }
         if !is_answer(self.slice(mark.answer)) {
-            self.not_an_answer(mark.answer);
+            // A line in error may have its mark too early: `R(A ? ) ?` is one mistake.
+            if !broken {
+                self.not_an_answer(mark.answer);
+            }
             return (old, false);
         }
         let answer = FenceAnswer { inline: reply.line(), lines: reply.fence_lines() };
@@ -414,7 +437,7 @@ impl Work<'_> {
         (old, stale)
     }
 
-    fn in_pair(&mut self, pair: &Pair, reply: &Reply) -> (String, bool) {
+    fn in_pair(&mut self, pair: &Pair, reply: &Reply, broken: bool) -> (String, bool) {
         let old = pair.answer.map_or("", |a| self.slice(a)).to_string();
         let line = reply.line();
         let edit = match (&line, pair.form) {
@@ -428,7 +451,9 @@ impl Work<'_> {
                 if let (Some(answer), true) = (pair.answer, single)
                     && !is_answer(&unescape(&old))
                 {
-                    self.not_an_answer(answer);
+                    if !broken {
+                        self.not_an_answer(answer);
+                    }
                     return (old, false);
                 }
                 if pair.answer.is_some() && same_answer(&old, &escape(line, context)) {
@@ -625,7 +650,7 @@ fn one_question(
     let mark = statement.mark.unwrap_or(Mark { at: statement.span.end, answer: statement.span, line: 0 });
     let (new, error) = match out {
         Ok(text) => (text, false),
-        Err(fault) => (format!("! {}", work.message(fault, statement.span, mark, &model)), true),
+        Err(fault) => (format!("! {}", work.message(fault, statement.span, mark, false, &model)), true),
     };
     let asked = Asked {
         place: statement.span,
@@ -638,9 +663,8 @@ fn one_question(
     };
     let mut problems: Vec<Problem> = read.found.problems.clone();
     problems.extend(read.problems.iter().cloned());
-    problems.append(&mut model.problems);
+    problems.append(&mut model.take_problems());
     problems.append(&mut work.problems);
-    problems.retain(|p| p.code != Code::BrokenBelow);
     problems.sort_by_key(|p| (p.place.start, p.place.end));
     problems.dedup();
     Filled { asked: vec![asked], problems, unmet, rewrite: Rewrite::Unchanged, sources: sources.clone() }

@@ -54,6 +54,8 @@ pub struct Desk {
     pub(super) leant_on: Vec<Rc<Prepared>>,
     /// Fixed probabilities that an asked exposure left as they are.
     pub(super) unscaled: Vec<String>,
+    /// Lists that a limit cut short which no question set.
+    pub(super) cut_short: Vec<String>,
 }
 
 /// Two expressions that name one definition ask of one system.
@@ -72,6 +74,11 @@ impl Desk {
     /// Fixed probabilities that an asked exposure left as they are; the list starts anew.
     pub fn take_unscaled(&mut self) -> Vec<String> {
         std::mem::take(&mut self.unscaled)
+    }
+
+    /// What was said of lists that were cut short; the list starts anew.
+    pub fn take_cut_short(&mut self) -> Vec<String> {
+        std::mem::take(&mut self.cut_short)
     }
 
     fn key(model: &Model<'_>, thing: ExprId) -> ExprKey {
@@ -154,7 +161,17 @@ impl Desk {
                 return known;
             }
         }
-        let out = self.exposure(model, given, place).and_then(|exposure| {
+        // Where nothing ages, no mission is needed, and one in error takes nothing down.
+        let ages = |leaf: &crate::system::Leaf| !model.item(leaf.item).ageing.is_empty();
+        let exposure = if given.is_empty() && !prepared.system.leaves.iter().any(ages) {
+            match &model.mission {
+                Some(Ok(mission)) => Ok(mission.clone()),
+                _ => Ok(Exposure { parts: Vec::new(), asked: false, span: place }),
+            }
+        } else {
+            self.exposure(model, given, place)
+        };
+        let out = exposure.and_then(|exposure| {
             let chances = leaf_chances(model, &prepared.system, &exposure, place)?;
             let values = evaluate(&prepared.plan, &chances);
             let chance = values.get(prepared.plan.root().0 as usize).copied().unwrap_or(Chance::PERFECT);

@@ -2,6 +2,7 @@
 
 use super::desk::{Desk, Prepared, Valued};
 use crate::engine::cuts::Minimal;
+use crate::engine::evaluate::evaluate;
 use crate::engine::importance::Importance;
 use crate::engine::minimal::Which;
 use crate::engine::plan::BlockId;
@@ -14,6 +15,8 @@ use std::rc::Rc;
 
 /// Diagram nodes allowed while minimal sets are made.
 pub(super) const SET_NODES: usize = 4_000_000;
+/// Below this no value is told from another.
+const SMALLEST: f64 = 1e-300;
 /// Questions inside questions.
 const DEEPEST: u32 = 100;
 
@@ -41,7 +44,10 @@ impl Number {
                     Side::Works => (chance.works(), chance.fails()),
                     Side::Fails => (chance.fails(), chance.works()),
                 };
-                let error = chance.smaller().to_f64() * bound + value.to_f64() * STEP;
+                let error = match bound.is_finite() {
+                    true => chance.smaller().to_f64() * bound + value.to_f64() * STEP,
+                    false => SMALLEST,
+                };
                 Ok(Quantity { value, complement: Some(other), dim: Dim::NONE, error })
             }
             Number::Figure(quantity) => Ok(quantity),
@@ -133,7 +139,11 @@ impl Desk {
             "R" | "F" => {
                 let side = if text == "R" { Side::Works } else { Side::Fails };
                 let subject = self.subject(model, call, args, 1)?;
-                Ok(Number::Chance(subject.valued.chance, side, subject.valued.bound))
+                let bound = match underflowed(&subject) {
+                    true => f64::INFINITY,
+                    false => subject.valued.bound,
+                };
+                Ok(Number::Chance(subject.valued.chance, side, bound))
             }
             "count" => self.count(model, call, args),
             "total" => self.total(model, call, args),
@@ -175,6 +185,7 @@ impl Desk {
         let Some(def) = model.lookup(sym) else { return Ok(()) };
         let Some(value) = model.def(def).value else { return Ok(()) };
         let (figure, why) = match model.tree.expr(model.tree.inside_groups(value)) {
+            _ if asks_within(model, value) => (true, "the answer to a question".to_string()),
             Expr::Literal(_) | Expr::WithUnit(..) | Expr::Arith(..) | Expr::Negate(_) => {
                 match model.figure_with(value, Ctx::TOP, self) {
                     Ok(quantity) if quantity.dim.is_none() => (false, String::new()),
@@ -253,18 +264,21 @@ impl Desk {
             _ => return Err(wrong_total(model, place)),
         };
         let text = model.tree.names.text(word).to_string();
-        if !matches!(text.as_str(), "cost" | "mass") && !model.units.attributes.contains_key(&word) {
-            return Err(model.fault(
-                Problem::error(
-                    Code::Undeclared,
-                    model.tree.span(args[1]),
-                    format!("`{text}` is no attribute"),
-                )
-                .mend(format!("declare it: `attribute {text}`")),
-            ));
-        }
         self.no_figure(model, thing)?;
+        // The things first: an item that has the word undeclared says so itself.
         let prepared = self.prepare(model, thing)?;
+        if !matches!(text.as_str(), "cost" | "mass") && !model.units.attributes.contains_key(&word) {
+            let names = &model.tree.names;
+            let declared = model.units.attributes.keys().map(|s| names.text(*s)).chain(["cost", "mass"]);
+            let near = words::nearest(&text, declared).map(|near| format!("did you mean `{near}`?"));
+            let problem = Problem::error(
+                Code::Undeclared,
+                model.tree.span(args[1]),
+                format!("no line declares the attribute `{text}`"),
+            );
+            let mend = near.unwrap_or_else(|| format!("declare it on a line of its own: `attribute {text}`"));
+            return Err(model.fault(problem.mend(mend)));
+        }
         let mut sum: Option<Quantity> = None;
         let mut lacking: Vec<String> = Vec::new();
         for (name, item) in model.things_under(prepared.asked) {
@@ -324,6 +338,9 @@ impl Desk {
 
     /// The block of a named thing within a system; `None` for a perfect one.
     fn find_block(&mut self, model: &mut Model<'_>, subject: &Subject, name: ExprId) -> Out<Option<BlockId>> {
+        if let Some(fault) = model.faulty(name) {
+            return Err(fault);
+        }
         let wanted = match model.tree.expr(model.tree.inside_groups(name)) {
             Expr::Name(sym) => model.tree.names.text(sym).to_string(),
             _ => model.text_of(name),
@@ -436,6 +453,53 @@ impl Desk {
     }
 }
 
+/// Whether a chance of zero is only smaller than the numbers reach: what can fail at
+/// all, failing together, would fail the whole; or likewise for working.
+fn underflowed(subject: &Subject) -> bool {
+    let chance = subject.valued.chance;
+    if !chance.smaller().is_zero() {
+        return false;
+    }
+    let fails = chance.fails().is_zero();
+    let (up, down) = (Chance::PERFECT, Chance::new(Real::ZERO, Real::ONE));
+    let at_worst: Vec<Chance> = subject
+        .valued
+        .chances
+        .iter()
+        .map(|c| match fails {
+            true if !c.fails().is_zero() => down,
+            true => up,
+            false if !c.works().is_zero() => up,
+            false => down,
+        })
+        .collect();
+    let values = evaluate(&subject.prepared.plan, &at_worst);
+    let whole = values.get(subject.prepared.plan.root().0 as usize).copied().unwrap_or(Chance::PERFECT);
+    if fails { whole.works().is_zero() } else { whole.fails().is_zero() }
+}
+
+/// Whether a formula has a question in it.
+fn asks_within(model: &Model<'_>, value: ExprId) -> bool {
+    let mut stack = vec![value];
+    while let Some(at) = stack.pop() {
+        match model.tree.expr(at) {
+            Expr::Group(x) | Expr::Negate(x) | Expr::WithUnit(x, _) => stack.push(x),
+            Expr::Arith(_, a, b) => stack.extend([a, b]),
+            Expr::Call(word, args) => {
+                let text = model.tree.names.text(word);
+                if words::QUESTIONS.contains(&text) {
+                    return true;
+                }
+                if words::FUNCTIONS.contains(&text) {
+                    stack.extend(model.tree.list(args));
+                }
+            }
+            _ => {}
+        }
+    }
+    false
+}
+
 fn wrong_total(model: &mut Model<'_>, place: Span) -> Fault {
     model.fault(
         Problem::error(Code::WrongArguments, place, "`total` takes a thing and an attribute")
@@ -448,7 +512,7 @@ pub(super) fn no_thing(model: &mut Model<'_>, call: ExprId) -> Fault {
     let text = model.text_of(call);
     let place = model.tree.span(call);
     model.fault(
-        Problem::error(Code::WrongArguments, place, format!("`{text}` says of nothing what it asks"))
+        Problem::error(Code::WrongArguments, place, format!("`{text}` asks about nothing"))
             .mend("put the thing in the parentheses, as in `R(feed)`"),
     )
 }
@@ -506,6 +570,20 @@ pub fn written(model: &Model<'_>, number: &Number, display: Option<Display>) -> 
         (Number::Infinite, _) => "infinite".to_string(),
         (Number::Whole(text), None) => text.clone(),
         (Number::Whole(_), Some(display)) => return Err(Box::new(no_display(display))),
+        (
+            Number::Chance(chance, side, bound),
+            display @ (None | Some(Display::Percent | Display::Chances)),
+        ) if bound.is_infinite() => {
+            let tiny = side.of(*chance).is_zero();
+            match display {
+                Some(Display::Chances) if tiny => "none: rarer than 1 in 1e300".to_string(),
+                Some(Display::Percent) if tiny => "< 1e-298%".to_string(),
+                Some(Display::Percent) => "> 100 - 1e-298%".to_string(),
+                Some(_) => "1 in 1.000".to_string(),
+                None if tiny => format!("< {SMALLEST:e}"),
+                None => format!("> 1 - {SMALLEST:e}"),
+            }
+        }
         (Number::Chance(chance, side, bound), None) => chance_text(*chance, *side, digits, *bound),
         (Number::Chance(chance, side, bound), Some(Display::Percent)) => {
             percent(*chance, *side, digits, *bound)

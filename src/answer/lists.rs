@@ -103,6 +103,18 @@ impl Desk {
         }
         let foot = sets.cut_by.map(|cut| {
             let total = minimal.count().map_or_else(|_| "more".to_string(), |n| n.to_string());
+            let by_the_question = model.tree.list(args).iter().any(|a| match model.tree.expr(*a) {
+                Expr::Choice(word, _) => match cut {
+                    CutBy::Order => model.tree.names.text(word) == "order",
+                    CutBy::First => model.tree.names.text(word) == "first",
+                    CutBy::Work { .. } => false,
+                },
+                _ => false,
+            });
+            if !by_the_question {
+                let shown = sets.sets.len();
+                self.cut_short.push(format!("{shown} sets are listed of {total} in all"));
+            }
             match cut {
                 CutBy::Order => format!("… {total} in all; those of higher order are left out"),
                 CutBy::First => format!("… {total} in all; the first {} are shown", sets.sets.len()),

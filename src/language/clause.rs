@@ -71,27 +71,12 @@ impl Reader<'_> {
     }
 
     fn item(&mut self, mut clauses: Vec<Clause>) -> Read<ExprId> {
-        while let Some(comma) = self.accept(Tok::Comma) {
-            self.check_decimal_comma(&clauses, comma)?;
+        while self.accept(Tok::Comma).is_some() {
             clauses.push(self.clause()?);
         }
         let span = clauses[0].span.to(self.last_span());
         let list = self.add_clauses(&clauses);
         Ok(self.tree.add(Expr::Item(list), span))
-    }
-
-    /// `0,98`: a comma that touches digits on both sides was meant as a decimal point.
-    fn check_decimal_comma(&self, clauses: &[Clause], comma: Span) -> Read<()> {
-        let before = clauses.last().map(|c| c.span);
-        let touches_before = before.is_some_and(|b| b.end == comma.start);
-        if touches_before && self.peek() == Some(Tok::Number) && self.peek_span().start == comma.end {
-            let place = before.unwrap_or(comma).to(self.peek_span());
-            return Err(Box::new(
-                Problem::error(Code::MalformedNumber, place, "a comma stands between digits")
-                    .mend("write a decimal with a point, and no separators in thousands"),
-            ));
-        }
-        Ok(())
     }
 
     pub(crate) fn add_clauses(&mut self, clauses: &[Clause]) -> List {
@@ -111,6 +96,9 @@ impl Reader<'_> {
         let start = self.at;
         let span = self.peek_span();
         let Some(Tok::Name { sym, quoted }) = self.peek() else {
+            if self.peek().is_none() {
+                return Err(self.unexpected("a clause"));
+            }
             return self.bare_probability(start);
         };
         let text = if quoted { String::new() } else { self.tree.names.text(sym).to_string() };
@@ -196,7 +184,9 @@ impl Reader<'_> {
             self.at += 1;
             return self.clause_value(ClauseWord::Attribute, sym, span);
         }
-        if self.tokens.get(self.at + 1).is_none_or(|t| t.tok == Tok::Comma) && !text.is_empty() && start > 0 {
+        let ends = self.tokens.get(self.at + 1).is_none_or(|t| t.tok == Tok::Comma);
+        let says = matches!(self.tokens.get(self.at + 1), Some(t) if matches!(t.tok, Tok::Name { quoted: true, .. }));
+        if (ends || says) && !text.is_empty() && start > 0 {
             return Err(Box::new(unknown_clause(span, text, std::iter::empty())));
         }
         self.bare_probability(start)

@@ -256,13 +256,33 @@ impl Reader<'_> {
                     .mend("say how many of the list must work, as in `2 of (A, B, C)`"),
             );
         }
-        let mut problem = self.unexpected("an operator or `)`");
-        if let Some(word) = self.word(0)
-            && let Some(n) = word.strip_prefix("of").filter(|n| n.starts_with(|c: char| c.is_ascii_digit()))
-        {
-            problem = Box::new(problem.mend(format!("write `of {n}` with spaces around `of`")));
-        }
-        problem
+        self.missing_operator("an operator or `)`")
+    }
+
+    /// Something stands directly after an operand.
+    pub(crate) fn missing_operator(&self, wanted: &str) -> Box<Problem> {
+        let problem = self.unexpected(wanted);
+        let before = self.at.checked_sub(1).map(|i| self.tokens[i].tok);
+        let mend = match (before, self.peek()) {
+            (Some(Tok::Number), Some(Tok::Number)) => "write one number without a space in it",
+            (Some(_), Some(Tok::Number)) => "a name that begins with a digit stands in double quotes",
+            (Some(Tok::Name { .. } | Tok::Close), Some(Tok::Name { .. } | Tok::Open))
+                if !self.word(0).is_some_and(words::is_reserved) =>
+            {
+                "put an operator between the two: `->` where both must work, `//` where one is enough"
+            }
+            _ => return problem,
+        };
+        Box::new(problem.mend(mend))
+    }
+
+    /// `2of3`, `2 of3`: a word of its own to the reader, and no unit.
+    fn run_together(&self) -> Option<Box<Problem>> {
+        let word = self.word(0)?;
+        let n = word.strip_prefix("of").filter(|n| n.starts_with(|c: char| c.is_ascii_digit()))?;
+        let problem =
+            Problem::error(Code::UnexpectedToken, self.peek_span(), format!("`{word}` reads as one word"));
+        Some(Box::new(problem.mend(format!("write `of {n}` with spaces around `of`"))))
     }
 
     /// Everything up to and with one operand; may open levels.
@@ -418,14 +438,22 @@ impl Reader<'_> {
         if matches!(text, "and" | "or") {
             return self.unexpected("a name, a number or `(`");
         }
-        Box::new(
-            Problem::error(
-                Code::ReservedWord,
-                span,
-                format!("`{text}` is a word of the language and no name"),
-            )
-            .mend(format!("write \"{text}\" in double quotes if a thing is called so")),
-        )
+        if text == "not" {
+            return Box::new(
+                Problem::error(Code::ReservedWord, span, "there is no `not` in this language")
+                    .mend("name the things whose failure counts; a thing called so is written \"not\""),
+            );
+        }
+        let problem = Problem::error(
+            Code::ReservedWord,
+            span,
+            format!("`{text}` is a word of the language and no name"),
+        );
+        let problem = match words::begins_clause(text) {
+            true => problem.mend(format!("data stand on a line of their own, as in `item = {text} …`")),
+            false => problem,
+        };
+        Box::new(problem.mend(format!("write \"{text}\" in double quotes if a thing is called so")))
     }
 
     /// `a` is the article only directly before a name or `(`; `a(` is a call.
@@ -471,6 +499,9 @@ impl Reader<'_> {
     pub(crate) fn literal(&mut self) -> Read<ExprId> {
         let number = self.peek_span();
         self.at += 1;
+        if let Some(problem) = self.run_together() {
+            return Err(problem);
+        }
         let mut span = number;
         let suffix = match self.peek() {
             Some(Tok::Percent) => {

@@ -384,7 +384,7 @@ impl<'a> GridReader<'_, 'a> {
         let meaning = words::clause(word).or_else(|| self.declared(word).then_some(ClauseWord::Attribute));
         let Some(meaning) = meaning else {
             if complain {
-                self.near_header(word, cell);
+                self.near_header(word, unit.is_some(), cell);
             }
             return Column::Foreign;
         };
@@ -400,9 +400,9 @@ impl<'a> GridReader<'_, 'a> {
         })
     }
 
-    fn near_header(&mut self, word: &str, cell: Source<'a>) {
+    fn near_header(&mut self, word: &str, with_unit: bool, cell: Source<'a>) {
         let known = ["name", "require", "need"].into_iter().chain(words::CLAUSES.iter().map(|(w, _)| *w));
-        if let Some(near) = words::nearest(word, known).filter(|_| word.chars().count() > 3) {
+        if let Some(near) = words::nearest(word, known).filter(|_| with_unit || word.chars().count() > 3) {
             self.problems.push(
                 Problem::remark(
                     Code::TableHeader,

@@ -61,20 +61,30 @@ fn definition_head(tokens: &[Token]) -> Option<usize> {
     is(at, Tok::Equals).then_some(at + 1)
 }
 
-/// The names that a line in error would have defined.
+/// The names that a line in error would have defined: lists of names before `=`
+/// that are whole, so that half of a misread name is not taken for a definition.
 pub(crate) fn names_before_equals(tokens: &[Token]) -> Vec<(Sym, Span)> {
-    let Some(equals) = tokens.iter().position(|t| t.tok == Tok::Equals) else { return Vec::new() };
-    let mut depth = 0;
     let mut names = Vec::new();
-    for token in &tokens[..equals] {
-        match token.tok {
-            Tok::Open => depth += 1,
-            Tok::Close => depth -= 1,
-            Tok::Name { sym, .. } if depth == 0 => names.push((sym, token.span)),
-            _ => {}
-        }
+    let mut from = 0;
+    for (equals, _) in tokens.iter().enumerate().filter(|(_, t)| t.tok == Tok::Equals) {
+        names.extend(whole_list(&tokens[from..equals]).unwrap_or_default());
+        from = equals + 1;
     }
     names
+}
+
+/// `a`, `a, b` or `a(p, q)`.
+fn whole_list(tokens: &[Token]) -> Option<Vec<(Sym, Span)>> {
+    let name = |t: &Token| match t.tok {
+        Tok::Name { sym, .. } => Some((sym, t.span)),
+        _ => None,
+    };
+    if tokens.get(1).is_some_and(|t| t.tok == Tok::Open) {
+        return Some(vec![name(&tokens[0])?]);
+    }
+    let commas = tokens.iter().skip(1).step_by(2).all(|t| t.tok == Tok::Comma);
+    (commas && tokens.len() % 2 == 1).then_some(())?;
+    tokens.iter().step_by(2).map(name).collect()
 }
 
 impl Reader<'_> {
@@ -98,16 +108,9 @@ impl Reader<'_> {
                     .mend("delete it, or open its parenthesis before"),
             );
         }
-        let mut problem = self.unexpected("an operator or the end of the line");
-        if let Some(word) = self.word(0) {
-            let digits = word.strip_prefix("of").filter(|n| n.starts_with(|c: char| c.is_ascii_digit()));
-            if let Some(n) = digits {
-                problem = Box::new(problem.mend(format!("write `of {n}` with spaces around `of`")));
-            } else if words::begins_clause(word) {
-                problem = Box::new(problem.mend(format!("put a comma before `{word}`")));
-            }
-        } else if self.at > 0 && self.peek() == Some(Tok::Number) {
-            problem = Box::new(problem.mend("a name that begins with a digit stands in double quotes"));
+        let mut problem = self.missing_operator("an operator or the end of the line");
+        if let Some(word) = self.word(0).filter(|w| words::begins_clause(w)) {
+            problem = Box::new(problem.mend(format!("put a comma before `{word}`")));
         }
         if self.peek() == Some(Tok::Equals) {
             problem = Box::new(problem.mend("a definition is `name = …`, with nothing else before the `=`"));
@@ -137,7 +140,7 @@ impl Reader<'_> {
             self.callable(names[0])?;
         }
         if self.peek().is_none() {
-            return Err(self.unexpected("what the name stands for"));
+            return Err(self.unexpected("a right side"));
         }
         let value = self.right_side()?;
         let display = self.display()?;
@@ -296,7 +299,7 @@ impl Reader<'_> {
                     span,
                     format!("`{word}` sets something and cannot ask"),
                 )
-                .mend("take the `?` away"),
+                .mend("a setting stands on a line of a block, without `?`"),
             ));
         }
         match word.as_str() {

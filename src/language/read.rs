@@ -23,9 +23,15 @@ pub fn read_block<'a>(
     problems: &mut Vec<Problem>,
 ) {
     let mut open = Open::default();
+    // Whether the line before asked, or was an answer line of one that did.
+    let mut asked = false;
     for (number, line) in lines.enumerate() {
         if line.text.trim_start().starts_with('?') && open.tokens.is_empty() {
-            continue; // an old answer line
+            if !asked {
+                problems.push(stray_answer(line));
+            }
+            asked = true; // an old answer line, or told already
+            continue;
         }
         let from = open.tokens.len();
         let found = problems.len();
@@ -41,12 +47,25 @@ pub fn read_block<'a>(
         open.count_parentheses();
         open.broken |= end.broken;
         open.asked |= end.mark.is_some();
+        asked = end.mark.is_some();
         open.end = Span { start: line.at + line.text.len() as u32, end: line.at + line.text.len() as u32 };
         if end.mark.is_some() || !open.goes_on(&tree.names) {
             open.finish(end.mark, block, tree, problems);
         }
     }
     open.finish(None, block, tree, problems);
+}
+
+/// A line that begins with `?` below no question.
+fn stray_answer(line: Source<'_>) -> Problem {
+    let start = line.at + (line.text.len() - line.text.trim_start().len()) as u32;
+    Problem::error(
+        Code::MalformedQuestion,
+        Span { start, end: start + 1 },
+        "nothing is asked before this `?`",
+    )
+    .mend("write the question left of it, as in `R(pump) ?`")
+    .mend("delete the line if it is an answer whose question is gone")
 }
 
 /// Reads one question that stands alone, as in a comment pair: the text left
@@ -73,7 +92,13 @@ pub fn read_question(source: Source<'_>, block: u32, tree: &mut Tree, problems: 
     let end = source.at + source.text.len() as u32;
     open.end = Span { start: end, end };
     let mark = Mark { at: end, answer: Span { start: end, end }, line: 0 };
+    let found = problems.len();
     open.finish_as(Some(mark), block, tree, problems, true);
+    // `R(A --> B)`: the comment ended at what was to be an arrow.
+    let cut = |p: &&mut Problem| matches!(p.code, Code::UnbalancedParenthesis | Code::UnfinishedLine);
+    for problem in problems[found..].iter_mut().filter(cut) {
+        problem.mends.push("a comment ends at its first `-->`: write series as `->` or `→`".to_string());
+    }
     tree.statements.len() - 1
 }
 
@@ -97,7 +122,15 @@ pub fn read_expression(source: Source<'_>, tree: &mut Tree) -> Result<ExprId, Bo
     let value = reader.right_side()?;
     match reader.peek() {
         None => Ok(value),
-        Some(_) => Err(reader.unexpected("an operator or the end of the cell")),
+        Some(_) => Err(Box::new(with_a_mend(*reader.missing_operator("an operator or the end of the cell")))),
+    }
+}
+
+/// Whatever stands in the wrong place can at least be taken away.
+fn with_a_mend(problem: Problem) -> Problem {
+    match problem.mends.is_empty() {
+        true => problem.mend("write what is missing before it, or take it away"),
+        false => problem,
     }
 }
 
@@ -167,7 +200,7 @@ impl Open {
             reader.line(asks).map_err(Some)
         };
         let line = line.unwrap_or_else(|problem| {
-            problems.extend(problem.map(|p| *p));
+            problems.extend(problem.map(|p| with_a_mend(*p)));
             Line::Broken(names_before_equals(&open.tokens))
         });
         tree.statements.push(Statement { line, span, mark, block });

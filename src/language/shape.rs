@@ -54,7 +54,7 @@ fn answer(input: &str) -> IResult<&str, ()> {
     alt((
         value((), all_consuming(plain)),
         value((), all_consuming((tag("< "), number, opt(unit)))),
-        value((), all_consuming((tag("> "), opt(tag("1 - ")), number, opt(unit)))),
+        value((), all_consuming((tag("> "), opt(alt((tag("1 - "), tag("100 - ")))), number, opt(unit)))),
         value((), all_consuming(tag("infinite"))),
         value((), all_consuming(tag("none"))),
         value((), preceded(tag("none: "), rest)),
@@ -93,6 +93,7 @@ mod tests {
             "3.0 %/kh",
             "-0.5",
             "< 1e-300",
+            "> 1 - 1e-300",
             "infinite",
             "none: R does not tend to 0",
             "met: 0.98570, uses 71.5% of the allowed 0.02",

@@ -4,6 +4,7 @@
 //! stands right of the question mark is tieback's and is not read as language.
 
 use super::tree::{Mark, Names, Sym};
+use super::words;
 use crate::source::{Code, Problem, Span};
 use nom::branch::alt;
 use nom::bytes::complete::{is_not, tag, take_while, take_while1};
@@ -178,10 +179,13 @@ pub(crate) fn line(
             symbol(rest).ok()
         };
         match found {
-            Some((after, Tok::Number)) if malformed_after(after) => {
-                let end = after.trim_start_matches(|c: char| c == '.' || c.is_ascii_digit());
-                problems.push(bad_number(place(rest, end)));
+            Some((after, Tok::Number)) if malformed_after(after, out, names) => {
+                let end = after.trim_start_matches(|c: char| ".,'_".contains(c) || c.is_ascii_digit());
+                // What only ends the number is none of it: a comma that goes on to the next clause.
+                let end = &after[after[..after.len() - end.len()].trim_end_matches([',', '\'', '_']).len()..];
+                problems.push(bad_number(&rest[..rest.len() - end.len()], place(rest, end)));
                 broken = true;
+                out.push(Token { tok: Tok::Number, span: place(rest, end) });
                 rest = end;
             }
             Some((after, tok)) => {
@@ -189,14 +193,22 @@ pub(crate) fn line(
                 rest = after;
             }
             None => {
-                let after = &rest[c.len_utf8()..];
-                let problem = stray(c, after, place(rest, after), place(rest, ""));
+                let mut after = &rest[c.len_utf8()..];
+                if c == '.' {
+                    after = after.trim_start_matches(|d: char| d == '.' || d.is_ascii_digit());
+                }
+                let problem = stray(c, rest, place(rest, after), place(rest, ""));
                 // One message for a run of strays on a line: the rest follow from the first.
                 if !broken {
                     problems.push(problem);
                 }
                 broken = true;
-                rest = if c == '"' { "" } else { after };
+                let end = if c == '"' { "" } else { after };
+                // Something stands here: the line does not go on only because what follows
+                // an operator could not be read, and `pump: 0.98` was to define `pump`.
+                let tok = if c == ':' { Tok::Equals } else { Tok::Number };
+                out.push(Token { tok, span: place(rest, end) });
+                rest = end;
             }
         }
     }
@@ -223,18 +235,81 @@ fn name_token(text: &str, names: &mut Names) -> Tok {
     Tok::Name { sym: names.intern(&plain), quoted: true }
 }
 
-/// `1.` and `1.2.3`; `0.97..0.99` is a range.
-fn malformed_after(after: &str) -> bool {
-    after.starts_with('.') && !after.starts_with("..")
+/// `1.` and `1.2.3`, `12'500` and `12_500`, and `0,98` where no list of numbers can
+/// stand; `0.97..0.99` is a range.
+fn malformed_after(after: &str, before: &[Token], names: &Names) -> bool {
+    let digit = |s: &str| s.starts_with(|c: char| c.is_ascii_digit());
+    if after.starts_with('.') {
+        return !after.starts_with("..");
+    }
+    match after.strip_prefix(['\'', '_', ',']) {
+        Some(more) if digit(more) => !after.starts_with(',') || !numbers_may_follow(before, names),
+        _ => false,
+    }
 }
 
-fn bad_number(place: Span) -> Problem {
-    Problem::error(Code::MalformedNumber, place, "a decimal has one point, with a digit on both sides of it")
-        .mend("write `0.5` for `.5`, `1` or `1.0` for `1.`, and a number without thousands separators")
+/// Whether `1,2` may be two numbers here: in parentheses, those of a question apart.
+fn numbers_may_follow(before: &[Token], names: &Names) -> bool {
+    // Far enough back for any question; long lists stay linear.
+    const FAR: usize = 64;
+    let mut depth = 0;
+    for (back, token) in before.iter().rev().take(FAR).enumerate() {
+        match token.tok {
+            Tok::Close => depth += 1,
+            Tok::Open if depth > 0 => depth -= 1,
+            Tok::Open => {
+                let word = before.len().checked_sub(back + 2).and_then(|i| before.get(i));
+                return match word.map(|w| w.tok) {
+                    Some(Tok::Name { sym, quoted: false }) => {
+                        let text = names.text(sym);
+                        !words::QUESTIONS.contains(&text) && !words::LATER_QUESTIONS.contains(&text)
+                    }
+                    _ => true,
+                };
+            }
+            _ => {}
+        }
+    }
+    before.len() > FAR
 }
 
-fn stray(c: char, after: &str, place: Span, to_end: Span) -> Problem {
+/// A number that is none, as it was written.
+fn bad_number(text: &str, place: Span) -> Problem {
+    let error = |message| Problem::error(Code::MalformedNumber, place, message);
+    if let Some((whole, part)) = text.split_once(',') {
+        let problem = error("a comma stands between digits");
+        let plain = text.bytes().all(|b| b == b',' || b.is_ascii_digit());
+        return if plain && text.matches(',').count() > 1 {
+            problem.mend(format!("write `{}`, without separators of thousands", text.replace(',', "")))
+        } else if plain && part.len() == 3 && whole != "0" {
+            problem
+                .mend(format!("write `{whole}{part}` if the comma sets thousands apart"))
+                .mend(format!("write `{whole}.{part}` if it is a decimal point"))
+        } else if plain {
+            problem.mend(format!("write `{whole}.{part}`: a decimal has a point"))
+        } else {
+            problem.mend("write a decimal with one point, and no separators of thousands")
+        };
+    }
+    if text.contains(['\'', '_']) {
+        let plain = text.replace(['\'', '_'], "");
+        return error("a number has no separators of thousands").mend(format!("write `{plain}`"));
+    }
+    let problem = error("a decimal has one point, with a digit on both sides of it");
+    match text.split_once('.') {
+        Some(("", part)) if !part.contains('.') => problem.mend(format!("write `0.{part}`")),
+        Some((whole, "")) => problem.mend(format!("write `{whole}` or `{whole}.0`")),
+        _ => problem.mend("keep one of its points; thousands are not set apart"),
+    }
+}
+
+fn stray(c: char, rest: &str, place: Span, to_end: Span) -> Problem {
+    let after = &rest[c.len_utf8()..];
     match c {
+        '–' | '—' | '−' if after.starts_with('>') => {
+            Problem::error(Code::TypographicCharacter, place, format!("the dash `{c}` makes no arrow here"))
+                .mend("write `->` with the plain `-`")
+        }
         '"' => Problem::error(Code::UnclosedQuote, to_end, "this quoted name or text has no closing quote")
             .mend("close it with `\"` on the same line; a quote inside is written `\"\"`"),
         '“' | '”' | '„' | '‟' | '‘' | '’' => Problem::error(
@@ -247,7 +322,11 @@ fn stray(c: char, after: &str, place: Span, to_end: Span) -> Problem {
             Problem::error(Code::TypographicCharacter, place, format!("the dash `{c}` is no minus sign here"))
                 .mend("write the plain `-`")
         }
-        '.' if after.starts_with(|d: char| d.is_ascii_digit()) => bad_number(place),
+        '.' if after.starts_with(|d: char| d.is_ascii_digit()) => bad_number(&rest[..place.len()], place),
+        ':' => Problem::error(Code::StrayCharacter, place, "`:` is not used here")
+            .mend("write `=` between a name and what it stands for"),
+        ';' => Problem::error(Code::StrayCharacter, place, "`;` is not used here")
+            .mend("end the line without it; clauses are separated by commas"),
         '×' | '·' => Problem::error(Code::StrayCharacter, place, format!("`{c}` is not used here"))
             .mend("write `*` for a product"),
         '÷' => Problem::error(Code::StrayCharacter, place, "`÷` is not used here").mend("write `/`"),
@@ -258,7 +337,8 @@ fn stray(c: char, after: &str, place: Span, to_end: Span) -> Problem {
         '#' => Problem::error(Code::StrayCharacter, place, "a comment starts after a space")
             .mend("put a space before the number sign, or quote the name that holds it"),
         '|' | '&' => Problem::error(Code::StrayCharacter, place, format!("`{c}` is not used here"))
-            .mend("write `//` for parallel and `->` for series; `and` and `or` belong in `fails when`"),
+            .mend("write `//` for parallel and `->` for series; `and` and `or` belong in `fails when`")
+            .mend("a name that holds it stands in double quotes"),
         '[' | ']' => {
             Problem::error(Code::StrayCharacter, place, format!("`{c}` stands only in names of copies"))
                 .mend("write the number of a copy directly after its name, as in `pump[1]`")

@@ -140,7 +140,8 @@ pub fn is_reserved(word: &str) -> bool {
 /// at least one, may differ.
 pub fn nearest<'a>(word: &str, known: impl Iterator<Item = &'a str>) -> Option<&'a str> {
     let letters: Vec<char> = word.chars().collect();
-    let allowed = (letters.len() / 3).max(1);
+    // A single letter is near to every other: only its case may differ.
+    let allowed = if letters.len() == 1 { 0 } else { (letters.len() / 3).max(1) };
     let mut best: Option<(usize, &str)> = None;
     for candidate in known {
         let other: Vec<char> = candidate.chars().take(letters.len() + allowed + 1).collect();
@@ -149,7 +150,7 @@ pub fn nearest<'a>(word: &str, known: impl Iterator<Item = &'a str>) -> Option<&
         }
         let mut d = distance(&letters, &other);
         if candidate.to_lowercase() == word.to_lowercase() {
-            d = d.min(1);
+            d = 0;
         }
         if d <= allowed && best.is_none_or(|(b, name)| d < b || (d == b && candidate < name)) {
             best = Some((d, candidate));
@@ -185,6 +186,8 @@ mod tests {
         assert_eq!(nearest("strainr", known.into_iter()), Some("strainer"));
         assert_eq!(nearest("pupm", known.into_iter()), Some("pump"));
         assert_eq!(nearest("Pump", known.into_iter()), Some("pump"));
+        assert_eq!(nearest("r", ["F", "R"].into_iter()), Some("R"));
+        assert_eq!(nearest("C", ["A", "B"].into_iter()), None);
         assert_eq!(nearest("gearbox", known.into_iter()), None);
     }
 }

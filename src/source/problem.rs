@@ -184,8 +184,6 @@ codes! {
     BadSetting = "bad-setting",
     /// A name with several possible readings.
     AmbiguousName = "ambiguous-name",
-    /// A definition that nothing uses although another is misspelt near it.
-    BrokenBelow = "broken-below",
     // --- data ---
     /// A value without its unit.
     MissingUnit = "missing-unit",

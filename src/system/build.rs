@@ -13,7 +13,7 @@ use super::model::{DefId, Fault, Model, Out};
 use super::quantity::Quantity;
 use super::scope::Bound;
 use super::structure::{Node, NodeId, Structure};
-use crate::language::{Expr, ExprId, List, Need, Sym, words};
+use crate::language::{Expr, ExprId, List, Need, Suffix, Sym, words};
 use crate::source::{Code, Problem, Span};
 use rustc_hash::{FxHashMap, FxHashSet};
 
@@ -172,6 +172,11 @@ struct Visit {
     settles: u32,
 }
 
+/// Words in code marks, for messages.
+fn listed(words: &[&str]) -> String {
+    words.iter().map(|w| format!("`{w}`")).collect::<Vec<_>>().join(", ")
+}
+
 enum Task {
     Visit(Visit),
     Copy(Visit),
@@ -213,7 +218,11 @@ impl Model<'_> {
             Expr::Item(_) | Expr::Changed(..) => {
                 let _ = self.item_at(self.tree.inside_groups(value));
             }
-            Expr::Literal(_) | Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..) | Expr::Name(_) => {}
+            // `1 in 0` or an unknown unit is wrong wherever it will be used.
+            Expr::Literal(_) => {
+                let _ = self.figure(self.tree.inside_groups(value));
+            }
+            Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..) | Expr::Name(_) => {}
             Expr::Call(word, _) if self.lookup(word).is_none() => {}
             _ => {
                 let mut tasks = Vec::new();
@@ -459,6 +468,10 @@ impl Model<'_> {
                     values.push(Err(fault));
                     return;
                 }
+                if let Some(fault) = self.figure_as_thing(expr, def) {
+                    values.push(Err(fault));
+                    return;
+                }
                 let frame = self.frame_for(self.def(def).name, self.ctx(ctx).frame);
                 let instance = self.push_instance(def, frame, NONE, tasks, values);
                 self.refer(ctx, instance);
@@ -479,6 +492,29 @@ impl Model<'_> {
                 values.push(Err(fault));
             }
         }
+    }
+
+    /// A name of a figure with a unit, used as a thing: the use is what is wrong.
+    fn figure_as_thing(&mut self, expr: ExprId, def: DefId) -> Option<Fault> {
+        let value = self.def(def).value.filter(|_| self.def(def).broken.is_none())?;
+        let inner = self.tree.inside_groups(value);
+        let dim = match self.tree.expr(inner) {
+            Expr::Literal(id) if matches!(self.tree.literals[id as usize].suffix, Suffix::Unit(_)) => {
+                self.figure(inner).ok()?.dim
+            }
+            Expr::WithUnit(..) => self.figure(inner).ok()?.dim,
+            _ => return None,
+        };
+        let (name, span, place) =
+            (self.written(self.def(def).name), self.def(def).span, self.tree.span(expr));
+        let what = self.units.describe(&dim, &self.tree.names);
+        Some(
+            self.fault(
+                Problem::error(Code::WrongKind, place, format!("`{name}` is {what} and no thing"))
+                    .label(span, "defined here")
+                    .mend(format!("make an item of it on a line of its own, as in `item = rate {name}`")),
+            ),
+        )
     }
 
     fn refer(&mut self, ctx: Ctx, instance: u32) {
@@ -526,8 +562,13 @@ impl Model<'_> {
                 Code::WrongArguments,
                 place,
                 format!(
-                    "`{name}` takes {count} argument{}, and {given} are given",
-                    if count == 1 { "" } else { "s" }
+                    "`{name}` takes {count} argument{}, and {} given",
+                    if count == 1 { "" } else { "s" },
+                    match given {
+                        0 => "none is".to_string(),
+                        1 => "1 is".to_string(),
+                        n => format!("{n} are"),
+                    }
                 ),
             )
             .label(span, "defined here")
@@ -599,7 +640,9 @@ impl Model<'_> {
             let known = self.defs.iter().filter(|d| d.has_params).map(|d| self.tree.names.text(d.name));
             match words::nearest(text, known.chain(words::QUESTIONS.iter().copied())) {
                 Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
-                None => problem.mend(format!("define it: `{text}(s) = …`")),
+                None => problem
+                    .mend(format!("questions are {}", listed(words::QUESTIONS)))
+                    .mend(format!("a structure with parameters is defined on a line: `{text}(s) = …`")),
             }
         };
         self.fault(problem)
@@ -983,14 +1026,24 @@ impl Model<'_> {
                 continue;
             }
             let text = self.written(*name);
-            return Err(self.fault(
-                Problem::error(
-                    Code::SettlesNothing,
-                    *span,
-                    format!("`{text}` is no part of what is copied here"),
-                )
-                .mend("name a part that stands under the copied structure"),
-            ));
+            let mut parts: Vec<String> = Vec::new();
+            for part in &self.built.frames[frame as usize].parts {
+                let name = self.written(self.def(DefId(self.built.instances[*part as usize].def)).name);
+                if !parts.contains(&name) && parts.len() < 8 {
+                    parts.push(name);
+                }
+            }
+            let problem = Problem::error(
+                Code::SettlesNothing,
+                *span,
+                format!("`{text}` is no part of what is copied here"),
+            );
+            let problem = match words::nearest(&text, parts.iter().map(String::as_str)) {
+                Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
+                None if parts.is_empty() => problem.mend("take it away: nothing copied here has a name"),
+                None => problem.mend(format!("its parts are {}", parts.join(", "))),
+            };
+            return Err(self.fault(problem));
         }
         Ok(())
     }

@@ -43,6 +43,12 @@ impl Model<'_> {
         let mut seen = None;
         for index in 0..self.tree.statements.len() {
             let statement = &self.tree.statements[index];
+            // A mission that cannot be read is none: what ages rests on that line.
+            let first = self.sources.text(statement.span).split_whitespace().next();
+            if matches!(statement.line, Line::Broken(_)) && first == Some("mission") && self.mission.is_none()
+            {
+                self.mission = Some(Err(self.broken_line("the mission", statement.span)));
+            }
             if let Line::Mission(phases) = &statement.line
                 && self.first_setting(&mut seen, "mission", statement.span)
             {
@@ -130,8 +136,12 @@ impl Model<'_> {
         if f < 0.0 || most.is_some_and(|m| f > m) {
             let range = if most.is_some() { "from 0 to 100%" } else { "zero or more" };
             return Err(self.fault(
-                Problem::error(Code::OutsideRange, place, format!("`{word}` is {range}"))
-                    .mend("a factor on the pace of ageing above 1 is written with `stress`"),
+                Problem::error(Code::OutsideRange, place, format!("`{word}` is {range}")).mend(
+                    match f < 0.0 {
+                        true => "write it without the minus",
+                        false => "a factor on the pace of ageing above 1 is written with `stress`",
+                    },
+                ),
             ));
         }
         Ok(factor)

@@ -9,7 +9,7 @@ use super::quantity::{Dim, Quantity, STEP};
 use super::scope::Bound;
 use crate::language::{ArithOp, Expr, ExprId, Literal, Suffix, Sym, words};
 use crate::number::{Decimal, Real};
-use crate::source::{Code, Problem, Span};
+use crate::source::{Code, Label, Problem, Span};
 
 /// Answers the questions in a formula.
 pub trait Oracle {
@@ -27,8 +27,8 @@ impl Oracle for NoOracle {
     fn ask(&mut self, model: &mut Model<'_>, call: ExprId, _: Ctx) -> Out<Quantity> {
         let place = model.tree.span(call);
         Err(model.fault(
-            Problem::error(Code::WrongKind, place, "no question can stand here")
-                .mend("write a figure, or ask on a line of its own"),
+            Problem::error(Code::WrongKind, place, "the answer to a question cannot be used as a datum")
+                .mend("write the figure itself; a question stands on a line that asks"),
         ))
     }
 }
@@ -136,14 +136,17 @@ impl Model<'_> {
     fn not_a_figure(&mut self, expr: ExprId) -> Fault {
         let text = self.text_of(expr);
         let place = self.tree.span(expr);
-        self.fault(
-            Problem::error(
-                Code::WrongKind,
-                place,
-                format!("`{text}` is a structure or an item and no figure"),
-            )
-            .mend(format!("ask a figure of it, as in `R({text})`")),
-        )
+        let problem = Problem::error(
+            Code::WrongKind,
+            place,
+            format!("`{text}` is a structure or an item and no figure"),
+        );
+        // `k + 1 of (A, B)` reads as `k + (1 of (A, B))`.
+        let problem = match self.tree.expr(expr) {
+            Expr::AtLeast(..) => problem.mend("put a calculation before `of` in parentheses: `(k + 1) of …`"),
+            _ => problem,
+        };
+        self.fault(problem.mend(format!("ask a figure of it, as in `R({text})`")))
     }
 
     fn named_figure(
@@ -292,7 +295,28 @@ impl Model<'_> {
     ) -> Out<Quantity> {
         let (dim, factor) = match self.units.resolve(unit, &self.tree.names) {
             Ok(found) => found,
-            Err(problem) => return Err(self.fault(*problem)),
+            Err(problem) => {
+                if let Some(fault) = self.unknown_units.get(&unit.word).copied() {
+                    let label = Label { place: unit.span, text: "and here".to_string() };
+                    let known = &mut self.problems[fault.0 as usize];
+                    if known.place != unit.span && !known.labels.contains(&label) && known.labels.len() < 8 {
+                        known.labels.push(label);
+                    }
+                    return Err(fault);
+                }
+                // `10LAC10` reads as a number and its unit.
+                let word = self.tree.names.text(unit.word);
+                let mut problem = *problem;
+                if place.end == unit.span.start && word.contains(|c: char| c.is_ascii_digit()) {
+                    let number = self.sources.text(place);
+                    problem
+                        .mends
+                        .insert(0, format!("a name that begins with a digit is quoted: \"{number}{word}\""));
+                }
+                let fault = self.fault(problem);
+                self.unknown_units.insert(unit.word, fault);
+                return Err(fault);
+            }
         };
         if !quantity.dim.is_none() {
             return Err(self.fault(
@@ -443,7 +467,8 @@ impl Model<'_> {
             ));
         }
         if matches!(name, "ln" | "log10") && x.value <= Real::ZERO {
-            return Err(self.no_value(place));
+            let problem = Problem::error(Code::NoValue, place, "a logarithm is of a figure above zero");
+            return Err(self.fault(problem.mend("look at the figure in its parentheses")));
         }
         let (value, slope) = match name {
             "exp" => (x.value.exp(), x.value.to_f64().exp()),
@@ -457,7 +482,9 @@ impl Model<'_> {
 
     fn root(&mut self, x: &Quantity, place: Span) -> Out<Quantity> {
         if x.value.is_negative() {
-            return Err(self.no_value(place));
+            let problem =
+                Problem::error(Code::NoValue, place, "a root is of a figure that is not below zero");
+            return Err(self.fault(problem.mend("look at the figure in its parentheses")));
         }
         let Some(dim) = x.dim.sqrt() else {
             return Err(self.fault(

@@ -417,10 +417,13 @@ impl Model<'_> {
         };
         let base = self.exposure_base(&figure, power, place, &wants)?;
         if figure.value.is_negative() || (!is_rate && figure.value.is_zero()) {
-            return Err(self.fault(
+            return Err(self.fault(if is_rate {
+                Problem::error(Code::OutsideRange, place, format!("`{word}` is not below zero"))
+                    .mend("write it without the minus")
+            } else {
                 Problem::error(Code::OutsideRange, place, format!("`{word}` is above zero"))
-                    .mend("write it without the minus"),
-            ));
+                    .mend("write the mean time to a failure; what cannot fail is `perfect`")
+            }));
         }
         let pace = if is_rate { Pace::Rate(figure) } else { Pace::Mean(figure) };
         self.add_pace(item, Ageing { base, pace, clause })
@@ -478,8 +481,14 @@ impl Model<'_> {
                 None => {
                     let declared: Vec<&str> =
                         self.units.attributes.keys().map(|s| self.tree.names.text(*s)).collect();
-                    let problem = unknown_clause(clause.word_span, word, declared.into_iter());
-                    let problem = problem.mend(format!("or declare it: `attribute {word}`"));
+                    let mut problem = unknown_clause(clause.word_span, word, declared.into_iter());
+                    if problem.mends.iter().any(|m| m.starts_with("did you mean")) {
+                        problem = problem.mend(format!("or declare it: `attribute {word}`"));
+                    } else {
+                        let message = format!("`{word}` is no clause and no declared attribute");
+                        problem = Problem::error(Code::Undeclared, clause.word_span, message)
+                            .mend(format!("declare it on a line of its own: `attribute {word}`"));
+                    }
                     return Err(self.fault(problem));
                 }
                 Some((None, _)) => Dim::NONE,
@@ -513,8 +522,12 @@ impl Model<'_> {
         let slack = figure.error.max(STEP);
         if value.is_negative() || value.to_f64() > 1.0 + slack || (value - Real::ONE).to_f64() > slack {
             let mut problem = Problem::error(Code::OutsideRange, place, "a probability lies between 0 and 1");
-            if (1.0..=100.0).contains(&value.to_f64()) {
-                problem = problem.mend("write a percentage with its sign: `98%`");
+            let text = self.sources.text(place);
+            // `98` was meant as a percentage, `1.2` or `3 in 2` hardly.
+            if (2.0..=100.0).contains(&value.to_f64())
+                && text.bytes().all(|b| b == b'.' || b.is_ascii_digit())
+            {
+                problem = problem.mend(format!("write a percentage with its sign: `{text}%`"));
             } else {
                 problem = problem.mend("write it as a decimal from 0 to 1, as `98%`, or as `1 in 500`");
             }

@@ -56,6 +56,12 @@ pub struct Model<'a> {
     by_name: Vec<u32>,
     /// Names that nothing defines, by the node that uses them; lines that mix operators.
     pub(super) faulty: FxHashMap<ExprId, Fault>,
+    /// Names that nothing defines, with the one error of each.
+    pub(super) unknown: FxHashMap<Sym, Fault>,
+    /// The same for units.
+    pub(super) unknown_units: FxHashMap<Sym, Fault>,
+    /// Faults that only carry the place of a line which has been told already.
+    below: Vec<Fault>,
     pub(super) items: FxHashMap<ExprId, Out<u32>>,
     pub(super) item_list: Vec<Item>,
     pub(super) figures: FxHashMap<ExprId, Out<Quantity>>,
@@ -77,6 +83,9 @@ impl<'a> Model<'a> {
             problems: Vec::new(),
             by_name: vec![NONE; tree.names.len()],
             faulty: FxHashMap::default(),
+            unknown: FxHashMap::default(),
+            unknown_units: FxHashMap::default(),
+            below: Vec::new(),
             items: FxHashMap::default(),
             item_list: Vec::new(),
             figures: FxHashMap::default(),
@@ -104,6 +113,27 @@ impl<'a> Model<'a> {
     /// The problem behind a fault.
     pub fn problem(&self, fault: Fault) -> &Problem {
         &self.problems[fault.0 as usize]
+    }
+
+    /// Whether a fault says only that a line below has been found in error.
+    pub fn rests_below(&self, fault: Fault) -> bool {
+        self.below.contains(&fault)
+    }
+
+    /// The problems, without those that the reader has told.
+    pub fn take_problems(&mut self) -> Vec<Problem> {
+        let below = std::mem::take(&mut self.below);
+        let all = std::mem::take(&mut self.problems).into_iter().enumerate();
+        all.filter(|(i, _)| !below.contains(&Fault(*i as u32))).map(|(_, p)| p).collect()
+    }
+
+    /// A fault for what rests on a line that the reader has found in error.
+    pub(super) fn broken_line(&mut self, what: &str, place: Span) -> Fault {
+        let line = self.sources.line(place).map_or(0, |l| l.1);
+        let message = format!("`{what}` rests on line {line}, which is in error");
+        let fault = self.fault(Problem::error(Code::UnexpectedToken, place, message));
+        self.below.push(fault);
+        fault
     }
 
     /// Whether any problem is an error.
@@ -373,15 +403,7 @@ impl<'a> Model<'a> {
             (Some(Fault(NONE)), _) | (None, None) => {
                 let (name, span) = (found.name, found.span);
                 let text = self.written(name);
-                let line = self.sources.line(span).map_or(0, |l| l.1);
-                let fault = self.fault(
-                    Problem::error(
-                        Code::BrokenBelow,
-                        span,
-                        format!("`{text}` rests on line {line}, which is in error"),
-                    )
-                    .mend("mend that line first"),
-                );
+                let fault = self.broken_line(&text, span);
                 self.defs[def.0 as usize].broken = Some(fault);
                 Err(fault)
             }

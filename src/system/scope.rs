@@ -2,9 +2,12 @@
 //! a number is used as a figure or as a thing, not as both.
 
 use super::model::{DefId, Fault, Model};
-use crate::language::{Expr, ExprId, Line, Need, Sym, words};
-use crate::source::{Code, Problem, Span};
+use crate::language::{Expr, ExprId, Line, Need, Suffix, Sym, words};
+use crate::source::{Code, Label, Problem, Span};
 use unicode_security::skeleton;
+
+/// Places shown beside the first where one cause has many.
+const MOST_LABELS: usize = 8;
 
 /// What a node is used as.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -76,6 +79,7 @@ impl Model<'_> {
             self.find_circles(&below);
         }
         self.check_both_ways(&uses);
+        self.check_aliases(&uses);
     }
 
     /// Calls `found` with every name under `root` that is defined.
@@ -115,14 +119,18 @@ impl Model<'_> {
                     if let Some(def) = self.lookup(word).filter(|d| self.def(*d).has_params) {
                         found(self, id, def, Use::Open);
                     }
-                    let inner = match self.tree.names.text(word) {
+                    let text = self.tree.names.text(word);
+                    let inner = match text {
                         w if words::FUNCTIONS.contains(&w) => Use::Figure,
                         _ => Use::Open,
                     };
+                    // What is asked about is a thing; `steps` may be asked of a figure.
+                    let asked = words::QUESTIONS.contains(&text) && text != "steps";
+                    let of = |i: usize| if asked && i == 0 { Use::Thing } else { inner };
                     let total = self.tree.names.text(word) == "total";
                     let args = self.tree.list(args).iter().enumerate();
                     // The second argument of `total` is the word of an attribute, no name.
-                    stack.extend(args.filter(|(i, _)| !(total && *i == 1)).map(|(_, x)| (*x, inner)));
+                    stack.extend(args.filter(|(i, _)| !(total && *i == 1)).map(|(i, x)| (*x, of(i))));
                 }
                 Expr::Item(clauses) => self.clause_values(clauses, &mut stack),
                 Expr::Changed(copy, clauses) => {
@@ -168,17 +176,30 @@ impl Model<'_> {
 
     fn unknown_name(&mut self, id: ExprId, sym: Sym, params: &[Sym]) {
         let text = self.tree.names.text(sym);
+        // One missing definition is one error, however often its name stands.
+        if let Some(fault) = self.unknown.get(&sym).copied().filter(|_| params.is_empty()) {
+            let place = self.tree.span(id);
+            let labels = &mut self.problems[fault.0 as usize].labels;
+            if labels.len() < MOST_LABELS {
+                labels.push(Label { place, text: "and here".to_string() });
+            }
+            self.faulty.insert(id, fault);
+            return;
+        }
         let mut problem =
             Problem::error(Code::UnknownName, self.tree.span(id), format!("unknown name \"{text}\""));
         let near = words::nearest(text, params.iter().map(|p| self.tree.names.text(*p)));
         problem = match near {
             Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
+            None if self.units.hours(text).is_some() => {
+                problem.mend(format!("a unit stands directly after its number, as in `4 {text}`"))
+            }
             None => self.with_nearest(problem, text),
         };
-        if self.units.hours(text).is_some() {
-            problem = problem.mend(format!("a unit stands directly after its number, as in `4 {text}`"));
-        }
         let fault = self.fault(problem);
+        if params.is_empty() {
+            self.unknown.insert(sym, fault);
+        }
         self.faulty.insert(id, fault);
     }
 
@@ -188,11 +209,8 @@ impl Model<'_> {
         let operators: Vec<String> = found.operators.iter().map(|o| format!("`{o}`")).collect();
         let message = format!("{} have no precedence between them", operators.join(" and "));
         let mut problem = Problem::error(Code::MixedOperators, self.tree.span(id), message);
-        if found.readings.len() < 2 {
-            problem = match found.readings.first() {
-                Some(only) => problem.mend(format!("write `{}`", self.text_of(*only))),
-                None => problem.mend("put parentheses around what belongs together"),
-            };
+        if found.readings.is_empty() {
+            problem = problem.mend("put parentheses around what belongs together");
         }
         let fault = self.fault(problem);
         self.faulty.insert(id, fault);
@@ -248,7 +266,10 @@ impl Model<'_> {
         for def in circle.iter().skip(1).take(SHOWN) {
             problem = problem.label(self.def(*def).span, "on the way round");
         }
-        let problem = problem.mend("define one of them without the others");
+        let problem = problem.mend(match circle {
+            [_] => "define it without itself",
+            _ => "define one of them without the others",
+        });
         let fault = self.fault(problem);
         for def in circle {
             self.defs[def.0 as usize].broken = Some(fault);
@@ -260,10 +281,12 @@ impl Model<'_> {
             let (Some(figure), Some(thing)) = *used else { continue };
             let def = &self.defs[index];
             let number = def.value.is_some_and(|v| {
-                matches!(
-                    self.tree.expr(self.tree.inside_groups(v)),
-                    Expr::Literal(_) | Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..)
-                )
+                match self.tree.expr(self.tree.inside_groups(v)) {
+                    // A figure with a unit is never a thing: the use that takes it for one is told.
+                    Expr::Literal(id) => !matches!(self.tree.literals[id as usize].suffix, Suffix::Unit(_)),
+                    Expr::Arith(..) | Expr::Negate(_) => true,
+                    _ => false,
+                }
             });
             if !number || def.broken.is_some() {
                 continue;
@@ -279,8 +302,66 @@ impl Model<'_> {
         }
     }
 
+    /// `B = A` gives one thing two names, which a reader may take for two things.
+    fn check_aliases(&mut self, uses: &[(Option<Span>, Option<Span>)]) {
+        for index in 0..self.defs.len() {
+            let def = &self.defs[index];
+            let (name, None, Some(value), false) = (def.name, def.broken, def.value, def.has_params) else {
+                continue;
+            };
+            let Expr::Name(sym) = self.tree.expr(self.tree.inside_groups(value)) else { continue };
+            let Some(first) = self.lookup(sym) else { continue };
+            let Some((last, number)) = self.end_of_names(first) else { continue };
+            // A number is a thing only where it is used as one.
+            let as_figure = |d: usize| uses[d].0.is_some();
+            if number && (as_figure(index) || as_figure(first.0 as usize) || as_figure(last.0 as usize)) {
+                continue;
+            }
+            let (name, other, span) = (self.written(name), self.written(sym), self.tree.span(value));
+            self.fault(
+                Problem::remark(
+                    Code::SameThing,
+                    span,
+                    format!("`{name}` is another name for the one thing `{other}`"),
+                )
+                .mend(format!("write `{name} = a {other}` if it is a second thing with the same data")),
+            );
+        }
+    }
+
+    /// The definition at the end of a chain of names, where that can be a thing; and
+    /// whether it is a bare number, which is one only if it is used so.
+    fn end_of_names(&self, first: DefId) -> Option<(DefId, bool)> {
+        let mut def = first;
+        loop {
+            let found = self.def(def);
+            if found.broken.is_some() || found.has_params {
+                return None;
+            }
+            let value = self.tree.inside_groups(found.value?);
+            match self.tree.expr(value) {
+                Expr::Name(sym) => def = self.lookup(sym)?,
+                Expr::Literal(id) => {
+                    let literal = self.tree.literals[id as usize];
+                    let decimal = crate::number::Decimal::parse(self.sources.text(literal.number))?;
+                    let chance = match literal.suffix {
+                        Suffix::None => decimal.to_real().to_f64() <= 1.0,
+                        Suffix::Percent | Suffix::In(_) => true,
+                        Suffix::Unit(_) => false,
+                    };
+                    return chance.then_some((def, true));
+                }
+                Expr::Call(word, _) => {
+                    let def_of_call = self.lookup(word)?;
+                    return self.def(def_of_call).has_params.then_some((def, false));
+                }
+                _ => return self.is_thing_only(value).then_some((def, false)),
+            }
+        }
+    }
+
     /// The noted fault of a node, if it has one.
-    pub(super) fn faulty(&self, id: ExprId) -> Option<Fault> {
+    pub(crate) fn faulty(&self, id: ExprId) -> Option<Fault> {
         self.faulty.get(&id).copied()
     }
 }

@@ -75,7 +75,6 @@ pub fn of(code: Code) -> Explanation {
         Code::WrongArguments => things::WRONG_ARGUMENTS,
         Code::BadSetting => things::BAD_SETTING,
         Code::AmbiguousName => things::AMBIGUOUS_NAME,
-        Code::BrokenBelow => things::BROKEN_BELOW,
         Code::MissingUnit => data::MISSING_UNIT,
         Code::UnknownUnit => data::UNKNOWN_UNIT,
         Code::WrongUnit => data::WRONG_UNIT,

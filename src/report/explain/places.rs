@@ -106,7 +106,7 @@ pub(super) const TABLE_CELL: Explanation = Explanation {
         "",
         "| name | rate (FIT) | qty  |",
         "| ---- | ---------- | ---- |",
-        "| relay | 12        | some |"
+        "| relay | 12 /Mh    | 2    |"
     ),
     mended: lines!(
         "<!--? table -->",

@@ -97,7 +97,7 @@ pub(super) const NOT_KNOWN_YET: Explanation = Explanation {
 };
 
 macro_rules! ten { ($($t:literal)*) => { concat!($($t, $t, $t, $t, $t, $t, $t, $t, $t, $t,)*) }; }
-/// Far more parentheses than any program of this kind needs, or reads.
+/// Far more parentheses than steps are written for.
 macro_rules! deep {
     ($t:literal) => {
         concat!(ten!($t $t $t $t $t), ten!($t $t $t $t $t), ten!($t $t $t $t $t), ten!($t $t $t $t $t))
@@ -105,10 +105,10 @@ macro_rules! deep {
 }
 
 pub(super) const TOO_DEEP: Explanation = Explanation {
-    what: "Parentheses are nested deeper than the program reads. The limit keeps a damaged or generated note from \
-           using up all memory. Give the inner parts names and lines of their own.",
-    wrong: note!("lamp = 0.9", concat!("string = ", deep!("("), "lamp", deep!(")"))),
-    mended: note!("lamp = 0.9", "string = lamp"),
+    what: "A formula is nested too deep for its steps. Steps are written for people, and nobody follows a hundred \
+           levels of parentheses. The value itself is still answered. Give the inner parts names and lines of their own.",
+    wrong: note!("lamp = 0.9", concat!("steps(", deep!("(1 + "), "R(lamp)", deep!(")"), ") ?")),
+    mended: note!("lamp = 0.9", "steps(1 + R(lamp)) ?"),
 };
 
 pub(super) const NOT_AN_ANSWER: Explanation = Explanation {

@@ -139,10 +139,3 @@ pub(super) const AMBIGUOUS_NAME: Explanation = Explanation {
         "Birnbaum(plant, north.pump[1]) ?"
     ),
 };
-
-pub(super) const BROKEN_BELOW: Explanation = Explanation {
-    what: "This rests on a line that is in error. There is no fault in the line itself. Mend the line that the message points to, and this \
-           one is answered with it. One mistake is explained once, and what rests on it only points there.",
-    wrong: note!("gate = 0.98 )", "R(gate) ?"),
-    mended: note!("gate = 0.98", "R(gate) ?"),
-};
