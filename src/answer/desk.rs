@@ -4,7 +4,7 @@ use crate::engine::evaluate::{bound, evaluate};
 use crate::engine::importance::{Importance, importance};
 use crate::engine::plan::Plan;
 use crate::language::{Expr, ExprId, Phase};
-use crate::number::Chance;
+use crate::number::{Chance, Real};
 use crate::source::{Code, Problem, Span};
 use crate::system::{Base, Exposure, Fault, Model, NodeId, Out, System};
 use rustc_hash::FxHashMap;
@@ -155,6 +155,7 @@ impl Desk {
             let chances = leaf_chances(model, &prepared.system, &exposure, place)?;
             let values = evaluate(&prepared.plan, &chances);
             let chance = values.get(prepared.plan.root().0 as usize).copied().unwrap_or(Chance::PERFECT);
+            let chance = told_from_zero(&prepared.plan, &chances, chance);
             // Two operations more than the plan counts, for each datum.
             let bound = bound(&prepared.plan) + crate::system::STEP * 16.0;
             Ok(Rc::new(Valued { chances, values, chance, bound }))
@@ -193,6 +194,32 @@ impl Desk {
         let key = (Self::key(model, thing), given.to_vec());
         let entry = self.ranked.entry(key);
         entry.or_insert_with(|| Rc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
+    }
+}
+
+/// A tail that underflowed, set to the least number there is, so that it is
+/// answered as less than 1e-300 and not as impossible.
+///
+/// No system is hurt by a part that works: it can fail if and only if it fails
+/// when all fail that can, and it can work in the same way.
+fn told_from_zero(plan: &Plan, chances: &[Chance], chance: Chance) -> Chance {
+    if !chance.smaller().is_zero() {
+        return chance;
+    }
+    let least = Real::from(f64::from_bits(1));
+    let failing = chance.fails().is_zero();
+    let extreme: Vec<Chance> = chances
+        .iter()
+        .map(|c| {
+            let certain = if failing { c.fails().is_zero() } else { !c.works().is_zero() };
+            if certain { Chance::PERFECT } else { Chance::HOPELESS }
+        })
+        .collect();
+    let root = evaluate(plan, &extreme).get(plan.root().0 as usize).copied().unwrap_or(chance);
+    match (failing, root.works().is_zero()) {
+        (true, true) => Chance::new(Real::ONE, least),
+        (false, false) => Chance::new(least, Real::ONE),
+        _ => chance,
     }
 }
 
