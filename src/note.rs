@@ -386,8 +386,11 @@ impl Work<'_> {
                 }
             }
             Some(problem) => {
-                let line = model.sources.line(problem.place).map_or(0, |l| l.1);
-                format!("rests on line {line}, which is in error")
+                // By name: an answer that counts lines would change what it counts.
+                match model.defined_at(problem.place) {
+                    Some(name) => format!("rests on `{name}`, which is in error"),
+                    None => "rests on a line that is in error".to_string(),
+                }
             }
             None => "this line is in error".to_string(),
         };
@@ -590,8 +593,8 @@ pub fn steps(name: &str, text: &str, given: &[String], question: &str, form: Ste
         let list = desk.steps(model, value)?;
         Ok(match form {
             StepsForm::Json => steps_json(&list, model.sources, (model.digits + 3).min(15)),
-            StepsForm::Text => desk.steps_reply(model, &list).text(),
-            StepsForm::Markdown => desk.steps_reply(model, &list).markdown().join("\n"),
+            StepsForm::Text => desk.steps_reply(model, &list, true).text(),
+            StepsForm::Markdown => desk.steps_reply(model, &list, true).markdown().join("\n"),
         })
     })
 }

@@ -175,7 +175,7 @@ impl Desk {
             let chances = leaf_chances(model, &prepared.system, &exposure, place)?;
             let values = evaluate(&prepared.plan, &chances);
             let chance = values.get(prepared.plan.root().0 as usize).copied().unwrap_or(Chance::PERFECT);
-            let chance = not_quite_zero(&prepared.plan, &chances, chance);
+            let chance = told_from_zero(&prepared.plan, &chances, chance);
             // Two operations more than the plan counts, for each datum.
             let bound = bound(&prepared.plan) + crate::system::STEP * 16.0;
             Ok(Rc::new(Valued { chances, values, chance, bound }))
@@ -217,30 +217,30 @@ impl Desk {
     }
 }
 
-/// A side that came to zero although it is possible has left the range of
-/// numbers: it is carried as the smallest one there is, and is written `< 1e-300`.
+/// A tail that underflowed, set to the least number there is, so that it is
+/// answered as less than 1e-300 and not as impossible.
 ///
-/// A side is possible if the system does so when every thing that can do so does.
-fn not_quite_zero(plan: &Plan, chances: &[Chance], chance: Chance) -> Chance {
+/// No system is hurt by a part that works: it can fail if and only if it fails
+/// when all fail that can, and it can work in the same way.
+fn told_from_zero(plan: &Plan, chances: &[Chance], chance: Chance) -> Chance {
+    if !chance.smaller().is_zero() {
+        return chance;
+    }
     let least = Real::from(f64::from_bits(1));
-    let root = plan.root().0 as usize;
-    let settled = |of: &dyn Fn(Chance) -> Chance| {
-        let all: Vec<Chance> = chances.iter().map(|c| of(*c)).collect();
-        evaluate(plan, &all).get(root).copied().unwrap_or(Chance::PERFECT)
-    };
-    if chance.fails().is_zero() {
-        let worst = settled(&|c| if c.fails().is_zero() { Chance::PERFECT } else { Chance::HOPELESS });
-        if worst.works().is_zero() {
-            return Chance::new(Real::ONE, least);
-        }
+    let failing = chance.fails().is_zero();
+    let extreme: Vec<Chance> = chances
+        .iter()
+        .map(|c| {
+            let certain = if failing { c.fails().is_zero() } else { !c.works().is_zero() };
+            if certain { Chance::PERFECT } else { Chance::HOPELESS }
+        })
+        .collect();
+    let root = evaluate(plan, &extreme).get(plan.root().0 as usize).copied().unwrap_or(chance);
+    match (failing, root.works().is_zero()) {
+        (true, true) => Chance::new(Real::ONE, least),
+        (false, false) => Chance::new(least, Real::ONE),
+        _ => chance,
     }
-    if chance.works().is_zero() {
-        let best = settled(&|c| if c.works().is_zero() { Chance::HOPELESS } else { Chance::PERFECT });
-        if best.fails().is_zero() {
-            return Chance::new(least, Real::ONE);
-        }
-    }
-    chance
 }
 
 /// The error for a system whose diagram passes its limit.

@@ -532,6 +532,12 @@ pub(super) fn measure(word: &str, found: &Importance, system: Chance, bound: f64
         })
     };
     let never_fails = || Number::None("the whole cannot fail".to_string());
+    if fails.to_f64() > 0.0
+        && fails.to_f64() < 1e-290
+        && !matches!(word, "Birnbaum" | "doubled" | "made perfect")
+    {
+        return Number::None("the whole fails too rarely to divide by".to_string());
+    }
     match word {
         "Birnbaum" => figure(found.birnbaum),
         "doubled" => figure(found.gain_doubled()),

@@ -6,6 +6,7 @@ use super::reply::Reply;
 use crate::engine::cuts::{Minimal, single_points};
 use crate::engine::listing::{CutBy, Limits};
 use crate::engine::minimal::Which;
+use crate::engine::plan::Block;
 use crate::language::{Clause, Expr, ExprId, List, words};
 use crate::number::{Chance, Real, format_number};
 use crate::source::{Code, Problem};
@@ -66,7 +67,7 @@ impl Desk {
         let Some(&thing) = model.tree.list(args).first() else { return Err(no_thing(model, call)) };
         if text == "steps" {
             let steps = self.steps(model, thing)?;
-            return Ok(Some(self.steps_reply(model, &steps)));
+            return Ok(Some(self.steps_reply(model, &steps, false)));
         }
         self.no_figure(model, thing)?;
         match text.as_str() {
@@ -80,7 +81,7 @@ impl Desk {
                 let exposure = self.exposure(model, &given, model.tree.span(call))?;
                 let entries =
                     assumptions(model, &prepared.system, &exposure).into_iter().map(|l| vec![l]).collect();
-                Ok(Some(Reply::List { entries, numbered: false }))
+                Ok(Some(Reply::List { entries, numbered: false, notes: Vec::new() }))
             }
             _ => self.inputs(model, thing).map(Some),
         }
@@ -279,6 +280,7 @@ impl Desk {
         let place = Some(model.tree.span(asked));
         list.steps.push(Step {
             thing: model.text_of(asked),
+            symbol: model.text_of(asked),
             place,
             rule: Rule::Arithmetic,
             works,
@@ -298,17 +300,11 @@ impl Desk {
         list: &mut StepList,
     ) -> Out<Result<usize, bool>> {
         let Subject { prepared, given, thing, .. } = self.subject(model, call, args, 1)?;
-        if prepared.plan.len() > MOST_STEPS {
-            let text = model.text_of(thing);
-            let place = model.tree.span(call);
-            return Err(model.fault(
-                Problem::error(
-                    Code::TooLarge,
-                    place,
-                    format!("the steps of `{text}` would be more than {MOST_STEPS}"),
-                )
-                .mend("ask for the steps of its parts"),
-            ));
+        // Like things share a step, so that their number alone does not decide.
+        let blocks = prepared.plan.blocks();
+        let steps = blocks.filter(|b| !matches!(prepared.plan.block(*b), Block::Leaf(_))).count();
+        if steps > MOST_STEPS {
+            return Err(too_many_steps(model, thing, call));
         }
         let exposure = self.exposure(model, &given, model.tree.span(call))?;
         let known = std::mem::take(list);
@@ -324,6 +320,9 @@ impl Desk {
                 model.text_of(thing),
                 if works { "works" } else { "fails" }
             ));
+        }
+        if done.steps.len() > MOST_STEPS {
+            return Err(too_many_steps(model, thing, call));
         }
         *list = done;
         Ok(root)
@@ -406,17 +405,28 @@ impl Desk {
             symbol: model.text_of(expr),
             value: quantity.value,
             complement: quantity.complement,
+            written: self.written_as(model, expr, &text),
             text,
         })
     }
 
-    /// Steps as a numbered list.
-    pub fn steps_reply(&self, model: &Model<'_>, list: &StepList) -> Reply {
+    /// How the note has a figure, where the formula shows another spelling.
+    fn written_as(&self, model: &Model<'_>, expr: ExprId, shown: &str) -> Option<String> {
+        let from = match model.tree.expr(expr) {
+            Expr::Name(sym) => model.lookup(sym).and_then(|d| model.def(d).value)?,
+            _ => expr,
+        };
+        Some(model.text_of(from)).filter(|text| text != shown)
+    }
+
+    /// Steps as a numbered list. `places` says on which line of the source each
+    /// thing stands; a note itself shows none, since its answers move its lines.
+    pub fn steps_reply(&self, model: &Model<'_>, list: &StepList, places: bool) -> Reply {
         let digits = (model.digits + 3).min(15);
         let mut entries: Vec<Vec<String>> = Vec::new();
         for step in shown(list, model.sources, digits) {
             let mut about = vec![step.thing.clone()];
-            about.extend((!step.place.is_empty()).then(|| step.place.clone()));
+            about.extend((places && !step.place.is_empty()).then(|| step.place.clone()));
             about.push(step.rule.to_string());
             if !step.rests_on.is_empty() {
                 let on: Vec<String> = step.rests_on.iter().map(ToString::to_string).collect();
@@ -432,16 +442,29 @@ impl Desk {
             if !step.other.is_empty() {
                 formula.push_str(&format!("; {}", step.other));
             }
-            entries.push(vec![about.join(", "), formula]);
+            let mut entry = vec![about.join(", "), formula];
+            if !step.data.is_empty() {
+                entry.push(format!("with {}", step.data.join(", ")));
+            }
+            entries.push(entry);
         }
-        for remark in &list.remarks {
-            entries.push(vec![remark.clone()]);
-        }
-        for line in &list.assumptions {
-            entries.push(vec![format!("assumed: {line}")]);
-        }
-        Reply::List { entries, numbered: true }
+        let mut notes = list.remarks.clone();
+        notes.extend(list.assumptions.iter().map(|line| format!("assumed: {line}")));
+        Reply::List { entries, numbered: true, notes }
     }
+}
+
+fn too_many_steps(model: &mut Model<'_>, thing: ExprId, call: ExprId) -> crate::system::Fault {
+    let text = model.text_of(thing);
+    let place = model.tree.span(call);
+    model.fault(
+        Problem::error(
+            Code::TooLarge,
+            place,
+            format!("the steps of `{text}` would be more than {MOST_STEPS}"),
+        )
+        .mend("ask for the steps of its parts"),
+    )
 }
 
 fn probability_text(model: &Model<'_>, value: Real, which: Which, subject: &Subject, set: &[u32]) -> String {

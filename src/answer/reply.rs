@@ -20,6 +20,8 @@ pub enum Reply {
         entries: Vec<Vec<String>>,
         /// Whether they are numbered.
         numbered: bool,
+        /// Lines at its end that are no entries: what was assumed, what to know of it.
+        notes: Vec<String>,
     },
     /// No answer: the message.
     Error(String),
@@ -44,7 +46,11 @@ impl Reply {
                 lines.extend(foot.clone());
                 lines
             }
-            Reply::List { entries, numbered } => listed(entries, *numbered),
+            Reply::List { entries, numbered, notes } => {
+                let mut lines = listed(entries, *numbered);
+                lines.extend(notes.iter().cloned());
+                lines
+            }
         };
         lines.iter().map(|l| format!("? {l}").trim_end().to_string()).collect()
     }
@@ -80,14 +86,19 @@ impl Reply {
                 }
                 lines
             }
-            Reply::List { entries, numbered } => entries
-                .iter()
-                .enumerate()
-                .map(|(i, entry)| {
-                    let mark = if *numbered { format!("{}.", i + 1) } else { "-".to_string() };
-                    format!("{mark} {}", entry.iter().map(|l| prose(l)).collect::<Vec<_>>().join("; "))
-                })
-                .collect(),
+            Reply::List { entries, numbered, notes } => {
+                let mark = |i: usize| if *numbered { format!("{i}.") } else { "-".to_string() };
+                let entry = |(i, entry): (usize, &Vec<String>)| {
+                    let text = entry.iter().map(|l| prose(l)).collect::<Vec<_>>().join("; ");
+                    format!("{} {text}", mark(i + 1))
+                };
+                let mut lines: Vec<String> = entries.iter().enumerate().map(entry).collect();
+                // Below the last entry: a second list of its own would not be
+                // found again as a part of this answer.
+                let indent = if entries.is_empty() { 0 } else { mark(entries.len()).len() + 1 };
+                lines.extend(notes.iter().map(|n| format!("{}- {}", " ".repeat(indent), prose(n))));
+                lines
+            }
         }
     }
 }

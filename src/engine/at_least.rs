@@ -111,13 +111,95 @@ pub fn at_least(need: usize, members: &[Chance]) -> Chance {
         return all(members.iter().map(|m| m.flip())).flip();
     }
     let (working, cap) = side(need, n);
-    let mut count = Count::new(cap);
-    for &m in members {
-        let event = if working { m } else { m.flip() };
-        count.add(event.works(), event.fails());
-    }
-    let happens = Chance::new(count.or_more(cap), count.below(cap));
+    let turned = |m: Chance| if working { m } else { m.flip() };
+    let alike = members.iter().all(|m| *m == members[0]);
+    let known = if alike { like(cap, n, turned(members[0])) } else { None };
+    let happens = known.unwrap_or_else(|| {
+        let mut count = Count::new(cap);
+        for &m in members {
+            let event = turned(m);
+            count.add(event.works(), event.fails());
+        }
+        Chance::new(count.or_more(cap), count.below(cap))
+    });
     if working { happens } else { happens.flip() }
+}
+
+/// `cap` or more of `n` like events, by the binomial law: each term from the
+/// one before, in linear time. `None` for events that are certain.
+fn like(cap: usize, n: usize, event: Chance) -> Option<Chance> {
+    if event.works().is_zero() || event.fails().is_zero() {
+        return None;
+    }
+    let ratio = Scaled::of(event.works()).times(Scaled::of(event.fails().recip()));
+    let mut term = Scaled::of(event.fails()).power(n);
+    let (mut below, mut or_more) = (Real::ZERO, Real::ZERO);
+    for j in 0..=n {
+        if j < cap {
+            below += term.value();
+        } else {
+            or_more += term.value();
+        }
+        let step = Real::from_u64((n - j) as u64) / Real::from_u64(j as u64 + 1);
+        term = term.times(ratio).times(Scaled::of(step));
+    }
+    Some(Chance::new(or_more, below))
+}
+
+/// A positive number whose exponent has room: the first term of a long
+/// binomial sum underflows where the middle ones decide.
+#[derive(Clone, Copy)]
+struct Scaled {
+    part: Real,
+    /// The number is `part` times 2^(500 · shifts).
+    shifts: i64,
+}
+
+impl Scaled {
+    const UP: f64 = f64::from_bits((1023 + 500) << 52);
+    const DOWN: f64 = f64::from_bits((1023 - 500) << 52);
+
+    fn of(part: Real) -> Scaled {
+        Scaled { part, shifts: 0 }.settled()
+    }
+
+    /// The part brought between 2^-250 and 2^250, so that a product of two fits.
+    fn settled(mut self) -> Scaled {
+        while !self.part.is_zero() && self.part.hi() < 1e-75 {
+            self = Scaled { part: self.part * Real::from(Self::UP), shifts: self.shifts - 1 };
+        }
+        while self.part.hi() > 4e75 && self.part.is_finite() {
+            self = Scaled { part: self.part * Real::from(Self::DOWN), shifts: self.shifts + 1 };
+        }
+        self
+    }
+
+    fn times(self, other: Scaled) -> Scaled {
+        Scaled { part: self.part * other.part, shifts: self.shifts + other.shifts }.settled()
+    }
+
+    fn power(self, mut n: usize) -> Scaled {
+        let (mut square, mut result) = (self, Scaled::of(Real::ONE));
+        while n > 0 {
+            if n & 1 == 1 {
+                result = result.times(square);
+            }
+            square = square.times(square);
+            n >>= 1;
+        }
+        result
+    }
+
+    /// Zero where it underflows.
+    fn value(self) -> Real {
+        match self.shifts {
+            0 => self.part,
+            -1 => self.part * Real::from(Self::DOWN),
+            1 => self.part * Real::from(Self::UP),
+            -2 => self.part * Real::from(Self::DOWN) * Real::from(Self::DOWN),
+            _ => Real::ZERO,
+        }
+    }
 }
 
 /// What one member does to "at least k of n", the others being as they are.
@@ -151,6 +233,9 @@ pub fn effects(need: usize, members: &[Chance]) -> Vec<Effect> {
         };
         return series_effects(&flipped).into_iter().map(turn).collect();
     }
+    if members.iter().all(|m| *m == members[0]) {
+        return vec![like_effect(need, members); n];
+    }
     let (working, cap) = side(need, n);
     let mut effects = Vec::with_capacity(n);
     // The stack holds at most one open half for each halving: about log2 n.
@@ -179,6 +264,36 @@ pub fn effects(need: usize, members: &[Chance]) -> Vec<Effect> {
         stack.push((from, middle, left));
     }
     effects
+}
+
+/// The effect of each of like members: the others are the same for all.
+fn like_effect(need: usize, members: &[Chance]) -> Effect {
+    let (n, others) = (members.len(), &members[1..]);
+    let (working, cap) = side(need, n);
+    let mut exactly = Count::new(cap);
+    let one = if working { members[0] } else { members[0].flip() };
+    let birnbaum = match exactly_like(cap - 1, n - 1, one) {
+        Some(value) => value,
+        None => {
+            others.iter().for_each(|_| exactly.add(one.works(), one.fails()));
+            exactly.exactly(cap - 1)
+        }
+    };
+    Effect { if_failed: at_least(need, others), if_works: at_least(need - 1, others), birnbaum }
+}
+
+/// Exactly `count` of `n` like events; `None` for events that are certain.
+fn exactly_like(count: usize, n: usize, event: Chance) -> Option<Real> {
+    if event.works().is_zero() || event.fails().is_zero() {
+        return None;
+    }
+    let (p, q) = (Scaled::of(event.works()), Scaled::of(event.fails()));
+    let mut term = p.power(count).times(q.power(n - count));
+    for j in 0..count.min(n - count) {
+        let step = Real::from_u64((n - j) as u64) / Real::from_u64(j as u64 + 1);
+        term = term.times(Scaled::of(step));
+    }
+    Some(term.value())
 }
 
 fn series_effects(members: &[Chance]) -> Vec<Effect> {

@@ -16,7 +16,7 @@ mod tree;
 pub mod words;
 
 pub use grid::{CellAsk, Grid, ask_grid, read_grid};
-pub use print::print;
+pub use print::{print, print_start};
 pub use read::{Source, read_block, read_expression, read_question};
 pub use shape::is_answer;
 pub use tree::written as written_name;

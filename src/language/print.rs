@@ -9,9 +9,22 @@ use super::words::ClauseWord;
 /// `literal` gives the text of a literal's digits (the tree holds only their
 /// place). Iterative, like everything that walks a tree of unknown depth.
 pub fn print(tree: &Tree, root: ExprId, digits: &dyn Fn(crate::source::Span) -> String) -> String {
+    print_start(tree, root, digits, usize::MAX)
+}
+
+/// The first `most` bytes of that text and what completes their last piece:
+/// names of nested things would otherwise take quadratic time.
+pub fn print_start(
+    tree: &Tree,
+    root: ExprId,
+    digits: &dyn Fn(crate::source::Span) -> String,
+    most: usize,
+) -> String {
     let mut out = String::new();
     let mut stack = vec![Piece::Node(root)];
-    while let Some(piece) = stack.pop() {
+    while out.len() <= most
+        && let Some(piece) = stack.pop()
+    {
         match piece {
             Piece::Text(text) => out.push_str(&text),
             Piece::Node(id) => {

@@ -5,15 +5,20 @@ use super::formula::{Formula, Side};
 use super::list::{Outcome, Rule, Step, StepList};
 use crate::engine::diagram;
 use crate::engine::plan::{Block, BlockId, Plan, Stands};
+use crate::language::words::ClauseWord;
+use crate::language::{Expr, ExprId, Suffix};
 use crate::number::{Chance, Real};
 use crate::source::Span;
-use crate::system::{Base, Exposure, Item, Model, NodeId, Pace, System};
-use rustc_hash::FxHashMap;
+use crate::system::{Base, Exposure, Item, Model, NodeId, Pace, Quantity, System};
+use rustc_hash::{FxHashMap, FxHashSet};
 
 /// Members of an unlike k of n whose states are written out one by one.
 const WRITTEN_OUT: usize = 4;
 /// Members of a like k of n whose binomial terms are written out.
 const BINOMIAL: usize = 12;
+
+/// The most characters of a name that is a piece of the note's text.
+const NAME: usize = 48;
 
 /// What a block comes to among the steps.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -34,6 +39,10 @@ struct Writer<'w, 'a> {
     known: FxHashMap<String, usize>,
     blocks: Vec<Option<Operand>>,
     names: Vec<Vec<String>>,
+    named: FxHashSet<(usize, String)>,
+    /// Blocks of things that stand in several places: each has a step of its
+    /// own, since the steps on its two states name it alone.
+    own: FxHashSet<BlockId>,
 }
 
 /// Adds the steps of a system to `list`; returns the number of its last step,
@@ -57,7 +66,10 @@ pub fn write(
         known: FxHashMap::default(),
         blocks: vec![None; plan.len()],
         names,
+        named: FxHashSet::default(),
+        own: plan.shared().into_iter().collect(),
     };
+    let before = writer.list.steps.len();
     for id in plan.blocks() {
         if !plan.is_case(id) {
             let operand = writer.main_block(id);
@@ -65,7 +77,7 @@ pub fn write(
         }
     }
     let root = writer.operand(plan.root());
-    writer.finish_names();
+    writer.finish_names(before);
     let root = match root {
         Operand::Step(step) => Ok(step),
         Operand::Works => Err(true),
@@ -83,11 +95,12 @@ impl Writer<'_, '_> {
         match self.plan.block(id) {
             Block::Works => Operand::Works,
             Block::Fails => Operand::Fails,
-            Block::Leaf(leaf) => Operand::Step(self.leaf(leaf)),
+            Block::Leaf(leaf) => Operand::Step(self.leaf(leaf, self.own.contains(&id))),
             Block::Independent { need, .. } => {
                 let members: Vec<Operand> = self.plan.members(id).iter().map(|m| self.operand(*m)).collect();
                 let (name, place) = self.about(id);
-                self.vote(need as usize, &members, name, place, "")
+                let case = if self.own.contains(&id) { format!("own {} ", id.0) } else { String::new() };
+                self.vote(need as usize, &members, name, place, &case)
             }
             Block::Conditioned { .. } => {
                 let (name, place) = self.about(id);
@@ -117,7 +130,7 @@ impl Writer<'_, '_> {
             return self.model.leaf_name(&self.system.leaves[leaf as usize]);
         }
         let text = match self.system.places.get(node.0 as usize).copied().flatten() {
-            Some(expr) => self.model.text_of(expr),
+            Some(expr) => self.model.start_of_text(expr, 4 * NAME),
             None => "the whole".to_string(),
         };
         shortened(&text)
@@ -139,7 +152,7 @@ impl Writer<'_, '_> {
         shown: Side,
     ) -> usize {
         if let Some(&step) = self.known.get(&key) {
-            if !self.names[step].contains(&name) {
+            if self.named.insert((step, name.clone())) {
                 self.names[step].push(name);
             }
             return step;
@@ -148,7 +161,9 @@ impl Writer<'_, '_> {
         let chance = Chance::new(works.evaluate(&self.results).0, fails.evaluate(&self.results).0);
         self.results.push(chance);
         self.names.push(vec![name.clone()]);
+        self.named.insert((self.list.steps.len(), name.clone()));
         self.list.steps.push(Step {
+            symbol: name.clone(),
             thing: name,
             place,
             rule,
@@ -162,37 +177,49 @@ impl Writer<'_, '_> {
         step
     }
 
-    fn finish_names(&mut self) {
-        for (step, names) in self.list.steps.iter_mut().zip(&self.names) {
-            step.thing = folded(names);
+    fn finish_names(&mut self, before: usize) {
+        for (step, names) in self.list.steps.iter_mut().zip(&self.names).skip(before) {
+            (step.thing, step.symbol) = match names.split_first() {
+                Some((first, rest)) => match range_of(first, rest).filter(|_| !rest.is_empty()) {
+                    Some(range) => (range.clone(), range),
+                    None => (listed(names), first.clone()),
+                },
+                None => continue,
+            };
         }
     }
 
-    fn leaf(&mut self, number: u32) -> usize {
+    fn leaf(&mut self, number: u32, own: bool) -> usize {
         let leaf = self.system.leaves[number as usize];
         let item = self.model.item(leaf.item);
         let name = self.model.leaf_name(&leaf);
         let place = self.model.tree.span(leaf.template);
         let (rule, tails, shown) = self.item_formula(item);
         // Copies of one template have the same data; so do items on one right side.
-        self.add(format!("item {}", leaf.item), name, Some(place), rule, tails, shown)
+        let key = if own { format!("thing {number}") } else { format!("item {}", leaf.item) };
+        self.add(key, name, Some(place), rule, tails, shown)
     }
 
     fn item_formula(&self, item: &Item) -> (Rule, (Formula, Formula), Side) {
         let mut factors = Vec::new();
         let mut shown = Side::Works;
         if let Some((chance, clause)) = item.fixed {
-            let fails = clause.is_some_and(|c| c.word == crate::language::words::ClauseWord::Fails);
+            let fails = clause.is_some_and(|c| c.word == ClauseWord::Fails);
             let (symbol, value, complement) = if fails {
                 ("q", chance.fails(), chance.works())
             } else {
                 ("p", chance.works(), chance.fails())
             };
+            let literal = clause.and_then(|c| self.literal(c.value?));
             let datum = Formula::Datum {
                 symbol: symbol.to_string(),
                 value,
                 complement: Some(complement),
-                text: plain(value),
+                text: literal.clone().unwrap_or_else(|| plain(value)),
+                written: match literal {
+                    Some(_) => None,
+                    None => clause.and_then(|c| self.as_written(c.value?, &plain(value))),
+                },
             };
             if item.ageing.is_empty() {
                 let other = datum.clone().one_minus();
@@ -206,13 +233,13 @@ impl Writer<'_, '_> {
             let amount = self.amount(item, ageing.base);
             match &ageing.pace {
                 Pace::Rate(rate) => {
-                    let mut product = vec![self.datum("λ", rate.value, &rate.dim)];
+                    let mut product = vec![self.datum("λ", rate, ageing.clause.value)];
                     product.extend(amount);
                     hazards.push(Formula::product(product));
                 }
                 Pace::Mean(mean) => hazards.push(Formula::Quotient(
                     Box::new(Formula::product(amount)),
-                    Box::new(self.datum("θ", mean.value, &mean.dim)),
+                    Box::new(self.datum("θ", mean, ageing.clause.value)),
                 )),
                 Pace::Each(each) => {
                     let q = Formula::Datum {
@@ -220,6 +247,7 @@ impl Writer<'_, '_> {
                         value: each.fails(),
                         complement: Some(each.works()),
                         text: plain(each.fails()),
+                        written: ageing.clause.value.and_then(|v| self.as_written(v, &plain(each.fails()))),
                     };
                     factors.push(Formula::Power(Box::new(q.one_minus()), Box::new(Formula::product(amount))));
                 }
@@ -229,10 +257,15 @@ impl Writer<'_, '_> {
                         value: each.works(),
                         complement: Some(each.fails()),
                         text: plain(each.works()),
+                        written: match ageing.clause.word {
+                            // Written from the failing side, it is no other spelling of p.
+                            ClauseWord::Fails => None,
+                            _ => ageing.clause.value.and_then(|v| self.as_written(v, &plain(each.works()))),
+                        },
                     };
                     let ratio = Formula::Quotient(
                         Box::new(Formula::product(amount)),
-                        Box::new(self.datum("T", over.value, &over.dim)),
+                        Box::new(self.datum("T", over, ageing.clause.over)),
                     );
                     factors.push(Formula::Power(Box::new(p), Box::new(ratio)));
                 }
@@ -247,24 +280,52 @@ impl Writer<'_, '_> {
         (Rule::Exposure, (works, fails), shown)
     }
 
-    fn datum(&self, symbol: &str, value: Real, dim: &crate::system::Dim) -> Formula {
-        let unit = self.model.units.symbol(dim, &self.model.tree.names);
-        let text = if unit.is_empty() { plain(value) } else { format!("{} {unit}", plain(value)) };
-        Formula::Datum { symbol: symbol.to_string(), value, complement: None, text }
+    fn datum(&self, symbol: &str, figure: &Quantity, from: Option<ExprId>) -> Formula {
+        let unit = self.model.units.symbol(&figure.dim, &self.model.tree.names);
+        let number = plain(figure.value);
+        let text = if unit.is_empty() { number } else { format!("{number} {unit}") };
+        let written = from.and_then(|from| self.as_written(from, &text));
+        Formula::Datum { symbol: symbol.to_string(), value: figure.value, complement: None, text, written }
+    }
+
+    /// How the note has a value, where that differs from how the formula shows it.
+    fn as_written(&self, from: ExprId, shown: &str) -> Option<String> {
+        let text = shortened(&self.model.start_of_text(from, 4 * NAME));
+        let same = text == shown || text.strip_suffix(')').and_then(|t| t.strip_prefix('(')) == Some(shown);
+        (!same).then_some(text)
+    }
+
+    /// A number without a unit as the note has it, in the notation of formulas.
+    fn literal(&self, from: ExprId) -> Option<String> {
+        let Expr::Literal(number) = self.model.tree.expr(self.model.tree.inside_groups(from)) else {
+            return None;
+        };
+        let literal = self.model.tree.literals[number as usize];
+        let text = self.model.sources.text(literal.number);
+        match literal.suffix {
+            Suffix::None => Some(text.to_string()),
+            Suffix::Percent => Some(format!("{text}%")),
+            Suffix::In(among) => Some(format!("{text}/{}", self.model.sources.text(among))),
+            Suffix::Unit(_) => None,
+        }
     }
 
     /// The exposure that an item bears, as factors.
     fn amount(&self, item: &Item, base: Base) -> Vec<Formula> {
         let mut factors = Vec::new();
         if let Some(duty) = &item.duty {
-            factors.push(self.datum("duty", duty.value, &duty.dim));
+            factors.push(self.datum("duty", duty, self.clause_value(item, ClauseWord::Duty)));
         }
         if let Some(stress) = &item.stress {
-            factors.push(self.datum("stress", stress.value, &stress.dim));
+            factors.push(self.datum("stress", stress, self.clause_value(item, ClauseWord::Stress)));
         }
         let parts: Vec<Formula> = self.exposure.of(base).map(|part| self.phase(part, base)).collect();
         factors.push(Formula::sum(parts));
         factors
+    }
+
+    fn clause_value(&self, item: &Item, word: ClauseWord) -> Option<ExprId> {
+        item.clauses.iter().find(|c| c.word == word).and_then(|c| c.value)
     }
 
     fn phase(&self, part: &crate::system::Part, base: Base) -> Formula {
@@ -274,11 +335,11 @@ impl Writer<'_, '_> {
             (None, Base::Word(word)) => format!("n({})", names.text(word)),
             (None, _) => "t".to_string(),
         };
-        let amount = self.datum(&symbol, part.amount.value, &part.amount.dim);
+        let amount = self.datum(&symbol, &part.amount, Some(part.written));
         match &part.stress {
             Some(stress) => {
                 let name = part.name.map_or("stress".to_string(), |n| format!("stress({})", names.text(n)));
-                Formula::Product(vec![self.datum(&name, stress.value, &stress.dim), amount])
+                Formula::Product(vec![self.datum(&name, stress, None), amount])
             }
             None => amount,
         }
@@ -533,7 +594,7 @@ pub(crate) fn plain(value: Real) -> String {
 }
 
 /// Without zeros at the end of the decimals.
-fn trimmed(text: &str) -> String {
+pub(super) fn trimmed(text: &str) -> String {
     let (mantissa, exponent) = text.split_once('e').map_or((text, None), |(m, e)| (m, Some(e)));
     let short =
         if mantissa.contains('.') { mantissa.trim_end_matches('0').trim_end_matches('.') } else { mantissa };
@@ -544,12 +605,20 @@ fn trimmed(text: &str) -> String {
 }
 
 fn shortened(text: &str) -> String {
-    const MOST: usize = 48;
-    if text.chars().count() <= MOST {
+    if text.chars().count() <= NAME {
         return text.to_string();
     }
-    let start: String = text.chars().take(MOST - 1).collect();
+    let start: String = text.chars().take(NAME - 1).collect();
     format!("{start}…")
+}
+
+/// The names of like things, all of them while a line holds them.
+fn listed(names: &[String]) -> String {
+    const MOST: usize = 12;
+    if names.len() <= MOST {
+        return names.join(", ");
+    }
+    format!("{} and {} more", names[..MOST].join(", "), names.len() - MOST)
 }
 
 /// Names of like things as one: `feed.pump[1..3]`.

@@ -47,6 +47,8 @@ pub enum Formula {
         complement: Option<Real>,
         /// How it stands in the formula with numbers.
         text: String,
+        /// How the note has it, where that is something else: `18 /Mh`.
+        written: Option<String>,
     },
     /// The result of an earlier step, one side of it.
     Step(usize, Side),
@@ -148,6 +150,42 @@ impl Formula {
         found.sort_unstable();
         found.dedup();
         found
+    }
+
+    /// Data that the note writes in another way than the formula with numbers
+    /// does: `λ = 18 /Mh = 1.8e-5 /h`, each once.
+    pub fn data(&self) -> Vec<String> {
+        let mut found = Vec::new();
+        self.collect_data(&mut found);
+        found
+    }
+
+    fn collect_data(&self, found: &mut Vec<String>) {
+        match self {
+            Formula::Datum { symbol, text, written: Some(written), .. } => {
+                let line = if symbol == written {
+                    format!("{symbol} = {text}")
+                } else {
+                    format!("{symbol} = {written} = {text}")
+                };
+                if !found.contains(&line) {
+                    found.push(line);
+                }
+            }
+            Formula::Datum { .. }
+            | Formula::Whole(_)
+            | Formula::Choose(..)
+            | Formula::Step(..)
+            | Formula::AtLeast(..) => {}
+            Formula::Sum(list) | Formula::Product(list) | Formula::Function(_, list) => {
+                list.iter().for_each(|f| f.collect_data(found));
+            }
+            Formula::Quotient(a, b) | Formula::Power(a, b) => {
+                a.collect_data(found);
+                b.collect_data(found);
+            }
+            Formula::OneMinus(a) | Formula::ExpMinus(a) | Formula::Negate(a) => a.collect_data(found),
+        }
     }
 
     fn collect(&self, found: &mut Vec<usize>) {

@@ -16,6 +16,8 @@ struct JsonStep {
     left: String,
     symbols: String,
     numbers: String,
+    /// Data that the note writes in another way: `λ = 18 /Mh = 1.8e-5 /h`.
+    data: Vec<String>,
     result: String,
     /// Both tails to 15 digits, as text: JSON readers round numbers.
     works: Option<String>,
@@ -55,6 +57,7 @@ pub fn json(list: &StepList, sources: &Sources, digits: u8) -> String {
                 left: text.left,
                 symbols: text.symbols,
                 numbers: text.numbers,
+                data: text.data,
                 result: text.result,
                 works,
                 fails,

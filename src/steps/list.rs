@@ -74,6 +74,8 @@ pub enum Outcome {
 pub struct Step {
     /// The thing or things that it is about; like copies share a step.
     pub thing: String,
+    /// Its name in formulas: the first of several.
+    pub symbol: String,
     /// Where the thing is written.
     pub place: Option<Span>,
     /// How it is computed.

@@ -1,7 +1,7 @@
 //! Steps as text: formulas in symbols and with numbers.
 
 use super::formula::{Formula, Side};
-use super::list::{Outcome, Step, StepList};
+use super::list::{Outcome, Rule, Step, StepList};
 use crate::number::{Chance, format_fails, format_number, format_works};
 use crate::source::Sources;
 
@@ -25,6 +25,8 @@ pub struct Shown {
     pub symbols: String,
     /// The same with numbers.
     pub numbers: String,
+    /// Data that the note writes in another way: `λ = 18 /Mh = 1.8e-5 /h`.
+    pub data: Vec<String>,
     /// The result of the printed side, or the figure.
     pub result: String,
     /// The other side, with its letter: `F = 0.01430`; empty for a figure.
@@ -53,10 +55,15 @@ fn show(list: &StepList, step: &Step, sources: &Sources, digits: u8) -> Shown {
     let (left, result, other) = match &step.outcome {
         Outcome::Chance(chance) => {
             let other = if step.shown == Side::Works { Side::Fails } else { Side::Works };
+            // A datum stands as it is given, without zeros that say nothing.
+            let side = |side| match step.rule {
+                Rule::Given => given_text(side, *chance, digits),
+                _ => side_text(side, *chance, digits),
+            };
             (
-                format!("{}({})", step.shown.letter(), step.thing),
-                side_text(step.shown, *chance, digits),
-                format!("{} = {}", other.letter(), side_text(other, *chance, digits)),
+                format!("{}({})", step.shown.letter(), step.symbol),
+                side(step.shown),
+                format!("{} = {}", other.letter(), side(other)),
             )
         }
         Outcome::Figure(value, unit) => {
@@ -75,6 +82,7 @@ fn show(list: &StepList, step: &Step, sources: &Sources, digits: u8) -> Shown {
         left,
         symbols: render(false),
         numbers: render(true),
+        data: formula.data(),
         result,
         other,
         rests_on: formula.uses().into_iter().map(|s| s + 1).collect(),
@@ -86,6 +94,19 @@ struct Renderer<'a> {
     numbers: bool,
     digits: u8,
 }
+
+/// A probability as given: in as few digits as say all of it, else as any other.
+fn given_text(side: Side, chance: Chance, digits: u8) -> String {
+    let whole = super::build::trimmed(&side_text(side, chance, 15));
+    let usual = side_text(side, chance, digits);
+    if whole.len() <= usual.len() { whole } else { usual }
+}
+
+/// The most factors and terms that are written in full, and how many stand
+/// before the gap in a longer row.
+const FACTORS: usize = 12;
+const TERMS: usize = 16;
+const ENDS: usize = 3;
 
 /// Binding strength of what stands around: a sum inside a product needs parentheses.
 const SUM: u8 = 1;
@@ -101,8 +122,8 @@ impl Renderer<'_> {
             }
             Formula::Step(step, side) => (self.step(*step, *side), self.step_binding(*step, *side)),
             Formula::Whole(n) => (n.to_string(), POWER + 1),
-            Formula::Sum(terms) => (self.joined(terms, " + ", SUM), SUM),
-            Formula::Product(factors) => (self.joined(factors, " · ", PRODUCT), PRODUCT),
+            Formula::Sum(terms) => (self.joined(terms, " + ", SUM, TERMS), SUM),
+            Formula::Product(factors) => (self.joined(factors, " · ", PRODUCT, FACTORS), PRODUCT),
             Formula::Quotient(a, b) => {
                 (format!("{} / {}", self.text(a, PRODUCT), self.text(b, POWER)), PRODUCT)
             }
@@ -113,7 +134,9 @@ impl Renderer<'_> {
                 (format!("{}^{}", self.text(a, POWER + 1), self.text(b, POWER + 1)), POWER)
             }
             Formula::Choose(n, k) => (format!("C({n}, {k})"), POWER + 1),
-            Formula::Function(name, args) => (format!("{name}({})", self.joined(args, ", ", 0)), POWER + 1),
+            Formula::Function(name, args) => {
+                (format!("{name}({})", self.joined(args, ", ", 0, usize::MAX)), POWER + 1)
+            }
             Formula::AtLeast(need, members, side) => (self.at_least(*need, members, *side), POWER + 1),
         };
         if own < around || (own == around && own == SUM && text.starts_with("1 - ")) {
@@ -123,15 +146,27 @@ impl Renderer<'_> {
         }
     }
 
-    fn joined(&self, parts: &[Formula], between: &str, around: u8) -> String {
-        parts.iter().map(|p| self.text(p, around)).collect::<Vec<_>>().join(between)
+    /// The parts, those in the middle of more than `most` left out and counted.
+    fn joined(&self, parts: &[Formula], between: &str, around: u8, most: usize) -> String {
+        let text = |p: &Formula| self.text(p, around);
+        if parts.len() <= most {
+            return parts.iter().map(text).collect::<Vec<_>>().join(between);
+        }
+        let mut shown: Vec<String> = parts[..ENDS].iter().map(text).collect();
+        shown.push(format!("… ({} more)", parts.len() - ENDS - 1));
+        shown.extend(parts.last().map(text));
+        shown.join(between)
     }
 
     fn step(&self, step: usize, side: Side) -> String {
         let found = &self.list.steps[step];
         match (&found.outcome, self.numbers) {
+            // The formula with numbers must show what it was computed with.
+            (Outcome::Chance(chance), true) if found.rule == Rule::Given => {
+                given_text(side, *chance, self.digits)
+            }
             (Outcome::Chance(chance), true) => side_text(side, *chance, self.digits),
-            _ => format!("{}({})", side.letter(), found.thing),
+            _ => format!("{}({})", side.letter(), found.symbol),
         }
     }
 
@@ -144,7 +179,13 @@ impl Renderer<'_> {
         let n = members.len();
         let names: Vec<String> = members.iter().map(|m| self.step(*m, Side::Works)).collect();
         let alike = members.iter().all(|m| *m == members[0]);
-        let of = if alike { format!("{n} × {}", names[0]) } else { names.join(", ") };
+        let of = if alike {
+            format!("{n} × {}", names[0])
+        } else if n <= FACTORS {
+            names.join(", ")
+        } else {
+            format!("{}, … ({} more), {}", names[..ENDS].join(", "), n - ENDS - 1, names[n - 1])
+        };
         match side {
             Side::Works => format!("P(at least {need} of {n} work: {of})"),
             Side::Fails => format!("P(fewer than {need} of {n} work: {of})"),

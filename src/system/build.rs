@@ -30,6 +30,9 @@ const NONE: u32 = u32::MAX;
 
 /// The most things that one run makes.
 const MOST_THINGS: usize = 4_000_000;
+/// The most acts of copying in one run. Copies of copies double with each
+/// line of a note, so that this is reached before there are many things.
+const MOST_COPIES: usize = 2_000_000;
 
 #[derive(Clone, Copy, Debug)]
 struct CtxData {
@@ -224,6 +227,9 @@ impl Model<'_> {
             }
             Expr::Arith(..) | Expr::Negate(_) | Expr::WithUnit(..) | Expr::Name(_) => {}
             Expr::Call(word, _) if self.lookup(word).is_none() => {}
+            // What is wrong with the template is found at the template, and a chain
+            // of copies would take the square of its length.
+            Expr::Copy(of) if self.is_definition(of) => {}
             _ => {
                 let mut tasks = Vec::new();
                 let mut values = Vec::new();
@@ -232,6 +238,14 @@ impl Model<'_> {
                     let _ = self.run(tasks);
                 }
             }
+        }
+    }
+
+    /// Whether an expression is the name of a definition without parameters.
+    fn is_definition(&self, expr: ExprId) -> bool {
+        match self.tree.expr(self.tree.inside_groups(expr)) {
+            Expr::Name(sym) => self.lookup(sym).is_some_and(|d| !self.def(d).has_params),
+            _ => false,
         }
     }
 
@@ -661,6 +675,11 @@ impl Model<'_> {
             ctx = arg_ctx;
         }
         if let Some(fault) = self.faulty(of) {
+            values.push(Err(fault));
+            return;
+        }
+        if self.built.frames.len() >= MOST_COPIES {
+            let fault = self.too_many(visit.expr);
             values.push(Err(fault));
             return;
         }

@@ -169,6 +169,18 @@ impl<'a> Model<'a> {
         crate::language::print(self.tree, expr, &|span| self.sources.text(span).to_string())
     }
 
+    /// The name whose definition a place lies in.
+    pub fn defined_at(&self, place: Span) -> Option<String> {
+        let holds = |s: Span| s.start <= place.start && place.start <= s.end;
+        let def = self.defs.iter().find(|d| holds(self.tree.statements[d.statement as usize].span))?;
+        Some(self.written(def.name))
+    }
+
+    /// An expression as text, of which about `most` bytes are wanted.
+    pub fn start_of_text(&self, expr: ExprId, most: usize) -> String {
+        crate::language::print_start(self.tree, expr, &|span| self.sources.text(span).to_string(), most)
+    }
+
     fn define_all(&mut self) {
         for (index, statement) in self.tree.statements.iter().enumerate() {
             match &statement.line {
