@@ -13,6 +13,10 @@ use std::rc::Rc;
 /// The most diagram nodes spent on Fussell–Vesely within one group.
 const CUT_NODES: usize = 200_000;
 
+/// So many systems are kept. Questions about one thing mostly stand together,
+/// and what was kept for 10,000 blocks took half of the memory.
+const KEPT: usize = 256;
+
 /// A system, ready to be valued.
 #[derive(Debug)]
 pub struct Prepared {
@@ -98,6 +102,11 @@ impl Desk {
         let out = match known {
             Some(known) => known,
             None => {
+                if self.prepared.len() >= KEPT {
+                    self.prepared.clear();
+                    self.valued.clear();
+                    self.ranked.clear();
+                }
                 let out = Self::prepare_new(model, thing);
                 self.prepared.insert(key, out.clone());
                 out
@@ -335,8 +344,8 @@ fn repeated_names(model: &Model<'_>, system: &System) -> Vec<String> {
 
 /// The name of a node that has one.
 pub(super) fn node_name(model: &Model<'_>, system: &System, node: NodeId) -> Option<String> {
-    if let Some(name) = system.names.get(&node) {
-        return Some(name.clone());
+    if let Some(name) = model.node_name(system, node) {
+        return Some(name);
     }
     match system.structure.node(node) {
         crate::system::Node::Leaf(leaf) => Some(model.leaf_name(&system.leaves[leaf as usize])),

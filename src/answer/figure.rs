@@ -10,7 +10,7 @@ use crate::language::{Display, Expr, ExprId, List, Sym, words};
 use crate::number::{Chance, Real, Rounding, format_fails, format_number, format_works, round_significant};
 use crate::source::{Code, Problem, Span};
 use crate::steps::Side;
-use crate::system::{Ctx, Dim, Fault, Model, Oracle, Out, Quantity, STEP};
+use crate::system::{Ctx, Dim, Fault, Model, NodeId, Oracle, Out, Quantity, STEP};
 use std::rc::Rc;
 
 /// Diagram nodes allowed while minimal sets are made.
@@ -358,15 +358,16 @@ impl Desk {
                 ends.push((own, block));
             }
         }
-        for (node, own) in &system.names {
-            if *own == wanted {
-                return match plan.of_node(*node) {
+        for node in (0..system.structure.len() as u32).map(NodeId) {
+            let Some(own) = model.node_name(system, node) else { continue };
+            if own == wanted {
+                return match plan.of_node(node) {
                     Some(block) => Ok(Some(block)),
                     None => Err(self.shares_with_the_rest(model, &wanted, name)),
                 };
             }
-            if own.ends_with(&format!(".{wanted}")) && system.structure.members(*node).len() > 1 {
-                ends.push((own.clone(), plan.of_node(*node)));
+            if own.ends_with(&format!(".{wanted}")) && system.structure.members(node).len() > 1 {
+                ends.push((own, plan.of_node(node)));
             }
         }
         ends.sort();

@@ -19,7 +19,6 @@ use super::diagram::{Diagram, TooLarge};
 use super::modules::NONE;
 use super::planner;
 use crate::system::{NodeId, Structure};
-use rustc_hash::FxHashMap;
 
 /// A block of a [`Plan`]. What a block rests on has smaller numbers.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -120,7 +119,7 @@ pub struct Plan {
     pub(super) groups: Vec<Group>,
     pub(super) root: BlockId,
     pub(super) by_node: Vec<u32>,
-    pub(super) by_leaf: FxHashMap<u32, BlockId>,
+    pub(super) by_leaf: Vec<u32>,
 }
 
 impl Plan {
@@ -205,7 +204,7 @@ impl Plan {
 
     /// The block of a thing, if it takes part in the system.
     pub fn of_leaf(&self, leaf: u32) -> Option<BlockId> {
-        self.by_leaf.get(&leaf).copied()
+        self.by_leaf.get(leaf as usize).copied().filter(|&at| at != NONE).map(BlockId)
     }
 
     /// The things that are used more than once within some group, by block.

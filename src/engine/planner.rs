@@ -4,7 +4,6 @@ use super::diagram::{Builder, Diagram, TooLarge};
 use super::modules::{Graph, Kind, NONE};
 use super::plan::{Block, BlockId, Group, Options, Plan, Shell, Span, Stands};
 use crate::system::{Node, NodeId, Structure};
-use rustc_hash::FxHashMap;
 
 /// Groups larger than this are not tried by cases: nobody would follow them.
 const CASE_NODES: usize = 2000;
@@ -66,7 +65,7 @@ pub(super) fn plan(structure: &Structure, root: NodeId, options: Options) -> Res
         groups: Vec::new(),
         root: BlockId(0),
         by_node: vec![NONE; structure.len()],
-        by_leaf: FxHashMap::default(),
+        by_leaf: Vec::new(),
     };
     let graph = Graph::new(structure, root);
     let mut planner = Planner { plan: &mut plan, options };
@@ -121,7 +120,9 @@ impl Planner<'_> {
                     Some((frontier, _)) => frontier[leaf as usize],
                     None => {
                         let block = self.push(Block::Leaf(leaf), place.stands(at));
-                        self.plan.by_leaf.insert(leaf, block);
+                        let by_leaf = &mut self.plan.by_leaf;
+                        by_leaf.resize(by_leaf.len().max(leaf as usize + 1), NONE);
+                        by_leaf[leaf as usize] = block.0;
                         block
                     }
                 },

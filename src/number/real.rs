@@ -21,12 +21,14 @@ pub struct Real {
 }
 
 /// `a + b` exactly, as a rounded sum and its error, for |a| >= |b|.
+#[inline]
 fn quick_two_sum(a: f64, b: f64) -> (f64, f64) {
     let s = a + b;
     (s, b - (s - a))
 }
 
 /// `a + b` exactly, as a rounded sum and its error.
+#[inline]
 fn two_sum(a: f64, b: f64) -> (f64, f64) {
     let s = a + b;
     let bb = s - a;
@@ -34,6 +36,7 @@ fn two_sum(a: f64, b: f64) -> (f64, f64) {
 }
 
 /// `a * b` exactly, as a rounded product and its error.
+#[inline]
 fn two_prod(a: f64, b: f64) -> (f64, f64) {
     let p = a * b;
     (p, a.mul_add(b, -p))
@@ -115,6 +118,7 @@ impl From<u32> for Real {
 }
 
 impl PartialOrd for Real {
+    #[inline]
     fn partial_cmp(&self, other: &Real) -> Option<Ordering> {
         match self.hi.partial_cmp(&other.hi) {
             Some(Ordering::Equal) => self.lo.partial_cmp(&other.lo),
@@ -125,6 +129,7 @@ impl PartialOrd for Real {
 
 impl Neg for Real {
     type Output = Real;
+    #[inline]
     fn neg(self) -> Real {
         Real { hi: -self.hi, lo: -self.lo }
     }
@@ -132,6 +137,7 @@ impl Neg for Real {
 
 impl Add for Real {
     type Output = Real;
+    #[inline]
     fn add(self, other: Real) -> Real {
         let (sh, sl) = two_sum(self.hi, other.hi);
         if !sh.is_finite() {
@@ -146,6 +152,7 @@ impl Add for Real {
 
 impl Sub for Real {
     type Output = Real;
+    #[inline]
     fn sub(self, other: Real) -> Real {
         self + -other
     }
@@ -153,6 +160,7 @@ impl Sub for Real {
 
 impl Mul for Real {
     type Output = Real;
+    #[inline]
     fn mul(self, other: Real) -> Real {
         let (ph, pl) = two_prod(self.hi, other.hi);
         if !ph.is_finite() || ph == 0.0 {
@@ -181,12 +189,14 @@ impl Div for Real {
 }
 
 impl AddAssign for Real {
+    #[inline]
     fn add_assign(&mut self, other: Real) {
         *self = *self + other;
     }
 }
 
 impl MulAssign for Real {
+    #[inline]
     fn mul_assign(&mut self, other: Real) {
         *self = *self * other;
     }

@@ -123,8 +123,8 @@ impl Writer<'_, '_> {
     }
 
     fn node_name(&self, node: NodeId) -> String {
-        if let Some(name) = self.system.names.get(&node) {
-            return name.clone();
+        if let Some(name) = self.model.node_name(self.system, node) {
+            return name;
         }
         if let crate::system::Node::Leaf(leaf) = self.system.structure.node(node) {
             return self.model.leaf_name(&self.system.leaves[leaf as usize]);

@@ -123,6 +123,8 @@ pub struct Built {
     asked: FxHashMap<ExprId, u32>,
     used_settles: FxHashSet<(u32, Sym)>,
     has_parts: bool,
+    /// By node, its number in the system being cut out; [`NONE`] between two.
+    cut: Vec<u32>,
 }
 
 impl Default for Built {
@@ -144,6 +146,7 @@ impl Default for Built {
             asked: FxHashMap::default(),
             used_settles: FxHashSet::default(),
             has_parts: false,
+            cut: Vec::new(),
         }
     }
 }
@@ -157,8 +160,8 @@ pub struct System {
     pub root: NodeId,
     /// The things, by leaf number.
     pub leaves: Vec<Leaf>,
-    /// The name of each node that has one.
-    pub names: FxHashMap<NodeId, String>,
+    /// The label of each node, or [`NONE`]; few are ever written.
+    labels: Vec<u32>,
     /// Where each node was written.
     pub places: Vec<Option<ExprId>>,
     /// Nodes that stand in several places.
@@ -921,6 +924,12 @@ impl Model<'_> {
         self.label_text(leaf.label)
     }
 
+    /// The name of a node of a system, if it has one.
+    pub fn node_name(&self, system: &System, node: NodeId) -> Option<String> {
+        let label = *system.labels.get(node.0 as usize)?;
+        (label != NONE).then(|| self.label_text(label))
+    }
+
     /// Instances under a root, in the order they are met.
     fn under(&self, root: u32, without: Option<u32>) -> Vec<u32> {
         let mut seen = FxHashSet::default();
@@ -1071,52 +1080,61 @@ impl Model<'_> {
     ///
     /// # Errors
     /// The fault that it was built with.
-    pub fn system(&self, asked: u32) -> Out<System> {
-        let root = self.built.instances[asked as usize].out.unwrap_or(Err(Fault(0)))?;
-        let mut reached = FxHashSet::default();
+    pub fn system(&mut self, asked: u32) -> Out<System> {
+        let built = &mut self.built;
+        let root = built.instances[asked as usize].out.unwrap_or(Err(Fault(0)))?;
+        // A table that all systems use in turn: hash tables for each took a
+        // fifth of the time that a small system needs in all.
+        built.cut.resize(built.structure.len(), NONE);
         let mut order = vec![root];
-        reached.insert(root);
+        built.cut[root.0 as usize] = 0;
         let mut at = 0;
         while at < order.len() {
-            for &member in self.built.structure.members(order[at]) {
-                if reached.insert(member) {
+            for &member in built.structure.members(order[at]) {
+                let cut = &mut built.cut[member.0 as usize];
+                if *cut == NONE {
+                    *cut = 0;
                     order.push(member);
                 }
             }
             at += 1;
         }
         order.sort_unstable();
-        let number: FxHashMap<NodeId, NodeId> =
-            order.iter().enumerate().map(|(new, old)| (*old, NodeId(new as u32))).collect();
+        for (new, old) in order.iter().enumerate() {
+            built.cut[old.0 as usize] = new as u32;
+        }
         let mut system = System {
             structure: Structure::default(),
-            root: number[&root],
+            root: NodeId(built.cut[root.0 as usize]),
             leaves: Vec::new(),
-            names: FxHashMap::default(),
+            labels: Vec::with_capacity(order.len()),
             places: Vec::with_capacity(order.len()),
             repeated: Vec::new(),
         };
         let mut places = vec![0_u32; order.len()];
+        let mut members: Vec<NodeId> = Vec::new();
         for old in &order {
-            let new = match self.built.structure.node(*old) {
+            match built.structure.node(*old) {
                 Node::Works => system.structure.works(),
                 Node::Leaf(leaf) => {
-                    system.leaves.push(self.built.leaves[leaf as usize]);
+                    system.leaves.push(built.leaves[leaf as usize]);
                     system.structure.leaf(system.leaves.len() as u32 - 1)
                 }
                 Node::AtLeast { need, .. } => {
-                    let members: Vec<NodeId> =
-                        self.built.structure.members(*old).iter().map(|m| number[m]).collect();
+                    members.clear();
+                    let olds = built.structure.members(*old).iter();
+                    members.extend(olds.map(|m| NodeId(built.cut[m.0 as usize])));
                     for member in &members {
                         places[member.0 as usize] += 1;
                     }
                     system.structure.at_least(need, &members)
                 }
             };
-            system.places.push(self.built.origin.get(old.0 as usize).copied());
-            if let Some(label) = self.built.names.get(old) {
-                system.names.insert(new, self.label_text(*label));
-            }
+            system.places.push(built.origin.get(old.0 as usize).copied());
+            system.labels.push(built.names.get(old).copied().unwrap_or(NONE));
+        }
+        for old in &order {
+            built.cut[old.0 as usize] = NONE;
         }
         system.repeated = (0..places.len()).filter(|i| places[*i] > 1).map(|i| NodeId(i as u32)).collect();
         Ok(system)

@@ -8,6 +8,7 @@ use super::units::Units;
 use crate::language::{ExprId, Line, Sym, Tree, words};
 use crate::source::{Code, Level, Problem, Sources, Span};
 use rustc_hash::FxHashMap;
+use std::hash::BuildHasher;
 
 /// A definition, by number.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -378,18 +379,24 @@ impl<'a> Model<'a> {
 
     /// Names that a reader would take for each other get a remark.
     fn check_look_alikes(&mut self) {
-        let mut seen: FxHashMap<String, DefId> = FxHashMap::default();
+        // By hash: the keys themselves took 100 bytes a name.
+        let mut seen: FxHashMap<u64, DefId> = FxHashMap::default();
         seen.reserve(self.defs.len());
         for index in 0..self.defs.len() {
             let def = DefId(index as u32);
             let name = self.tree.names.text(self.def(def).name);
-            for key in super::scope::look_alike_keys(name) {
+            for text in super::scope::look_alike_keys(name) {
+                let key = rustc_hash::FxBuildHasher.hash_one(&text);
                 match seen.get(&key) {
                     None => {
                         seen.insert(key, def);
                     }
                     Some(first) if *first != def => {
                         let other = self.def(*first);
+                        let keys = super::scope::look_alike_keys(self.tree.names.text(other.name));
+                        if !keys.contains(&text) {
+                            continue; // equal by hash alone
+                        }
                         let (first_span, span) = (other.span, self.def(def).span);
                         let message = format!(
                             "`{name}` and `{}` differ only by case or by letters that look alike",

@@ -47,7 +47,9 @@ impl Model<'_> {
     /// Looks at every name in every line once: unknown names, circles, uses both ways.
     pub(super) fn check_names(&mut self) {
         let mut uses: Vec<(Option<Span>, Option<Span>)> = vec![(None, None); self.defs.len()];
-        let mut below: Vec<Vec<DefId>> = vec![Vec::new(); self.defs.len()];
+        // Who rests on whom; sorted by owner only where a circle is possible.
+        let mut below: Vec<(DefId, DefId)> = Vec::new();
+        let mut owners: Vec<DefId> = Vec::new();
         let mut only_back = true;
         for index in 0..self.tree.statements.len() {
             let statement = &self.tree.statements[index];
@@ -55,10 +57,10 @@ impl Model<'_> {
                 Line::Define { params: Some(params), .. } => params.iter().map(|(s, _)| *s).collect(),
                 _ => Vec::new(),
             };
-            let owners: Vec<DefId> = match &statement.line {
-                Line::Define { names, .. } => names.iter().filter_map(|(s, _)| self.lookup(*s)).collect(),
-                _ => Vec::new(),
-            };
+            owners.clear();
+            if let Line::Define { names, .. } = &statement.line {
+                owners.extend(names.iter().filter_map(|(s, _)| self.lookup(*s)));
+            }
             for root in roots(&statement.line) {
                 self.walk(root, &params, &mut |model, expr, def, used| {
                     let slot = &mut uses[def.0 as usize];
@@ -69,14 +71,18 @@ impl Model<'_> {
                         Use::Open => {}
                     }
                     for owner in &owners {
-                        below[owner.0 as usize].push(def);
+                        below.push((*owner, def));
                         only_back &= def < *owner;
                     }
                 });
             }
         }
         if !only_back {
-            self.find_circles(&below);
+            let mut lists: Vec<Vec<DefId>> = vec![Vec::new(); self.defs.len()];
+            for (owner, def) in below {
+                lists[owner.0 as usize].push(def);
+            }
+            self.find_circles(&lists);
         }
         self.check_both_ways(&uses);
         self.check_aliases(&uses);
