@@ -39,12 +39,15 @@ pub struct Valued {
     pub bound: f64,
 }
 
+/// The importance of each block, by number.
+type Ranked = Rc<Vec<Option<Importance>>>;
+
 /// Keeps what has been worked out for one set of notes.
 #[derive(Default)]
 pub struct Desk {
     prepared: FxHashMap<ExprKey, Out<Rc<Prepared>>>,
     valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Rc<Valued>>>,
-    ranked: FxHashMap<(ExprKey, Vec<ExprId>), Rc<Vec<Option<Importance>>>>,
+    ranked: FxHashMap<(ExprKey, Vec<ExprId>), Ranked>,
     /// Questions within questions.
     pub(super) depth: u32,
     /// What the answer at hand rests on; each becomes one folded remark.

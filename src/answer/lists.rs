@@ -225,8 +225,8 @@ impl Desk {
             }
         }
         for leaf in &prepared.system.leaves {
-            if !at.contains_key(&leaf.item) {
-                at.insert(leaf.item, rows.len());
+            if let std::collections::hash_map::Entry::Vacant(first) = at.entry(leaf.item) {
+                first.insert(rows.len());
                 rows.push((leaf.item, vec![model.leaf_name(leaf)]));
             }
         }

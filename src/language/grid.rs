@@ -178,7 +178,6 @@ impl<'a> GridReader<'_, 'a> {
         Some((self.tree.names.intern(text), span_of(*cell)))
     }
 
-    #[expect(clippy::type_complexity, reason = "the parts of a row, and the assembly it is in")]
     fn row(
         &mut self,
         columns: &[Column],

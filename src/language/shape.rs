@@ -19,8 +19,8 @@ fn number(input: &str) -> IResult<&str, &str> {
 
 fn unit(input: &str) -> IResult<&str, &str> {
     alt((
-        recognize(char('%')),
         recognize((space0, opt(char('%')), char('/'), word)),
+        recognize((space0, char('%'))),
         recognize((space1, word)),
     ))
     .parse(input)

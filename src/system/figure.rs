@@ -405,7 +405,7 @@ impl Model<'_> {
         let whole = exponent == exponent.trunc()
             && (b.value - Real::from(exponent)).is_zero()
             && exponent.abs() < 1e15;
-        if !a.dim.is_none() && !(whole && exponent.abs() <= 100.0) {
+        if !(a.dim.is_none() || whole && exponent.abs() <= 100.0) {
             return Err(self.fault(
                 Problem::error(Code::WrongUnit, place, "a figure with a unit takes only a whole power")
                     .mend("divide it by one of its unit first"),

@@ -201,10 +201,8 @@ impl<'a> Model<'a> {
             self.defs[slot as usize].broken = Some(fault);
             return;
         }
-        let broken = value.is_none().then(|| {
-            // The line's own problem has been reported by the reader; this one only carries the place.
-            Fault(NONE)
-        });
+        // The line's own problem has been reported by the reader; this one only carries the place.
+        let broken = value.is_none().then_some(Fault(NONE));
         self.by_name[name.0 as usize] = self.defs.len() as u32;
         self.defs.push(Def { name, span, value, statement, has_params, broken });
     }
