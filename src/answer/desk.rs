@@ -43,7 +43,7 @@ pub struct Valued {
     pub bound: f64,
 }
 
-/// The importance of each leaf, where it has one.
+/// The importance of each block, by number.
 type Ranked = Rc<Vec<Option<Importance>>>;
 
 /// Keeps what has been worked out for one set of notes.
