@@ -140,9 +140,17 @@ fn grid_of<'a>(table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid
     language::Grid { opener: table.opener, header: row(&table.header), rows: usable.collect() }
 }
 
-type Answered = (Vec<Problem>, Vec<Asked>, usize, Rewrite);
+type Outcome = (Vec<Problem>, Vec<Asked>, usize, Rewrite);
 
-fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Answered {
+/// A statement's reply, before it has a place in the note.
+struct Answered {
+    statement: usize,
+    mark: Mark,
+    reply: Out<Reply>,
+    unmet: bool,
+}
+
+fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome {
     let mut model = Model::new(&read.tree, sources);
     let mut desk = Desk::default();
     let mut work = Work {
@@ -154,11 +162,12 @@ fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Answere
         unmet: 0,
         problems: Vec::new(),
         cells: Vec::new(),
+        shifts: Vec::new(),
     };
-    for index in 0..read.tree.statements.len() {
-        work.statement(index, &mut model, &mut desk);
-    }
-    work.finish_tables();
+    let replies: Vec<Answered> = (0..read.tree.statements.len())
+        .filter_map(|index| work.statement(index, &mut model, &mut desk))
+        .collect();
+    work.place_all(&replies, &model);
     for def in 0..model.defs.len() as u32 {
         model.try_definition(crate::system::DefId(def));
     }
@@ -229,23 +238,68 @@ struct Work<'a> {
     problems: Vec<Problem>,
     /// Answers of table cells: place, row, column, text.
     cells: Vec<(usize, usize, usize, String)>,
+    /// Where answers add or take lines, and how many: by place, summed up.
+    shifts: Vec<(usize, i64)>,
 }
 
 impl Work<'_> {
-    fn statement(&mut self, index: usize, model: &mut Model<'_>, desk: &mut Desk) {
+    /// Places all replies. An answer that names a line names it as it will be
+    /// numbered once all answers stand: where answers above it come to have
+    /// more lines or fewer, the placing is done again with those counted.
+    fn place_all(&mut self, replies: &[Answered], model: &Model<'_>) {
+        let problems = self.problems.len();
+        self.place_once(replies, model);
+        self.shifts = self.line_shifts();
+        let names_lines = replies.iter().any(|r| r.reply.is_err());
+        if names_lines && !self.shifts.is_empty() {
+            self.problems.truncate(problems);
+            self.edits.clear();
+            self.asked.clear();
+            self.place_once(replies, model);
+        }
+    }
+
+    fn place_once(&mut self, replies: &[Answered], model: &Model<'_>) {
+        for answered in replies {
+            self.place(answered, model);
+        }
+        self.finish_tables();
+    }
+
+    fn line_shifts(&self) -> Vec<(usize, i64)> {
+        let count = |text: &str| text.bytes().filter(|b| *b == b'\n').count() as i64;
+        let mut total = 0;
+        let mut shifts = Vec::new();
+        for edit in &self.edits {
+            let change = count(&edit.text) - count(self.text.get(edit.span.clone()).unwrap_or(""));
+            if change != 0 {
+                total += change;
+                shifts.push((edit.span.start, total));
+            }
+        }
+        shifts
+    }
+
+    /// The line of a place as it will be numbered in the filled note.
+    fn line_once_filled(&self, place: Span, model: &Model<'_>) -> i64 {
+        let line = model.sources.line(place).map_or(0, |l| l.1 as i64);
+        let at = (place.start.saturating_sub(self.base)) as usize;
+        let after = self.shifts.partition_point(|(start, _)| *start < at);
+        line + after.checked_sub(1).map_or(0, |i| self.shifts[i].1)
+    }
+
+    fn statement(&mut self, index: usize, model: &mut Model<'_>, desk: &mut Desk) -> Option<Answered> {
         let statement = &self.read.tree.statements[index];
         let asks = statement.mark.is_some();
         let value = match &statement.line {
             Line::Ask { value, display } => Some((*value, *display)),
             Line::Define { value, display, .. } if asks => Some((*value, *display)),
             Line::Require { left, limit, right } => {
-                let count = model.problems.len();
                 let out = require(desk, model, *left, *limit, *right);
                 let (reply, unmet) = match out {
                     Ok((verdict, text)) => (Ok(Reply::Line(text)), verdict != Verdict::Met),
                     Err(fault) => (Err(fault), false),
                 };
-                let _ = count;
                 if unmet {
                     self.unmet += 1;
                     if let Ok(Reply::Line(text)) = &reply {
@@ -257,21 +311,19 @@ impl Work<'_> {
                     }
                 }
                 self.remarks(statement.span, model, desk);
-                if let Some(mark) = statement.mark {
-                    self.place(index, mark, reply, unmet, model);
-                }
-                return;
+                let mark = statement.mark?;
+                return Some(Answered { statement: index, mark, reply, unmet });
             }
             Line::Broken(_) if asks => None,
-            _ => return,
+            _ => return None,
         };
-        let Some(mark) = statement.mark else { return };
+        let mark = statement.mark?;
         let reply = match value {
             None => Err(Fault(u32::MAX)),
             Some((value, display)) => reply_to(value, display, model, desk),
         };
         self.remarks(statement.span, model, desk);
-        self.place(index, mark, reply, false, model);
+        Some(Answered { statement: index, mark, reply, unmet: false })
     }
 
     /// One folded remark for each thing an answer rests on in several places,
@@ -318,7 +370,9 @@ impl Work<'_> {
         }
     }
 
-    fn place(&mut self, index: usize, mark: Mark, reply: Out<Reply>, unmet: bool, model: &Model<'_>) {
+    fn place(&mut self, answered: &Answered, model: &Model<'_>) {
+        let Answered { statement: index, mark, unmet, .. } = *answered;
+        let reply = answered.reply.clone();
         let read = self.read;
         let statement = &read.tree.statements[index];
         let reply = reply.unwrap_or_else(|fault| {
@@ -386,11 +440,8 @@ impl Work<'_> {
                 }
             }
             Some(problem) => {
-                // By name: an answer that counts lines would change what it counts.
-                match model.defined_at(problem.place) {
-                    Some(name) => format!("rests on `{name}`, which is in error"),
-                    None => "rests on a line that is in error".to_string(),
-                }
+                let line = self.line_once_filled(problem.place, model);
+                format!("rests on line {line}, which is in error")
             }
             None => "this line is in error".to_string(),
         };
@@ -647,6 +698,7 @@ fn one_question(
         unmet,
         problems: Vec::new(),
         cells: Vec::new(),
+        shifts: Vec::new(),
     };
     work.remarks(statement.span, &model, &mut desk);
     show_readings(&mut model, &mut desk);
