@@ -369,7 +369,9 @@ fn stray(c: char, rest: &str, place: Span, to_end: Span) -> Problem {
 fn answer_span(rest: &str, at: u32) -> Span {
     let mut end = rest.len();
     let mut inside = false;
-    let mut blank = true;
+    // A `#` directly after the mark begins no comment: an answer put between
+    // the two would swallow it.
+    let mut blank = false;
     for (i, c) in rest.char_indices() {
         match c {
             '"' => inside = !inside,
@@ -437,6 +439,7 @@ mod tests {
         assert_eq!(answer("R(x) ? ! unknown name \"a # b\" # mine"), "! unknown name \"a # b\"");
         assert_eq!(answer("R(x) ?   "), "");
         assert_eq!(answer("R(x) ? a#b"), "a#b");
+        assert_eq!(answer("R(x) ?# mine"), "# mine");
         assert_eq!(answer("R(x) ? it's 5\" # mine"), "it's 5\"");
     }
 

@@ -155,7 +155,8 @@ impl Walk<'_> {
 
     /// What stands before `at` on its line.
     fn prefix(&self, at: usize) -> Range<usize> {
-        let line = self.text[..at].rfind('\n').map_or(0, |n| n + 1);
+        // To Markdown, a carriage return alone ends a line too.
+        let line = self.text[..at].rfind(['\n', '\r']).map_or(0, |n| n + 1);
         line.max(self.mark).min(at)..at
     }
 
