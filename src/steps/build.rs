@@ -392,7 +392,8 @@ impl Writer<'_, '_> {
                     let operands: Vec<Operand> =
                         members.into_iter().map(|m| self.case(m, base, place, given)).collect();
                     let (own, own_place) = self.about(id);
-                    let name = format!("{own}, given {}", given.join(", "));
+                    let condition = given.join(", ");
+                    let name = format!("{own}, given {condition}");
                     return self.vote(need as usize, &operands, name, own_place, "case ");
                 }
                 Block::Works => return Operand::Works,
@@ -414,14 +415,17 @@ impl Writer<'_, '_> {
         place: Option<Span>,
         given: &mut Vec<String>,
     ) -> Operand {
-        let (on_name, _) = self.about(on);
+        let (on_name, on_place) = self.about(on);
+        // What is conditioned on may itself rest on an earlier condition: then it is a
+        // block of this case, with a step of its own under the conditions so far.
+        let condition =
+            if self.plan.is_case(on) { self.case(on, &on_name, on_place, given) } else { self.operand(on) };
         given.push(format!("{on_name} works"));
         let up = self.case(works, base, place, given);
         given.pop();
         given.push(format!("{on_name} has failed"));
         let down = self.case(failed, base, place, given);
         given.pop();
-        let condition = self.operand(on);
         let Operand::Step(condition) = condition else {
             return if condition == Operand::Works { up } else { down };
         };
