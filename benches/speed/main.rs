@@ -91,6 +91,9 @@ fn systems() {
     }
 }
 
+/// Makes a note of a size.
+type Make<'a> = &'a dyn Fn(usize) -> String;
+
 /// Times that must grow with the size and no faster, in seconds.
 fn sizes() {
     let deep =
@@ -100,7 +103,7 @@ fn sizes() {
         let lines: String = (0..n).map(|i| format!("name_{i} = 0.9\n")).collect();
         format!("```tieback\n{lines}R(name_{}) ?\n```\n", n / 2)
     };
-    let cases: [(&str, &dyn Fn(usize) -> String, usize); 3] =
+    let cases: [(&str, Make<'_>, usize); 3] =
         [("names", &names, 1_000_000), ("in series", &wide, 1_000_000), ("parentheses", &deep, 100_000)];
     for (case, make, size) in cases {
         let (part, whole) = (make(size / 4), make(size));

@@ -197,8 +197,11 @@ pub(crate) fn nested(things: usize, seed: u64) -> String {
     }
     let mut places: Vec<String> = (0..things).map(|i| format!("t{i}")).collect();
     for i in (0..things).step_by(5) {
-        let at = (i + 1 + r.below(12)).min(places.len());
-        places.insert(at, format!("t{i}"));
+        // Those put in before have moved the first on.
+        let name = format!("t{i}");
+        let first = places.iter().position(|p| *p == name).unwrap_or(0);
+        let at = (first + 1 + r.below(12)).min(places.len());
+        places.insert(at, name);
     }
     // Neighbours join to groups of two to four until one is left.
     while places.len() > 1 {
