@@ -64,13 +64,16 @@ pub fn fill(name: &str, text: &str) -> Filled {
     let Some(base) = sources.add(name, text) else { return too_much_text(sources) };
     let found = find(text, base);
     if found.places.is_empty() {
-        return Filled {
-            sources,
-            problems: found.problems,
-            asked: Vec::new(),
-            unmet: 0,
-            rewrite: Rewrite::Unchanged,
-        };
+        let mut problems = found.problems;
+        if problems.is_empty() {
+            let place = Span { start: base, end: base };
+            problems.push(
+                Problem::remark(Code::NothingToDo, place, "this note holds nothing for tieback").mend(
+                    "write a fenced block whose first word is `tieback`, or a comment pair such as `<!--? R(feed) -->`",
+                ),
+            );
+        }
+        return Filled { sources, problems, asked: Vec::new(), unmet: 0, rewrite: Rewrite::Unchanged };
     }
     let read = read(text, base, found);
     let (problems, asked, unmet, rewrite) = answer_note(&read, &sources, text, base);

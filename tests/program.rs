@@ -182,7 +182,7 @@ fn a_missing_file_exits_with_3_and_the_others_are_still_done() {
         .run()
         .exits(3)
         .gives("")
-        .mentions("error[file-access]: cannot read \"gone.md\": there is no such file\n")
+        .mentions("error[file-access]: cannot read \"gone.md\": there is no such file or folder\n")
         .mentions("error[not-utf8]");
 }
 

@@ -10,8 +10,8 @@ use crate::engine::plan::Block;
 use crate::language::{Clause, Expr, ExprId, List, words};
 use crate::number::{Chance, Real, format_number};
 use crate::source::{Code, Problem};
-use crate::steps::{Formula, Outcome, Rule, Side, Step, StepList, folded, shown, write};
-use crate::system::{Base, Exposure, Model, Node, NodeId, Out, STEP};
+use crate::steps::{Formula, Outcome, Rule, Side, Step, StepList, folded, listed, shown, write};
+use crate::system::{Base, Exposure, Item, Model, Node, NodeId, Out, Pace, STEP};
 use std::collections::hash_map::Entry;
 
 /// Sets listed where the question does not say how many.
@@ -508,33 +508,35 @@ pub fn assumptions(model: &Model<'_>, system: &crate::system::System, exposure: 
         }
     }
     if !groups.is_empty() {
-        lines.push(format!("no common cause in the redundant groups: {}", folded(&groups)));
+        lines.push(format!("no common cause in the redundant groups: {}", listed(&groups)));
     }
     lines.push("things fail independently of each other".to_string());
     let names_where = |wanted: &dyn Fn(&crate::system::Item) -> bool| {
-        let mut names: Vec<String> = Vec::new();
-        for leaf in &system.leaves {
-            if wanted(model.item(leaf.item)) {
-                names.push(model.leaf_name(leaf));
-            }
-        }
-        names
+        let mut found: Vec<(u32, String)> = system
+            .leaves
+            .iter()
+            .filter(|leaf| wanted(model.item(leaf.item)))
+            .map(|leaf| (leaf.span.start, model.leaf_name(leaf)))
+            .collect();
+        // In the order they are written, whatever the question.
+        found.sort_by_key(|(place, _)| *place);
+        listed(&found.into_iter().map(|(_, name)| name).collect::<Vec<_>>())
     };
-    let ageing = names_where(&|item| !item.ageing.is_empty());
-    if !ageing.is_empty() {
-        lines.push(format!(
-            "constant failure rates, all new at the start, nothing repaired meanwhile: {}",
-            folded(&ageing)
-        ));
-    }
-    let fixed = names_where(&|item| item.fixed.is_some());
-    if !fixed.is_empty() {
-        let how = if exposure.asked { "whatever the exposure asked" } else { "for one mission" };
-        lines.push(format!("probabilities taken as given, {how}: {}", folded(&fixed)));
-    }
-    let full = names_where(&|item| item.duty.is_none() && item.ageing.iter().any(|a| a.base == Base::Time));
-    if !full.is_empty() {
-        lines.push(format!("running all of the time (duty 100%): {}", folded(&full)));
-    }
+    let mut say = |names: String, what: &str| {
+        if !names.is_empty() {
+            lines.push(format!("{what}: {names}"));
+        }
+    };
+    let each = |item: &Item| item.ageing.iter().any(|a| matches!(a.pace, Pace::Each(_)));
+    let rates = |item: &Item| item.ageing.iter().any(|a| !matches!(a.pace, Pace::Each(_)));
+    say(names_where(&rates), "constant failure rates, all new at the start, nothing repaired meanwhile");
+    say(names_where(&each), "the same chance at each occurrence, whatever went before");
+    let how = if exposure.asked { "whatever the exposure asked" } else { "for one mission" };
+    say(names_where(&|item| item.fixed.is_some()), &format!("probabilities taken as given, {how}"));
+    let runs = |item: &Item| {
+        let timed = |a: &crate::system::Ageing| a.base == Base::Time && !matches!(a.pace, Pace::Each(_));
+        item.duty.is_none() && item.ageing.iter().any(timed)
+    };
+    say(names_where(&runs), "running all of the time (duty 100%)");
     lines
 }

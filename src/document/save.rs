@@ -23,14 +23,25 @@ impl FileTrouble {
         FileTrouble { path: path.into(), cause: cause.into(), mend: mend.into(), byte: None }
     }
 
-    fn io(path: &Path, doing: &str, error: &io::Error) -> FileTrouble {
+    fn io(path: &Path, error: &io::Error) -> FileTrouble {
+        // In words of our own: the system's carry numbers, and paths of temporary files.
+        let cause = match error.kind() {
+            io::ErrorKind::NotFound => "there is no such file or folder",
+            io::ErrorKind::PermissionDenied => "access is denied",
+            io::ErrorKind::IsADirectory => "it is a folder",
+            io::ErrorKind::NotADirectory => "a part of its path is no folder",
+            io::ErrorKind::StorageFull => "the disk is full",
+            io::ErrorKind::ReadOnlyFilesystem => "the disk is read-only",
+            io::ErrorKind::Other | io::ErrorKind::Interrupted => "the system failed",
+            kind => return FileTrouble::new(path, kind.to_string(), "try again, or write elsewhere with -o"),
+        };
         let mend = match error.kind() {
             io::ErrorKind::NotFound => "check the name and the folder",
             io::ErrorKind::PermissionDenied => "give yourself the right to it, or write elsewhere with -o",
             io::ErrorKind::StorageFull => "make room on the disk; the file is as it was",
             _ => "try again, or write elsewhere with -o",
         };
-        FileTrouble::new(path, format!("cannot {doing}: {error}"), mend)
+        FileTrouble::new(path, cause, mend)
     }
 }
 
@@ -53,7 +64,7 @@ pub enum Saved {
 
 /// The bytes of a file.
 pub fn read_note(path: &Path) -> Result<Vec<u8>, FileTrouble> {
-    fs::read(path).map_err(|e| FileTrouble::io(path, "read it", &e))
+    fs::read(path).map_err(|e| FileTrouble::io(path, &e))
 }
 
 /// The text of a file's bytes.

@@ -179,13 +179,7 @@ impl Writer<'_, '_> {
 
     fn finish_names(&mut self, before: usize) {
         for (step, names) in self.list.steps.iter_mut().zip(&self.names).skip(before) {
-            (step.thing, step.symbol) = match names.split_first() {
-                Some((first, rest)) => match range_of(first, rest).filter(|_| !rest.is_empty()) {
-                    Some(range) => (range.clone(), range),
-                    None => (listed(names), first.clone()),
-                },
-                None => continue,
-            };
+            (step.thing, step.symbol) = super::names::head_and_symbol(names);
         }
     }
 
@@ -394,7 +388,13 @@ impl Writer<'_, '_> {
                     let (own, own_place) = self.about(id);
                     let condition = given.join(", ");
                     let name = format!("{own}, given {condition}");
-                    return self.vote(need as usize, &operands, name, own_place, "case ");
+                    return self.vote(
+                        need as usize,
+                        &operands,
+                        name,
+                        own_place,
+                        &format!("case {condition} "),
+                    );
                 }
                 Block::Works => return Operand::Works,
                 Block::Fails => return Operand::Fails,
@@ -614,52 +614,4 @@ fn shortened(text: &str) -> String {
     }
     let start: String = text.chars().take(NAME - 1).collect();
     format!("{start}…")
-}
-
-/// The names of like things, all of them while a line holds them.
-fn listed(names: &[String]) -> String {
-    const MOST: usize = 12;
-    if names.len() <= MOST {
-        return names.join(", ");
-    }
-    format!("{} and {} more", names[..MOST].join(", "), names.len() - MOST)
-}
-
-/// Names of like things as one: `feed.pump[1..3]`.
-pub fn folded(names: &[String]) -> String {
-    match names {
-        [] => String::new(),
-        [one] => one.clone(),
-        [first, rest @ ..] => {
-            if let Some(range) = range_of(first, rest) {
-                return range;
-            }
-            const SHOWN: usize = 3;
-            let mut out = names.iter().take(SHOWN).cloned().collect::<Vec<_>>().join(", ");
-            if names.len() > SHOWN {
-                out.push_str(&format!(" and {} more", names.len() - SHOWN));
-            }
-            out
-        }
-    }
-}
-
-/// One range where names differ in one number of a copy that counts on.
-fn range_of(first: &str, rest: &[String]) -> Option<String> {
-    for (open, _) in first.match_indices('[') {
-        let close = open + first[open..].find(']')?;
-        let start: u32 = first[open + 1..close].parse().ok()?;
-        let fits = rest.iter().enumerate().all(|(i, name)| {
-            *name == format!("{}{}{}", &first[..=open], start as usize + i + 1, &first[close..])
-        });
-        if fits {
-            return Some(format!(
-                "{}{start}..{}{}",
-                &first[..=open],
-                start as usize + rest.len(),
-                &first[close..]
-            ));
-        }
-    }
-    None
 }

@@ -7,11 +7,13 @@ mod build;
 mod formula;
 mod json;
 mod list;
+mod names;
 mod render;
 
 pub(crate) use build::plain;
-pub use build::{folded, write};
+pub use build::write;
 pub use formula::{Formula, Side, Tails};
 pub use json::json;
 pub use list::{Outcome, Rule, Step, StepList};
+pub use names::{folded, listed};
 pub use render::{Shown, shown, side_text};

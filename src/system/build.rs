@@ -1086,22 +1086,25 @@ impl Model<'_> {
         // A table that all systems use in turn: hash tables for each took a
         // fifth of the time that a small system needs in all.
         built.cut.resize(built.structure.len(), NONE);
-        let mut order = vec![root];
-        built.cut[root.0 as usize] = 0;
-        let mut at = 0;
-        while at < order.len() {
-            for &member in built.structure.members(order[at]) {
+        // Depth first in the order written, so that the numbers do not depend on
+        // what else was asked before.
+        const OPEN: u32 = NONE - 1;
+        let mut order: Vec<NodeId> = Vec::new();
+        let mut stack = vec![(root, 0_usize)];
+        built.cut[root.0 as usize] = OPEN;
+        while let Some((node, next)) = stack.last_mut() {
+            if let Some(&member) = built.structure.members(*node).get(*next) {
+                *next += 1;
                 let cut = &mut built.cut[member.0 as usize];
                 if *cut == NONE {
-                    *cut = 0;
-                    order.push(member);
+                    *cut = OPEN;
+                    stack.push((member, 0));
                 }
+            } else {
+                built.cut[node.0 as usize] = order.len() as u32;
+                order.push(*node);
+                stack.pop();
             }
-            at += 1;
-        }
-        order.sort_unstable();
-        for (new, old) in order.iter().enumerate() {
-            built.cut[old.0 as usize] = new as u32;
         }
         let mut system = System {
             structure: Structure::default(),
