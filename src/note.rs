@@ -12,6 +12,7 @@ use crate::language::{self, Line, Mark, Source, Tree, is_answer};
 use crate::source::{Code, Level, Problem, Sources, Span};
 use crate::steps::json as steps_json;
 use crate::system::{Fault, Model, Out};
+use std::collections::BTreeMap;
 
 /// One question and what came of it.
 #[derive(Clone, Debug)]
@@ -30,6 +31,8 @@ pub struct Asked {
     pub error: bool,
     /// Whether it is a requirement that is not met or undecided.
     pub unmet: bool,
+    /// What the reader should know of the answer.
+    pub remarks: Vec<String>,
 }
 
 /// What filling one note gave.
@@ -151,6 +154,7 @@ struct Answered {
     mark: Mark,
     reply: Out<Reply>,
     unmet: bool,
+    remarks: Vec<String>,
 }
 
 fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome {
@@ -166,10 +170,12 @@ fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome
         problems: Vec::new(),
         cells: Vec::new(),
         shifts: Vec::new(),
+        told: BTreeMap::new(),
     };
     let replies: Vec<Answered> = (0..read.tree.statements.len())
         .filter_map(|index| work.statement(index, &mut model, &mut desk))
         .collect();
+    work.finish_remarks();
     work.place_all(&replies, &model);
     for def in 0..model.defs.len() as u32 {
         model.try_definition(crate::system::DefId(def));
@@ -243,6 +249,8 @@ struct Work<'a> {
     cells: Vec<(usize, usize, usize, String)>,
     /// Where answers add or take lines, and how many: by place, summed up.
     shifts: Vec<(usize, i64)>,
+    /// Remarks made so far: where among the problems, and how many more answers they belong to.
+    told: BTreeMap<(Code, String), (usize, usize)>,
 }
 
 impl Work<'_> {
@@ -313,9 +321,9 @@ impl Work<'_> {
                         ));
                     }
                 }
-                self.remarks(statement.span, model, desk);
+                let remarks = self.remarks(statement.span, desk);
                 let mark = statement.mark?;
-                return Some(Answered { statement: index, mark, reply, unmet });
+                return Some(Answered { statement: index, mark, reply, unmet, remarks });
             }
             Line::Broken(_) if asks => None,
             _ => return None,
@@ -325,13 +333,16 @@ impl Work<'_> {
             None => Err(Fault(u32::MAX)),
             Some((value, display)) => reply_to(value, display, model, desk),
         };
-        self.remarks(statement.span, model, desk);
-        Some(Answered { statement: index, mark, reply, unmet: false })
+        let remarks = self.remarks(statement.span, desk);
+        Some(Answered { statement: index, mark, reply, unmet: false, remarks })
     }
 
-    /// One folded remark for each thing an answer rests on in several places,
-    /// and one for probabilities that an asked exposure left alone.
-    fn remarks(&mut self, place: Span, _: &Model<'_>, desk: &mut Desk) {
+    /// What an answer rests on that its reader should know: one folded remark for
+    /// things in several places, one for probabilities that an asked exposure left
+    /// alone, one for a list cut short. Returned for the answer; as a problem each
+    /// stands once, at the first answer it belongs to.
+    fn remarks(&mut self, place: Span, desk: &mut Desk) -> Vec<String> {
+        let mut found: Vec<Problem> = Vec::new();
         let mut names: Vec<String> = Vec::new();
         for prepared in desk.take_leant_on() {
             for name in &prepared.repeated {
@@ -346,30 +357,41 @@ impl Work<'_> {
             } else {
                 ("stand", "count as one thing each")
             };
-            let list = crate::steps::folded(&names);
-            self.problems.push(Problem::remark(
-                Code::UsedTwice,
-                place,
-                format!("{list} {verb} in several places and {count}"),
-            ));
+            let list = crate::steps::listed(&names);
+            let message = format!("{list} {verb} in several places and {count}");
+            found.push(Problem::remark(Code::UsedTwice, place, message));
         }
         for text in desk.take_cut_short() {
-            self.problems.push(
-                Problem::remark(Code::CutShort, place, text)
-                    .mend("ask for a number of your own, `first 200`, for low orders, `order 3`, or for their `count(…)`"),
-            );
+            let mend = "ask for a number of your own, `first 200`, for low orders, `order 3`, or for their `count(…)`";
+            found.push(Problem::remark(Code::CutShort, place, text).mend(mend));
         }
         let unscaled = desk.take_unscaled();
         if !unscaled.is_empty() {
-            let list = crate::steps::folded(&unscaled);
-            self.problems.push(
-                Problem::remark(
-                    Code::FixedProbability,
-                    place,
-                    format!("the exposure asked for does not change the fixed probability of {list}"),
-                )
-                .mend("give a rate, or the exposure that the probability is for: `0.98 over 1000 h`"),
-            );
+            let list = crate::steps::listed(&unscaled);
+            let message = format!("the exposure asked for does not change the fixed probability of {list}");
+            let mend = "give a rate, or the exposure that the probability is for: `0.98 over 1000 h`";
+            found.push(Problem::remark(Code::FixedProbability, place, message).mend(mend));
+        }
+        let texts = found.iter().map(|p| p.message.clone()).collect();
+        for problem in found {
+            match self.told.get_mut(&(problem.code, problem.message.clone())) {
+                Some((_, more)) => *more += 1,
+                None => {
+                    self.told.insert((problem.code, problem.message.clone()), (self.problems.len(), 0));
+                    self.problems.push(problem);
+                }
+            }
+        }
+        texts
+    }
+
+    /// Says of each remark how many more answers it belongs to.
+    fn finish_remarks(&mut self) {
+        for (at, more) in self.told.values() {
+            if *more > 0 {
+                let answers = if *more == 1 { "answer" } else { "answers" };
+                self.problems[*at].mark = format!("and {more} more {answers}");
+            }
         }
     }
 
@@ -403,6 +425,7 @@ impl Work<'_> {
             stale,
             error,
             unmet,
+            remarks: answered.remarks.clone(),
         });
     }
 
@@ -702,8 +725,9 @@ fn one_question(
         problems: Vec::new(),
         cells: Vec::new(),
         shifts: Vec::new(),
+        told: BTreeMap::new(),
     };
-    work.remarks(statement.span, &model, &mut desk);
+    let remarks = work.remarks(statement.span, &mut desk);
     show_readings(&mut model, &mut desk);
     let mark = statement.mark.unwrap_or(Mark { at: statement.span.end, answer: statement.span, line: 0 });
     let (new, error) = match out {
@@ -718,6 +742,7 @@ fn one_question(
         stale: false,
         error,
         unmet: unmet > 0,
+        remarks,
     };
     let mut problems: Vec<Problem> = read.found.problems.clone();
     problems.extend(read.problems.iter().cloned());

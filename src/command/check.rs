@@ -82,6 +82,7 @@ mod tests {
             stale: old != new,
             error: false,
             unmet: new.starts_with("NOT met"),
+            remarks: Vec::new(),
         }
     }
 

@@ -19,7 +19,7 @@ pub(super) fn save(path: &Path, read: Option<&[u8]>, bytes: &[u8]) -> Result<(),
 /// What went wrong, in words that do not depend on the system where it matters.
 pub(super) fn cause(error: &io::Error) -> String {
     match error.kind() {
-        io::ErrorKind::NotFound => "there is no such file".to_string(),
+        io::ErrorKind::NotFound => "there is no such file or folder".to_string(),
         io::ErrorKind::PermissionDenied => "access is denied".to_string(),
         io::ErrorKind::IsADirectory => "it is a folder".to_string(),
         _ => error.to_string().to_lowercase(),

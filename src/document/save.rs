@@ -91,27 +91,27 @@ pub fn to_utf8(path: &Path, bytes: Vec<u8>) -> Result<String, FileTrouble> {
 /// file no longer holds those bytes, somebody else has saved it meanwhile:
 /// nothing is written.
 pub fn save(path: &Path, read: Option<&[u8]>, bytes: &[u8]) -> Result<Saved, FileTrouble> {
-    let trouble = |doing: &str, e: &io::Error| FileTrouble::io(path, doing, e);
+    let trouble = |e: &io::Error| FileTrouble::io(path, e);
     let real = match fs::canonicalize(path) {
         Ok(real) => real,
         Err(e) if e.kind() == io::ErrorKind::NotFound && fs::symlink_metadata(path).is_err() => {
             if read.is_some() {
                 return Err(FileTrouble::new(path, "it was taken away meanwhile", "run again"));
             }
-            return replace(path, None, bytes).map_err(|e| trouble("write it", &e)).map(|()| Saved::Written);
+            return replace(path, None, bytes).map_err(|e| trouble(&e)).map(|()| Saved::Written);
         }
-        Err(e) => return Err(trouble("find it", &e)),
+        Err(e) => return Err(trouble(&e)),
     };
-    let meta = fs::metadata(&real).map_err(|e| trouble("read it", &e))?;
+    let meta = fs::metadata(&real).map_err(|e| trouble(&e))?;
     if meta.is_dir() {
         return Err(FileTrouble::new(path, "it is a folder", "name a file"));
     }
     if !meta.is_file() {
         // A pipe or a device has no content to compare or replace.
         let written = OpenOptions::new().write(true).open(&real).and_then(|mut f| f.write_all(bytes));
-        return written.map_err(|e| trouble("write it", &e)).map(|()| Saved::Written);
+        return written.map_err(|e| trouble(&e)).map(|()| Saved::Written);
     }
-    let old = fs::read(&real).map_err(|e| trouble("read it", &e))?;
+    let old = fs::read(&real).map_err(|e| trouble(&e))?;
     if old == bytes {
         return Ok(Saved::Unchanged);
     }
@@ -140,7 +140,7 @@ pub fn save(path: &Path, read: Option<&[u8]>, bytes: &[u8]) -> Result<Saved, Fil
             done => done,
         }
     };
-    done.map_err(|e| trouble("write it", &e)).map(|()| Saved::Written)
+    done.map_err(|e| trouble(&e)).map(|()| Saved::Written)
 }
 
 /// Writes a new file beside the old one and puts it in its place.

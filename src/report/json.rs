@@ -93,6 +93,8 @@ pub struct QuestionReport {
     pub error: bool,
     /// Whether it is a requirement that is not met or undecided.
     pub unmet: bool,
+    /// What its reader should know: things that count once though they stand in several places, and the like.
+    pub remarks: Vec<String>,
 }
 
 /// One problem.
@@ -169,6 +171,7 @@ impl FileReport {
                 stale: asked.stale,
                 error: asked.error,
                 unmet: asked.unmet,
+                remarks: asked.remarks.clone(),
             }
         });
         FileReport {
