@@ -452,6 +452,8 @@ fn steps_can_be_computed_again() {
     for rule in [
         Rule::Given,
         Rule::Exposure,
+        Rule::Occurrences,
+        Rule::Ways,
         Rule::Series,
         Rule::Parallel,
         Rule::LikeVote,

@@ -139,12 +139,12 @@ impl Desk {
                     .collect();
                 vec![
                     set.len().to_string(),
-                    names.join(", "),
                     probability_text(model, *chance, which, &subject, set),
+                    names.join(", "),
                 ]
             })
             .collect();
-        let head = vec!["order".to_string(), title.to_string(), measure.to_string()];
+        let head = vec!["order".to_string(), measure.to_string(), title.to_string()];
         Ok(Reply::Table { head, rows, foot })
     }
 

@@ -112,6 +112,10 @@ fn used(side: Side, fails: Real, limit: Limit, bar: &Quantity) -> Option<String>
         return None;
     }
     let share = fails / allowed * Real::from(100.0);
-    let text = format_number(share, 3, ROUNDING)?;
+    // Three digits, also where the share is large.
+    let text = match crate::number::round_significant(share, 3, ROUNDING, crate::number::Rounding::Nearest) {
+        Some(digits) if digits.exponent() > 2 => digits.scientific(),
+        _ => format_number(share, 3, ROUNDING)?,
+    };
     Some(format!(", uses {text}% of the allowed {}", super::plain(allowed)))
 }

@@ -43,6 +43,8 @@ fn judge(input: &Input, filled: Filled) -> Outcome {
             stale.len(),
             counted(filled.asked.len(), "answer")
         );
+    } else if !filled.asked.is_empty() {
+        outcome.summary = format!("{} as tieback would write them", counted(filled.asked.len(), "answer"));
     }
     outcome.changed = matches!(filled.rewrite, Rewrite::Patched(_));
     outcome.verdict.stale = !stale.is_empty() || outcome.changed;
@@ -56,14 +58,19 @@ fn stale(asked: &Asked) -> Problem {
     } else {
         "this answer is not what follows from the note now".to_string()
     };
-    let first = |answer: &str| match answer.split_once('\n') {
-        Some((line, _)) => format!("{line} …"),
-        None => answer.to_string(),
+    // Of answers in many lines, the first that differs.
+    let old: Vec<&str> = asked.old.lines().collect();
+    let new: Vec<&str> = asked.new.lines().collect();
+    let at = (0..old.len().max(new.len())).find(|i| old.get(*i) != new.get(*i)).unwrap_or(0);
+    let line = |lines: &[&str]| match lines.get(at) {
+        Some(line) if lines.len() > 1 => format!("{} …", line.trim()),
+        Some(line) => (*line).to_string(),
+        None => "nothing".to_string(),
     };
     let mark = if asked.old.is_empty() {
-        format!("now {}", first(&asked.new))
+        format!("now {}", line(&new))
     } else {
-        format!("was {}, now {}", first(&asked.old), first(&asked.new))
+        format!("was {}, now {}", line(&old), line(&new))
     };
     Problem::error(Code::Stale, asked.place, message).mark(mark)
 }

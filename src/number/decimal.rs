@@ -405,15 +405,4 @@ mod tests {
         assert_close(chance.fails(), "1e-50");
         assert!(size_of::<Decimal>() <= 32);
     }
-
-    /// Run by hand: `cargo test --release number -- --ignored --nocapture`.
-    #[test]
-    #[ignore = "a measurement"]
-    fn speed_of_a_million_literals() {
-        let texts: Vec<String> = (1..=1_000_000).map(|i| format!("0.{i}e-3")).collect();
-        let start = std::time::Instant::now();
-        let sum = texts.iter().filter_map(|t| Decimal::parse(t)).fold(0.0, |sum, d| sum + d.to_real().hi());
-        let elapsed = start.elapsed();
-        assert!(sum > 0.0 && elapsed.as_millis() < 300, "{elapsed:?}");
-    }
 }

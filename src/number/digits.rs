@@ -516,16 +516,4 @@ mod tests {
         assert_eq!(complement("1", 3).as_deref(), Some("0.00"));
         assert_eq!(complement("0", 3).as_deref(), Some("1"));
     }
-
-    /// Run by hand: `cargo test --release number -- --ignored --nocapture`.
-    #[test]
-    #[ignore = "a measurement"]
-    fn speed_of_rounding() {
-        let mut random = Random(3);
-        let values: Vec<Real> = (0..1_000_000).map(|_| random.sized(-60, 60)).collect();
-        let start = std::time::Instant::now();
-        let decided: usize = values.iter().filter(|&&v| decided_digits(v, FINE, 4) == 4).count();
-        let elapsed = start.elapsed();
-        assert!(decided > 0 && elapsed.as_millis() < 1000, "{elapsed:?}");
-    }
 }

@@ -269,9 +269,19 @@ impl Writer<'_, '_> {
             factors.push(Formula::ExpMinus(Box::new(Formula::sum(hazards))));
             shown = if item.fixed.is_none() && factors.len() == 1 { Side::Fails } else { Side::Works };
         }
+        let rule = match item.ageing.as_slice() {
+            [only] if item.fixed.is_none() => {
+                if matches!(only.pace, Pace::Each(_)) {
+                    Rule::Occurrences
+                } else {
+                    Rule::Exposure
+                }
+            }
+            _ => Rule::Ways,
+        };
         let works = Formula::product(factors);
         let fails = works.clone().one_minus();
-        (Rule::Exposure, (works, fails), shown)
+        (rule, (works, fails), shown)
     }
 
     fn datum(&self, symbol: &str, figure: &Quantity, from: Option<ExprId>) -> Formula {

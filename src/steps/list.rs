@@ -9,8 +9,12 @@ use crate::source::Span;
 pub enum Rule {
     /// The probability as the note gives it.
     Given,
-    /// Constant rates and probabilities per occurrence over the exposure.
+    /// A constant rate over the exposure.
     Exposure,
+    /// The same probability at each occurrence.
+    Occurrences,
+    /// Several ways to fail on one item, in series.
+    Ways,
     /// All of several independent things.
     Series,
     /// Any of several independent things.
@@ -33,6 +37,8 @@ impl Rule {
         match self {
             Rule::Given => "as given",
             Rule::Exposure => "exponential law",
+            Rule::Occurrences => "independent occurrences",
+            Rule::Ways => "ways to fail in series",
             Rule::Series => "series",
             Rule::Parallel => "parallel",
             Rule::LikeVote => "k of n, like members",
@@ -48,7 +54,8 @@ impl Rule {
     pub fn source(self) -> &'static str {
         match self {
             Rule::Given | Rule::Arithmetic => "",
-            Rule::Exposure => "IEC 61703; Rausand and Hoyland, System Reliability Theory, ch. 2",
+            Rule::Occurrences => "product law for independent events",
+            Rule::Exposure | Rule::Ways => "IEC 61703; Rausand and Hoyland, System Reliability Theory, ch. 2",
             Rule::Series | Rule::Parallel => "IEC 61078, reliability block diagrams",
             Rule::LikeVote => "IEC 61078, m out of n, binomial law",
             Rule::UnlikeVote => "Barlow and Heidtmann, IEEE Trans. Reliability R-33 (1984)",

@@ -275,7 +275,10 @@ impl Model<'_> {
 
     fn read_clause(&mut self, item: &mut Item, clause: Clause) -> Out<()> {
         let word = self.tree.names.text(clause.name);
-        if clause.word != ClauseWord::Fails
+        // Ways to fail may stand twice, for different exposures; `add_pace` looks at those.
+        let way =
+            matches!(clause.word, ClauseWord::Fails | ClauseWord::Rate | ClauseWord::Mttf | ClauseWord::Mtbf);
+        if !way
             && let Some(first) = item.clauses.iter().find(|c| c.word == clause.word && c.name == clause.name)
         {
             let shown = if word.is_empty() { "a bare probability".to_string() } else { format!("`{word}`") };

@@ -108,7 +108,7 @@ impl Units {
         };
         let problem =
             Problem::error(Code::UnknownUnit, unit.span, format!("the unit `{shown}` is not known"));
-        let declared = self.exposures.keys().map(|s| names.text(*s));
+        let declared = self.exposures.keys().chain(self.attribute_units.keys()).map(|s| names.text(*s));
         let known = TIMES.iter().map(|(w, _)| *w).chain(YEARS.iter().copied()).chain(declared);
         let known = known.chain(MASSES.iter().map(|(w, _)| *w)).chain(["FIT"]);
         match words::nearest(word, known) {

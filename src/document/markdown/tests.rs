@@ -368,32 +368,3 @@ proptest! {
         check(&format!("{tail}<!--? q -->{text}"))?;
     }
 }
-
-/// Prints how the walk compares with the parser alone; not a check.
-#[test]
-#[ignore = "a measurement: run it with --release --nocapture"]
-fn pace() {
-    use pulldown_cmark::{Options, Parser};
-    let part = "# Part\n\nSome *text* with a pair <!--? R(feed) -->0.9857<!--/?--> and `code` in it, as notes have.\n\n\
-        ```tieback\npump = rate 18 /Mh, source \"maker's sheet 7\"\nR(pump) ? 0.9857\n\n# text\n```\n\n- item\n- item\n\n";
-    let filler = "Words that fill the note as they do in any long note of this kind.\n".repeat(12);
-    let text = format!("{part}{filler}\n").repeat(10_000);
-    let options = Options::ENABLE_TABLES
-        | Options::ENABLE_FOOTNOTES
-        | Options::ENABLE_STRIKETHROUGH
-        | Options::ENABLE_TASKLISTS;
-    for _ in 0..3 {
-        let start = std::time::Instant::now();
-        let events = Parser::new_ext(&text, options).into_offset_iter().count();
-        let parser = start.elapsed();
-        let start = std::time::Instant::now();
-        let places = find(&text, 0).places.len();
-        let walk = start.elapsed();
-        assert!(events > places && places == 20_000);
-        std::io::Write::write_fmt(
-            &mut std::io::stderr(),
-            format_args!("{} bytes: parser {parser:?}, find {walk:?}\n", text.len()),
-        )
-        .unwrap();
-    }
-}
