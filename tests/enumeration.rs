@@ -224,7 +224,7 @@ fn trial(seed: u64, most: usize) -> Trial {
     let mut lines = writer.lines;
     lines.push(format!("top = {text}"));
     // Order is free: the last definition may stand first.
-    if seed % 2 == 0 {
+    if seed.is_multiple_of(2) {
         lines.reverse();
     }
     Trial {

@@ -503,8 +503,13 @@ impl Model<'_> {
     /// A figure as a probability, with both tails.
     pub(super) fn probability(&mut self, figure: &Quantity, place: Span, works: bool) -> Out<Chance> {
         let value = figure.value;
-        let slack = figure.error.max(STEP);
-        if value.is_negative() || value.to_f64() > 1.0 + slack || (value - Real::ONE).to_f64() > slack {
+        // A huge figure's error is huge, too: it must not make the figure fit.
+        let slack = figure.error.max(STEP).min(1e-9);
+        if value.is_negative()
+            || value.to_f64() > 1.0 + slack
+            || !value.is_finite()
+            || (value - Real::ONE).to_f64() > slack
+        {
             let mut problem = Problem::error(Code::OutsideRange, place, "a probability lies between 0 and 1");
             if (1.0..=100.0).contains(&value.to_f64()) {
                 problem = problem.mend("write a percentage with its sign: `98%`");
