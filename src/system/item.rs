@@ -504,7 +504,8 @@ impl Model<'_> {
     pub(super) fn probability(&mut self, figure: &Quantity, place: Span, works: bool) -> Out<Chance> {
         let value = figure.value;
         // A huge figure's error is huge, too: it must not make the figure fit.
-        let slack = figure.error.max(STEP).min(1e-9);
+        let slack = figure.error.max(STEP);
+        let slack = slack.min(1e-9);
         if value.is_negative()
             || value.to_f64() > 1.0 + slack
             || !value.is_finite()
