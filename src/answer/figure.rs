@@ -691,10 +691,11 @@ pub(super) fn figure_text(
                         .mend("choose a unit of the same kind, or take the `in …` away"),
                 ));
             }
+            let word = crate::system::unit_word(model.tree.names.text(unit.word));
             let shown = match unit.form {
-                crate::language::UnitForm::Plain => model.written(unit.word),
-                crate::language::UnitForm::Per => format!("/{}", model.written(unit.word)),
-                crate::language::UnitForm::PercentPer => format!("%/{}", model.written(unit.word)),
+                crate::language::UnitForm::Plain => word,
+                crate::language::UnitForm::Per => format!("/{word}"),
+                crate::language::UnitForm::PercentPer => format!("%/{word}"),
             };
             Ok(format!("{} {shown}", number(quantity.value / factor)))
         }

@@ -4,6 +4,7 @@ use nom::branch::alt;
 use nom::bytes::complete::{tag, take_till1, take_while1};
 use nom::character::complete::{char, digit1, one_of, space0, space1};
 use nom::combinator::{all_consuming, opt, recognize, rest, value};
+use nom::multi::many0_count;
 use nom::sequence::preceded;
 use nom::{IResult, Parser};
 
@@ -17,18 +18,28 @@ fn number(input: &str) -> IResult<&str, &str> {
     .parse(input)
 }
 
-/// `%`, `%/kh`, `/yr`, `h`, `kg*h/start^2`
+/// `%`, `/yr`, `%/kh`, ` h`, ` h·kg/start^2`: what [`crate::system::Units::symbol`] writes.
 fn unit(input: &str) -> IResult<&str, &str> {
     alt((
-        recognize((space0, char('%'), opt((char('/'), word)))),
-        recognize((space0, char('/'), word)),
-        recognize((space1, word)),
+        recognize((space0, opt(char('%')), below, many0_count(below))),
+        recognize((space0, char('%'))),
+        recognize((space1, factor, many0_count((char('·'), factor)), many0_count(below))),
     ))
     .parse(input)
 }
 
+fn below(input: &str) -> IResult<&str, &str> {
+    recognize((char('/'), factor)).parse(input)
+}
+
+fn factor(input: &str) -> IResult<&str, &str> {
+    recognize((word, opt((char('^'), digit1)))).parse(input)
+}
+
+/// A name without quotes.
 fn word(input: &str) -> IResult<&str, &str> {
-    take_while1(|c: char| c.is_alphanumeric() || matches!(c, '_' | '^' | '/' | '*')).parse(input)
+    let run = |input| take_while1(|c: char| c.is_alphanumeric() || c == '_').parse(input);
+    recognize((run, many0_count((one_of(".-"), run)))).parse(input)
 }
 
 /// `[~]number [unit]`, also `1 - 6.403e-93` and the interval of a `~` value.
@@ -37,11 +48,7 @@ fn plain(input: &str) -> IResult<&str, ()> {
         (),
         (
             opt((char('~'), space0)),
-            alt((
-                recognize((alt((tag("1 - "), tag("100 - "))), number)),
-                recognize((tag("1 in "), number)),
-                number,
-            )),
+            alt((recognize((alt((tag("1 - "), tag("100 - "), tag("1 in "))), number)), number)),
             opt(unit),
             opt(tag(" from bounds")),
             opt(recognize((tag(" ("), take_till1(|c| c == ')'), char(')')))),
@@ -85,7 +92,7 @@ mod tests {
             "4.000e-5",
             "1 - 6.403e-93",
             "100 - 6.4e-91%",
-            "3.2 kg*h/start^2",
+            "3.2 kg·h/start^2",
             "~0.98",
             "~ 0.98 (0.97 to 0.99)",
             "12.5 h",
@@ -102,6 +109,11 @@ mod tests {
             "! unknown name \"strainr\": did you mean \"strainer\"?",
             "12",
             "1 in 1.234e8",
+            "100 - 1.000e-18%",
+            "6.000 /h^2",
+            "0.4444 kg^2/h^2",
+            "3.000 h·kg/start-up",
+            "2.000 /warm-up",
         ] {
             assert!(is_answer(yes), "{yes}");
         }

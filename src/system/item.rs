@@ -522,8 +522,14 @@ impl Model<'_> {
     /// A figure as a probability, with both tails.
     pub(super) fn probability(&mut self, figure: &Quantity, place: Span, works: bool) -> Out<Chance> {
         let value = figure.value;
+        // A huge figure's error is huge, too: it must not make the figure fit.
         let slack = figure.error.max(STEP);
-        if value.is_negative() || value.to_f64() > 1.0 + slack || (value - Real::ONE).to_f64() > slack {
+        let slack = slack.min(1e-9);
+        if value.is_negative()
+            || value.to_f64() > 1.0 + slack
+            || !value.is_finite()
+            || (value - Real::ONE).to_f64() > slack
+        {
             let mut problem = Problem::error(Code::OutsideRange, place, "a probability lies between 0 and 1");
             let text = self.sources.text(place);
             // `98` was meant as a percentage, `1.2` or `3 in 2` hardly.

@@ -18,4 +18,4 @@ pub use item::{Ageing, Item, Pace};
 pub use model::{Def, DefId, Fault, Model, Out};
 pub use quantity::{Base, Dim, Quantity, STEP};
 pub use structure::{Node, NodeId, Structure};
-pub use units::Units;
+pub use units::{Units, unit_word};

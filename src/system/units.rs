@@ -53,6 +53,12 @@ impl Default for Units {
     }
 }
 
+/// A declared word as it stands behind an answer: in one piece, since quotes
+/// or blanks there would look like a remark of the writer's.
+pub fn unit_word(text: &str) -> String {
+    text.chars().map(|c| if c.is_alphanumeric() || matches!(c, '.' | '-') { c } else { '_' }).collect()
+}
+
 impl Units {
     /// Hours in the time unit `word`.
     pub fn hours(&self, word: &str) -> Option<Real> {
@@ -134,7 +140,7 @@ impl Units {
         }
     }
 
-    /// The unit in which a figure of this dimension is shown: `h`, `/h`, `kg`, `start`.
+    /// The unit in which a figure of this dimension is shown: `h`, `/h`, `kg`, `start`, `h·kg/start`.
     pub fn symbol(&self, dim: &Dim, names: &Names) -> String {
         let mut above: Vec<String> = Vec::new();
         let mut below: Vec<String> = Vec::new();
@@ -142,13 +148,13 @@ impl Units {
             let word = match base {
                 Base::Time => "h".to_string(),
                 Base::Mass => "kg".to_string(),
-                Base::Word(w) => names.text(*w).to_string(),
+                Base::Word(w) => unit_word(names.text(*w)),
             };
             let size = power.unsigned_abs();
             let text = if size == 1 { word } else { format!("{word}^{size}") };
             if *power > 0 { above.push(text) } else { below.push(text) }
         }
-        let mut out = above.join("*");
+        let mut out = above.join("·");
         for text in below {
             out.push('/');
             out.push_str(&text);
