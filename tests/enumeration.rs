@@ -334,10 +334,10 @@ fn number(answer: &str) -> DBig {
 fn listed(answer: &str) -> BTreeSet<BTreeSet<String>> {
     let mut rows = answer.lines();
     let head = rows.next().unwrap_or_default();
-    // Columns stand under their heads.
-    let (from, to) = ("order  ".len(), head.rfind("all ").unwrap_or(0));
+    // Columns stand under their heads; the set is the last.
+    let from = head.rfind("cut set").or(head.rfind("path set")).unwrap_or(0);
     rows.filter(|r| !r.starts_with('…'))
-        .map(|r| r[from..to].split(',').map(|n| n.trim().to_string()).collect())
+        .map(|r| r[from..].split(',').map(|n| n.trim().to_string()).collect())
         .collect()
 }
 

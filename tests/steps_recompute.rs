@@ -546,3 +546,35 @@ fn long_rows_say_what_they_leave_out() {
     let row = steps.iter().find(|s| s.starts_with("R(x)")).unwrap();
     assert!(row.starts_with("R(x) = R(n0) · R(n1) · R(n2) · … (16 more) · R(n19) = "), "{row}");
 }
+
+/// Shared things that rest on shared things, many ways: the last step must be the answer.
+#[test]
+fn steps_of_random_systems_end_in_the_answer() {
+    let mut state = 0x9E37_79B9_7F4A_7C15_u64;
+    let mut draw = move |n: u64| {
+        state = state.wrapping_mul(6_364_136_223_846_793_005).wrapping_add(1_442_695_040_888_963_407);
+        (state >> 33) % n
+    };
+    let mut rules = Vec::new();
+    for _ in 0..300 {
+        let things = 3 + draw(5);
+        let mut lines: Vec<String> =
+            (0..things).map(|i| format!("p{i} = fails 0.0{}", 1 + draw(9))).collect();
+        let mut names: Vec<String> = (0..things).map(|i| format!("p{i}")).collect();
+        for i in 0..2 + draw(5) {
+            let count = 2 + draw(3);
+            let members: Vec<String> =
+                (0..count).map(|_| names[draw(names.len() as u64) as usize].clone()).collect();
+            lines.push(match draw(3) {
+                0 => format!("q{i} = {}", members.join(" -> ")),
+                1 => format!("q{i} = {}", members.join(" // ")),
+                _ => format!("q{i} = {} of ({})", 1 + draw(count), members.join(", ")),
+            });
+            names.push(format!("q{i}"));
+        }
+        let question = format!("R({})", names[names.len() - 1]);
+        each_step_list(&lines.join("\n"), &[&question], |question, list, answer, sources| {
+            recompute(question, list, answer, sources, &mut rules);
+        });
+    }
+}

@@ -512,15 +512,9 @@ pub fn assumptions(model: &Model<'_>, system: &crate::system::System, exposure: 
     }
     lines.push("things fail independently of each other".to_string());
     let names_where = |wanted: &dyn Fn(&crate::system::Item) -> bool| {
-        let mut found: Vec<(u32, String)> = system
-            .leaves
-            .iter()
-            .filter(|leaf| wanted(model.item(leaf.item)))
-            .map(|leaf| (leaf.span.start, model.leaf_name(leaf)))
-            .collect();
-        // In the order they are written, whatever the question.
-        found.sort_by_key(|(place, _)| *place);
-        listed(&found.into_iter().map(|(_, name)| name).collect::<Vec<_>>())
+        // In the order of the structure, which does not depend on where a definition stands.
+        let leaves = system.leaves.iter().filter(|leaf| wanted(model.item(leaf.item)));
+        listed(&leaves.map(|leaf| model.leaf_name(leaf)).collect::<Vec<_>>())
     };
     let mut say = |names: String, what: &str| {
         if !names.is_empty() {

@@ -103,8 +103,9 @@ mod tests {
     }
 
     #[test]
-    fn answers_that_stand_are_not_mentioned() {
-        assert_eq!(judged(vec![asked("0.98", "0.98")]), (0, String::new(), Vec::new()));
+    fn answers_that_stand_are_only_counted() {
+        let summary = "1 answer as tieback would write them".to_string();
+        assert_eq!(judged(vec![asked("0.98", "0.98")]), (0, summary, Vec::new()));
     }
 
     #[test]
