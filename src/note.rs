@@ -90,6 +90,14 @@ fn too_much_text(sources: Sources) -> Filled {
     Filled { sources, problems: vec![problem], asked: Vec::new(), unmet: 0, rewrite: Rewrite::Unchanged }
 }
 
+/// The syntax of a note: everything in its blocks, pairs and tables.
+pub fn syntax(name: &str, text: &str) -> (Sources, Tree, Vec<Problem>) {
+    let mut sources = Sources::default();
+    let Some(base) = sources.add(name, text) else { return (sources, Tree::default(), Vec::new()) };
+    let read = read(text, base, find(text, base));
+    (sources, read.tree, read.problems)
+}
+
 /// A note as read: its places, its syntax, and what asks where.
 struct Read {
     found: Found,
