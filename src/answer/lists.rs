@@ -1,7 +1,9 @@
 //! Questions that a table or a list answers.
 
 use super::desk::{Desk, node_name};
-use super::figure::{Number, SET_NODES, Subject, chance_text, figure_text, measure, no_thing};
+use super::display::{chance_text, figure_text};
+use super::figure::{Number, SET_NODES, Subject, no_thing};
+use super::importance::measure;
 use super::reply::Reply;
 use crate::engine::cuts::{Minimal, single_points};
 use crate::engine::listing::{CutBy, Limits};

@@ -1,7 +1,8 @@
 //! Requirements: met, not met, or undecided, compared unrounded.
 
 use super::desk::Desk;
-use super::figure::{Number, figure_text, written};
+use super::display::{figure_text, written};
+use super::figure::Number;
 use crate::language::{ExprId, Limit};
 use crate::number::{Real, format_number};
 use crate::source::{Code, Problem};
