@@ -1,0 +1,92 @@
+//! Cutting a system out of everything that has been built.
+
+use super::{Leaf, NONE};
+use crate::language::ExprId;
+use crate::system::model::{Fault, Model, Out};
+use crate::system::structure::{Node, NodeId, Structure};
+
+/// A system cut out for the engine: the part of the structure under one root.
+#[derive(Clone, Debug)]
+pub struct System {
+    /// Nodes under the root, leaves numbered from 0.
+    pub structure: Structure,
+    /// The root.
+    pub root: NodeId,
+    /// The things, by leaf number.
+    pub leaves: Vec<Leaf>,
+    /// The label of each node, or [`NONE`]; few are ever written.
+    pub(super) labels: Vec<u32>,
+    /// Where each node was written.
+    pub places: Vec<Option<ExprId>>,
+    /// Nodes that stand in several places.
+    pub repeated: Vec<NodeId>,
+}
+
+impl Model<'_> {
+    /// Cuts out the part of the structure under an asked thing.
+    ///
+    /// # Errors
+    /// The fault that it was built with.
+    pub fn system(&mut self, asked: u32) -> Out<System> {
+        let built = &mut self.built;
+        let root = built.instances[asked as usize].out.unwrap_or(Err(Fault(0)))?;
+        // A table that all systems use in turn: hash tables for each took a
+        // fifth of the time that a small system needs in all.
+        built.cut.resize(built.structure.len(), NONE);
+        // Depth first in the order written, so that the numbers do not depend on
+        // what else was asked before.
+        const OPEN: u32 = NONE - 1;
+        let mut order: Vec<NodeId> = Vec::new();
+        let mut stack = vec![(root, 0_usize)];
+        built.cut[root.0 as usize] = OPEN;
+        while let Some((node, next)) = stack.last_mut() {
+            if let Some(&member) = built.structure.members(*node).get(*next) {
+                *next += 1;
+                let cut = &mut built.cut[member.0 as usize];
+                if *cut == NONE {
+                    *cut = OPEN;
+                    stack.push((member, 0));
+                }
+            } else {
+                built.cut[node.0 as usize] = order.len() as u32;
+                order.push(*node);
+                stack.pop();
+            }
+        }
+        let mut system = System {
+            structure: Structure::default(),
+            root: NodeId(built.cut[root.0 as usize]),
+            leaves: Vec::new(),
+            labels: Vec::with_capacity(order.len()),
+            places: Vec::with_capacity(order.len()),
+            repeated: Vec::new(),
+        };
+        let mut places = vec![0_u32; order.len()];
+        let mut members: Vec<NodeId> = Vec::new();
+        for old in &order {
+            match built.structure.node(*old) {
+                Node::Works => system.structure.works(),
+                Node::Leaf(leaf) => {
+                    system.leaves.push(built.leaves[leaf as usize]);
+                    system.structure.leaf(system.leaves.len() as u32 - 1)
+                }
+                Node::AtLeast { need, .. } => {
+                    members.clear();
+                    let olds = built.structure.members(*old).iter();
+                    members.extend(olds.map(|m| NodeId(built.cut[m.0 as usize])));
+                    for member in &members {
+                        places[member.0 as usize] += 1;
+                    }
+                    system.structure.at_least(need, &members)
+                }
+            };
+            system.places.push(built.origin.get(old.0 as usize).copied());
+            system.labels.push(built.names.get(old).copied().unwrap_or(NONE));
+        }
+        for old in &order {
+            built.cut[old.0 as usize] = NONE;
+        }
+        system.repeated = (0..places.len()).filter(|i| places[*i] > 1).map(|i| NodeId(i as u32)).collect();
+        Ok(system)
+    }
+}
