@@ -88,11 +88,17 @@ impl Reply {
             }
             Reply::List { entries, numbered, notes } => {
                 let mark = |i: usize| if *numbered { format!("{i}.") } else { "-".to_string() };
-                let entry = |(i, entry): (usize, &Vec<String>)| {
-                    let text = entry.iter().map(|l| prose(l)).collect::<Vec<_>>().join("; ");
-                    format!("{} {text}", mark(i + 1))
-                };
-                let mut lines: Vec<String> = entries.iter().enumerate().map(entry).collect();
+                let mut lines: Vec<String> = Vec::new();
+                for (i, entry) in entries.iter().enumerate() {
+                    let mark = mark(i + 1);
+                    let indent = " ".repeat(mark.len() + 1);
+                    for (at, line) in entry.iter().enumerate() {
+                        let lead = if at == 0 { format!("{mark} ") } else { indent.clone() };
+                        // A backslash at its end keeps a line of an entry a line of its own.
+                        let more = if at + 1 < entry.len() { "\\" } else { "" };
+                        lines.push(format!("{lead}{}{more}", prose(line)));
+                    }
+                }
                 // Below the last entry: a second list of its own would not be
                 // found again as a part of this answer.
                 let indent = if entries.is_empty() { 0 } else { mark(entries.len()).len() + 1 };
