@@ -6,7 +6,6 @@ use super::constants::REAL_TENS;
 use super::decimal;
 use super::functions::binary_exponent;
 use dashu_int::{IBig, UBig};
-use std::sync::LazyLock;
 
 /// Where a value goes that lies between two decimals.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -41,12 +40,11 @@ pub struct Digits {
 /// coarser bound the two ends must round alike.
 const TIE_BOUND: f64 = 8.3e-25; // 2^-80
 
-/// The doubles nearest to 10^-330 to 10^310.
-static TENS: LazyLock<Vec<f64>> = LazyLock::new(|| (-330..=310).map(|k| decimal::real(1, k).hi()).collect());
-
 /// The largest k with 10^k <= value, for a finite value above zero.
 fn decimal_exponent(value: Real) -> i32 {
-    let ten = |k: i32| TENS.get((k + 330) as usize).copied().unwrap_or(f64::INFINITY);
+    // Computed where it is needed: a table of all powers took more than half of
+    // the instructions that a small note takes in all.
+    let ten = |k: i32| decimal::real(1, i64::from(k)).hi();
     // 1233 / 4096 is log10(2) to within 2e-6: low by one at most.
     let mut k = ((binary_exponent(value.hi()) * 1233) >> 12) - 1;
     while value.hi() > ten(k + 1) || (value.hi() == ten(k + 1) && value >= decimal::real(1, i64::from(k + 1)))
