@@ -8,7 +8,7 @@ use crate::document::escape::{Context, escape, same_answer, same_block, unescape
 use crate::document::markdown::{Fence, Found, Pair, PairForm, Place, Table, find};
 pub use crate::document::patch::Rewrite;
 use crate::document::patch::{Edit, apply};
-use crate::language::{self, Line, Mark, Source, Tree, is_answer};
+use crate::language::{self, Line, Mark, Source, Tree, is_answer, is_answer_block, is_answer_line};
 use crate::source::{Code, Level, Problem, Sources, Span};
 use crate::steps::json as steps_json;
 use crate::system::{Fault, Model, Out};
@@ -150,8 +150,13 @@ fn grid_of<'a>(table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid
     let row = |row: &crate::document::markdown::Row| {
         row.cells.iter().map(|c| Source { text: slice(c.text), at: c.text.start }).collect::<Vec<_>>()
     };
-    let usable = table.rows.iter().map(|r| if r.too_many { Vec::new() } else { row(r) });
-    language::Grid { opener: table.opener, header: row(&table.header), rows: usable.collect() }
+    let broken = table.rows.iter().enumerate().filter(|(_, r)| r.too_many).map(|(i, _)| i).collect();
+    language::Grid {
+        opener: table.opener,
+        header: row(&table.header),
+        rows: table.rows.iter().map(row).collect(),
+        broken,
+    }
 }
 
 type Outcome = (Vec<Problem>, Vec<Asked>, usize, Rewrite);
@@ -415,13 +420,13 @@ impl Work<'_> {
         let error = matches!(reply, Reply::Error(_));
         let broken = matches!(statement.line, Line::Broken(_));
         let (old, stale) = match &read.found.places[statement.block as usize] {
-            Place::Fence(fence) => self.in_fence(fence, mark, &reply, broken),
-            Place::Pair(pair) => self.in_pair(pair, &reply, broken),
+            Place::Fence(fence) => self.in_fence(fence, mark, &reply, broken, model),
+            Place::Pair(pair) => self.in_pair(pair, &reply, broken, model),
             Place::Table(table) => {
                 let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
                     return;
                 };
-                self.in_table(table, block, row, column, &reply)
+                self.in_table(table, (block, row, column), &reply, model)
             }
         };
         let question = self.slice(statement.span).to_string();
@@ -492,7 +497,14 @@ impl Work<'_> {
         );
     }
 
-    fn in_fence(&mut self, fence: &Fence, mark: Mark, reply: &Reply, broken: bool) -> (String, bool) {
+    fn in_fence(
+        &mut self,
+        fence: &Fence,
+        mark: Mark,
+        reply: &Reply,
+        broken: bool,
+        model: &Model<'_>,
+    ) -> (String, bool) {
         let line = &fence.lines[mark.line as usize];
         let old_lines = old_answer_lines(self.text, self.base, fence, mark.line as usize);
         let mut old = self.slice(mark.answer).to_string();
@@ -502,10 +514,20 @@ impl Work<'_> {
             }
             old.push_str(self.slice(fence.lines[number].text).trim_start().trim_start_matches("? "));
         }
-        if !is_answer(self.slice(mark.answer)) {
+        if !answer_shaped(self.slice(mark.answer), model) {
             // A line in error may have its mark too early: `R(A ? ) ?` is one mistake.
             if !broken {
                 self.not_an_answer(mark.answer);
+            }
+            return (old, false);
+        }
+        // An answer stands on the question's line or on the lines below it, never on both;
+        // and the lines of a table or a list begin in ways of their own.
+        if let Some(first) = old_lines.clone().next()
+            && (!self.slice(mark.answer).is_empty() || !is_answer_line(self.slice(fence.lines[first].text)))
+        {
+            if !broken {
+                self.not_an_answer(fence.lines[first].text);
             }
             return (old, false);
         }
@@ -525,8 +547,13 @@ impl Work<'_> {
         (old, stale)
     }
 
-    fn in_pair(&mut self, pair: &Pair, reply: &Reply, broken: bool) -> (String, bool) {
+    fn in_pair(&mut self, pair: &Pair, reply: &Reply, broken: bool, model: &Model<'_>) -> (String, bool) {
         let old = pair.answer.map_or("", |a| self.slice(a)).to_string();
+        let in_lines = matches!(pair.form, PairForm::Block { on_line: false, .. });
+        if let Some(answer) = pair.answer.filter(|_| in_lines && !is_answer_block(&old)) {
+            self.not_an_answer(answer);
+            return (old, false);
+        }
         let line = reply.line();
         let edit = match (&line, pair.form) {
             (Some(line), form) => {
@@ -537,7 +564,8 @@ impl Work<'_> {
                 };
                 let single = !matches!(form, PairForm::Block { on_line: false, .. }) || pair.answer.is_none();
                 if let (Some(answer), true) = (pair.answer, single)
-                    && !is_answer(&unescape(&old))
+                    // A formatter may have wrapped the line that it stands on.
+                    && !answer_shaped(&unescape(&old), model)
                 {
                     if !broken {
                         self.not_an_answer(answer);
@@ -577,16 +605,15 @@ impl Work<'_> {
     fn in_table(
         &mut self,
         table: &Table,
-        block: usize,
-        row: usize,
-        column: usize,
+        (block, row, column): (usize, usize, usize),
         reply: &Reply,
+        model: &Model<'_>,
     ) -> (String, bool) {
         let Some(cell) = table.rows.get(row).and_then(|r| r.cells.get(column)) else {
             return (String::new(), false);
         };
         let old = self.slice(cell.text).to_string();
-        if !is_answer(&unescape(&old)) {
+        if !answer_shaped(&unescape(&old), model) {
             self.not_an_answer(cell.text);
             return (old, false);
         }
@@ -624,6 +651,12 @@ impl Work<'_> {
         }
         self.edits.sort_by_key(|e| (e.span.start, e.span.end));
     }
+}
+
+/// Whether a text is one that tieback writes, whatever blanks stand between its words.
+fn answer_shaped(text: &str, model: &Model<'_>) -> bool {
+    let text = text.split_whitespace().collect::<Vec<_>>().join(" ");
+    is_answer(&text, &|word| model.units.is_unit(word, &model.tree.names))
 }
 
 fn reply_to(

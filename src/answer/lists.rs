@@ -208,10 +208,23 @@ impl Desk {
         }
         let mut head = vec!["thing".to_string(), "F".to_string()];
         head.extend(COLUMNS.iter().map(|c| (*c).to_string()));
-        let rows = rows
+        let mut rows: Vec<Vec<String>> = rows
             .into_iter()
             .map(|(_, names, cells)| std::iter::once(folded(&names)).chain(cells).collect())
             .collect();
+        // What each column is, since other definitions are in use too.
+        const DEFINED: [&str; 9] = [
+            "definition",
+            "q",
+            "B",
+            "B·q/F",
+            "P(a cut set with it)/F",
+            "F(failed)/F",
+            "F/F(perfect)",
+            "B·q·(1 - q)",
+            "B·q",
+        ];
+        rows.push(DEFINED.iter().map(|d| (*d).to_string()).collect());
         Ok(Reply::Table { head, rows, foot: None })
     }
 

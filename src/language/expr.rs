@@ -256,7 +256,11 @@ impl Reader<'_> {
                     .mend("say how many of the list must work, as in `2 of (A, B, C)`"),
             );
         }
-        self.missing_operator("an operator or `)`")
+        let mut problem = self.missing_operator("an operator or `)`");
+        if problem.place != level.at {
+            problem = Box::new(problem.label(level.at, "still open from here"));
+        }
+        problem
     }
 
     /// Something stands directly after an operand.
@@ -413,6 +417,9 @@ impl Reader<'_> {
             levels.push(Level::new(Opened::Call(word), span.to(self.last_span()), false));
             return Ok(false);
         }
+        if !quoted && self.called(1) && words::LATER_QUESTIONS.contains(&text) {
+            return Err(Box::new(later(span, &format!("the question `{text}(…)`"))));
+        }
         if !quoted && self.called(1) {
             self.at += 2;
             levels.push(Level::new(Opened::Call(sym), span.to(self.last_span()), false));
@@ -558,7 +565,8 @@ impl Reader<'_> {
         match self.tok(ahead)? {
             Tok::Name { sym, quoted } => {
                 let text = self.tree.names.text(sym);
-                (quoted || !words::is_reserved(text)).then_some(sym)
+                // A line may begin with `year`, and a number may be counted in it.
+                (quoted || text == "year" || !words::is_reserved(text)).then_some(sym)
             }
             _ => None,
         }

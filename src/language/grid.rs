@@ -20,6 +20,8 @@ pub struct Grid<'a> {
     pub header: Vec<Source<'a>>,
     /// The rows under it.
     pub rows: Vec<Vec<Source<'a>>>,
+    /// Rows that are in error as they stand, by number; they define nothing.
+    pub broken: Vec<usize>,
 }
 
 /// What a column holds.
@@ -85,9 +87,14 @@ impl<'a> GridReader<'_, 'a> {
         let mut rows: Vec<RowParts> = Vec::new();
         let mut assemblies: Vec<(Sym, Span)> = Vec::new();
         let mut members: FxHashMap<Sym, Vec<ExprId>> = FxHashMap::default();
-        for cells in &self.grid.rows {
+        for (number, cells) in self.grid.rows.iter().enumerate() {
             let Some(name) = self.row_name(&columns, cells) else { continue };
-            match self.row(&columns, cells, name) {
+            let row = if self.grid.broken.contains(&number) {
+                Err(None)
+            } else {
+                self.row(&columns, cells, name).map_err(Some)
+            };
+            match row {
                 Ok((parts, assembly)) => {
                     if let Some((sym, span)) = assembly {
                         let list = members.entry(sym).or_insert_with(|| {
@@ -99,8 +106,18 @@ impl<'a> GridReader<'_, 'a> {
                     rows.push(parts);
                 }
                 Err(problem) => {
-                    self.problems.push(*problem);
+                    self.problems.extend(problem.map(|p| *p));
                     self.statement(Line::Broken(vec![name]), name.1);
+                    // The assembly keeps its broken part, and so has no answer: a
+                    // forgotten rate must not improve it.
+                    if let Some((sym, span)) = self.assembly_of(&columns, cells) {
+                        let member = self.tree.add(Expr::Name(name.0), name.1);
+                        let list = members.entry(sym).or_insert_with(|| {
+                            assemblies.push((sym, span));
+                            Vec::new()
+                        });
+                        list.push(member);
+                    }
                 }
             }
         }
@@ -114,6 +131,14 @@ impl<'a> GridReader<'_, 'a> {
                 self.define_statement((sym, span), value);
             }
         }
+    }
+
+    /// The assembly that a row says it belongs to.
+    fn assembly_of(&mut self, columns: &[Column], cells: &[Source<'a>]) -> Option<(Sym, Span)> {
+        let at = columns.iter().position(|c| matches!(c, Column::In))?;
+        let cell = cells.get(at).filter(|c| !c.text.is_empty())?;
+        let text = cell.text.replace("\\|", "|");
+        Some((self.tree.names.intern(text.trim_matches('`')), span_of(*cell)))
     }
 
     fn defined(&self) -> FxHashSet<Sym> {
@@ -205,7 +230,12 @@ impl<'a> GridReader<'_, 'a> {
                 _ => {}
             }
         }
-        if !clauses.is_empty() {
+        // A row of sums, or of a thing that only costs or weighs, takes no part.
+        let only_counted =
+            clauses.iter().all(|c| matches!(c.word, ClauseWord::Attribute | ClauseWord::Source));
+        let alone =
+            parts.value.is_none() && parts.qty.is_none() && parts.need.is_none() && assembly.is_none();
+        if !clauses.is_empty() && !(only_counted && alone) {
             parts.value = Some(self.with_clauses(parts.value, clauses, name.1)?);
         }
         if assembly.is_some() && parts.value.is_none() && parts.qty.is_none() && parts.need.is_none() {
@@ -436,6 +466,19 @@ impl<'a> GridReader<'_, 'a> {
             return Column::Met;
         }
         let word = question.split(['(']).next().unwrap_or("").split(" in ").next().unwrap_or("").trim();
+        if matches!(word, "cuts" | "paths" | "single points" | "rank" | "steps" | "assumptions" | "inputs") {
+            if complain {
+                self.problems.push(
+                    Problem::remark(
+                        Code::TableHeader,
+                        span_of(cell),
+                        format!("`{word}` has an answer of many lines, which fits no cell"),
+                    )
+                    .mend("ask it in a block of its own, or for the count of its entries"),
+                );
+            }
+            return Column::Foreign;
+        }
         if words::QUESTIONS.contains(&word) {
             return Column::Ask;
         }

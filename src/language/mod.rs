@@ -18,7 +18,7 @@ pub mod words;
 pub use grid::{CellAsk, Grid, ask_grid, read_grid};
 pub use print::{print, print_start};
 pub use read::{Source, read_block, read_expression, read_question};
-pub use shape::is_answer;
+pub use shape::{is_answer, is_answer_block, is_answer_line};
 pub use tree::written as written_name;
 pub use tree::*;
 

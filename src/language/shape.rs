@@ -47,19 +47,24 @@ fn plain(input: &str) -> IResult<&str, ()> {
     value(
         (),
         (
-            opt((char('~'), space0)),
             alt((recognize((alt((tag("1 - "), tag("100 - "), tag("1 in "))), number)), number)),
             opt(unit),
             opt(tag(" from bounds")),
-            opt(recognize((tag(" ("), take_till1(|c| c == ')'), char(')')))),
         ),
     )
     .parse(input)
 }
 
+/// A value that is not exact, with its interval.
+fn about(input: &str) -> IResult<&str, ()> {
+    let interval = recognize((tag(" ("), take_till1(|c| c == ')'), char(')')));
+    value((), (char('~'), space0, plain, opt(interval))).parse(input)
+}
+
 fn answer(input: &str) -> IResult<&str, ()> {
     alt((
         value((), all_consuming(plain)),
+        value((), all_consuming(about)),
         value((), all_consuming((tag("< "), number, opt(unit)))),
         value((), all_consuming((tag("> "), opt(alt((tag("1 - "), tag("100 - ")))), number, opt(unit)))),
         value((), all_consuming(tag("infinite"))),
@@ -72,14 +77,57 @@ fn answer(input: &str) -> IResult<&str, ()> {
 }
 
 /// Whether `text`, found right of a question mark, is something tieback wrote.
-pub fn is_answer(text: &str) -> bool {
+/// `is_unit` knows the units of the notes: `5 bananas` is nobody's answer.
+pub fn is_answer(text: &str, is_unit: &dyn Fn(&str) -> bool) -> bool {
     let text = text.trim();
-    text.is_empty() || text == "!" || answer(text).is_ok()
+    text.is_empty() || text == "!" || (answer(text).is_ok() && units_known(text, is_unit))
+}
+
+/// Whether the words of a value are units; texts after a colon say anything.
+fn units_known(text: &str, is_unit: &dyn Fn(&str) -> bool) -> bool {
+    if !text.starts_with(|c: char| c.is_ascii_digit() || matches!(c, '~' | '-' | '<' | '>')) {
+        return true;
+    }
+    let value = text.split(" (").next().unwrap_or(text).trim_end_matches(" from bounds");
+    let words = value.split(|c: char| c.is_whitespace() || matches!(c, '/' | '·' | '%' | '~'));
+    let mut words = words
+        .map(|w| w.split('^').next().unwrap_or(w))
+        .filter(|w| w.starts_with(|c: char| c.is_alphabetic() || c == '_') && *w != "in" && *w != "infinite");
+    let stroke_then_digit =
+        value.match_indices('/').any(|(i, _)| value[i + 1..].starts_with(|c: char| c.is_ascii_digit()));
+    !stroke_then_digit && words.all(is_unit)
+}
+
+/// Whether a line that follows a question is one of a table or a list of tieback's.
+pub fn is_answer_line(text: &str) -> bool {
+    let text = text.trim_start().strip_prefix('?').unwrap_or(text).trim();
+    let numbered =
+        text.split_once(". ").is_some_and(|(n, _)| n.bytes().all(|b| b.is_ascii_digit()) && !n.is_empty());
+    numbered
+        || ["order  ", "thing  ", "single point  ", "- ", "assumed: ", "… "]
+            .iter()
+            .any(|head| text.starts_with(head))
+        || text.ends_with(" for certain")
+}
+
+/// Whether the first line of a block between comments is one of tieback's.
+pub fn is_answer_block(text: &str) -> bool {
+    let first = text.lines().map(|l| l.trim_start_matches([' ', '>', '\t'])).find(|l| !l.trim().is_empty());
+    let Some(first) = first else { return true };
+    let cell = first.trim_start_matches('|').split('|').next().unwrap_or("").trim();
+    first.starts_with("! ")
+        || first.starts_with("- ")
+        || (first.starts_with('|') && matches!(cell, "order" | "thing" | "single point"))
+        || first.split_once(". ").is_some_and(|(n, _)| n.bytes().all(|b| b.is_ascii_digit()) && !n.is_empty())
 }
 
 #[cfg(test)]
 mod tests {
-    use super::is_answer;
+    use super::*;
+
+    fn is_answer(text: &str) -> bool {
+        super::is_answer(text, &|w| matches!(w, "h" | "kg" | "start" | "yr" | "kh"))
+    }
 
     #[test]
     fn answers_are_told_from_what_a_person_wrote() {
@@ -119,6 +167,11 @@ mod tests {
         }
         for no in [
             "see above",
+            "5 bananas",
+            "10/12",
+            "0.9 (see annex)",
+            "12 of",
+            "0.9 see_annex",
             "0.98 I think",
             "about 0.98",
             "!important",

@@ -55,6 +55,9 @@ impl Model<'_> {
                 self.mission = Some(self.exposure(phases, false, statement.span));
             }
         }
+        if let Some(fault) = self.twice("mission") {
+            self.mission = Some(Err(fault));
+        }
     }
 
     /// Reads an exposure: `10 h, 4 start`, or phases.

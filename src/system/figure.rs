@@ -221,7 +221,13 @@ impl Model<'_> {
         let owner = self.tree.names.text(self.def(def).name).to_string();
         let word = text[owner.len()..].trim_start_matches('.').to_string();
         let place = self.tree.span(expr);
-        let Some(item) = self.item_of_def(def)? else {
+        // `feed.pump[1].rate`: the path of a copy, then the clause.
+        let path = text.rsplit_once('.').filter(|(path, _)| path.len() > owner.len());
+        let (owner, word, item) = match path {
+            Some((path, word)) => (path.to_string(), word.to_string(), self.item_of_copy(expr, path)?),
+            None => (owner, word, self.item_of_def(def)?),
+        };
+        let Some(item) = item else {
             return Err(self.fault(
                 Problem::error(
                     Code::WrongKind,
@@ -255,6 +261,16 @@ impl Model<'_> {
         let Some(decimal) = Decimal::parse(self.sources.text(literal.number)) else {
             return Err(self.bad_literal(literal.number));
         };
+        if !decimal.to_real().is_finite() {
+            return Err(self.fault(
+                Problem::error(
+                    Code::OutsideRange,
+                    literal.number,
+                    "this number is beyond what can be calculated with",
+                )
+                .mend("numbers reach to 1e308; look at the exponent"),
+            ));
+        }
         match literal.suffix {
             Suffix::None => Ok(decimal_quantity(&decimal)),
             Suffix::Percent => Ok(decimal_quantity(&decimal.shift10(-2))),
@@ -293,6 +309,11 @@ impl Model<'_> {
         unit: crate::language::Unit,
         place: Span,
     ) -> Out<Quantity> {
+        if let Some(fault) = self.twice("year")
+            && super::units::is_year(self.tree.names.text(unit.word))
+        {
+            return Err(fault);
+        }
         let (dim, factor) = match self.units.resolve(unit, &self.tree.names) {
             Ok(found) => found,
             Err(problem) => {
@@ -516,7 +537,11 @@ impl Model<'_> {
 
 /// A decimal's value and complement, each rounded once.
 fn decimal_quantity(decimal: &Decimal) -> Quantity {
-    let mut quantity = Quantity::number(decimal.to_real());
+    // A number too small for the range is carried as the least one there is, and never as zero.
+    let least = Real::from(f64::from_bits(1));
+    let value = decimal.to_real();
+    let value = if value.is_zero() && !decimal.is_zero() { least } else { value };
+    let mut quantity = Quantity::number(value);
     quantity.complement = decimal.complement_to_real();
     quantity
 }

@@ -90,6 +90,11 @@ impl Item {
         }
         self.ageing.iter().find_map(|a| match (&a.pace, word) {
             (Pace::Rate(q), "rate") => Some(q.clone()),
+            (Pace::Over(chance, _) | Pace::Each(chance), "fails") => {
+                let mut quantity = Quantity::number(chance.fails());
+                quantity.complement = Some(chance.works());
+                Some(quantity)
+            }
             (Pace::Mean(q), "mttf" | "mtbf") if names.text(a.clause.name) == word => Some(q.clone()),
             _ => None,
         })

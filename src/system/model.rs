@@ -55,6 +55,8 @@ pub struct Model<'a> {
     /// Everything found wrong so far.
     pub problems: Vec<Problem>,
     by_name: Vec<u32>,
+    /// Settings that stand twice: what rests on one of them has no answer.
+    pub(super) set_twice: Vec<(String, Fault)>,
     /// Names that nothing defines, by the node that uses them; lines that mix operators.
     pub(super) faulty: FxHashMap<ExprId, Fault>,
     /// Names that nothing defines, with the one error of each.
@@ -83,6 +85,7 @@ impl<'a> Model<'a> {
             digits: 4,
             problems: Vec::new(),
             by_name: vec![NONE; tree.names.len()],
+            set_twice: Vec::new(),
             faulty: FxHashMap::default(),
             unknown: FxHashMap::default(),
             unknown_units: FxHashMap::default(),
@@ -325,6 +328,11 @@ impl<'a> Model<'a> {
         }
     }
 
+    /// The fault of a setting that stands twice.
+    pub(super) fn twice(&self, word: &str) -> Option<Fault> {
+        self.set_twice.iter().find(|(w, _)| w == word).map(|(_, f)| *f)
+    }
+
     pub(super) fn first_setting(&mut self, seen: &mut Option<Span>, word: &str, span: Span) -> bool {
         match *seen {
             None => {
@@ -332,11 +340,12 @@ impl<'a> Model<'a> {
                 true
             }
             Some(first) => {
-                self.fault(
+                let fault = self.fault(
                     Problem::error(Code::BadSetting, span, format!("`{word}` is set twice"))
                         .label(first, "first here")
                         .mend("a setting stands once in a note: delete one of the two"),
                 );
+                self.set_twice.push((word.to_string(), fault));
                 false
             }
         }

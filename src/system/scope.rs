@@ -23,24 +23,20 @@ enum Use {
 /// Two keys under which names that look alike are equal: one without case, one
 /// by the shapes of letters (Unicode Technical Standard 39 beyond ASCII).
 pub(super) fn look_alike_keys(name: &str) -> Vec<String> {
-    if name.is_ascii() {
-        let lower = name.to_ascii_lowercase();
-        let shapes: String = name
-            .chars()
-            .map(|c| match c {
-                'I' | '1' | 'l' => 'l',
-                'O' | '0' => 'o',
-                c => c.to_ascii_lowercase(),
-            })
-            .collect();
-        if shapes == lower {
-            return vec![lower];
-        }
-        // The mark keeps the two kinds of key apart.
-        return vec![lower, format!("~{shapes}")];
-    }
-    let shapes: String = skeleton(name).collect::<String>().to_lowercase();
-    vec![name.to_lowercase(), shapes.clone(), format!("~{shapes}")]
+    // Letters of other scripts become the Latin ones that they look like; what is
+    // then alike in small print is made one by hand: I, l, 1; O, 0; rn, m.
+    let latin: std::borrow::Cow<'_, str> =
+        if name.is_ascii() { name.into() } else { skeleton(name).collect::<String>().into() };
+    let shapes: String = latin
+        .chars()
+        .map(|c| match c {
+            'I' | '1' | 'l' => 'l',
+            'O' | 'o' | '0' => 'o',
+            c => c.to_ascii_lowercase(),
+        })
+        .collect();
+    // The mark keeps the two kinds of key apart.
+    vec![name.to_lowercase(), format!("~{}", shapes.replace("rn", "m"))]
 }
 
 impl Model<'_> {

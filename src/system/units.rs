@@ -29,6 +29,11 @@ const YEARS: &[&str] = &["yr", "year", "years"];
 
 const MASSES: &[(&str, f64)] = &[("kg", 1.0), ("g", 1e-3), ("t", 1e3)];
 
+/// Whether a word is the year, or years.
+pub(super) fn is_year(word: &str) -> bool {
+    YEARS.contains(&word)
+}
+
 /// The units that a set of notes knows.
 #[derive(Clone, Debug)]
 pub struct Units {
@@ -67,6 +72,16 @@ impl Units {
         }
         let seconds = TIMES.iter().find(|(w, _)| *w == word)?.1;
         Some(Real::from(seconds) / Real::from(3600.0))
+    }
+
+    /// Whether an answer of these notes may carry this word as its unit.
+    pub fn is_unit(&self, word: &str, names: &Names) -> bool {
+        self.hours(word).is_some()
+            || word == "FIT"
+            || MASSES.iter().any(|(w, _)| *w == word)
+            || names
+                .find(word)
+                .is_some_and(|s| self.exposures.contains_key(&s) || self.attribute_units.contains_key(&s))
     }
 
     /// What one of `unit` is, in base units.

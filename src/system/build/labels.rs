@@ -3,7 +3,7 @@
 use super::{Label, LabelName, Leaf, NONE, System};
 use crate::language::{ExprId, Sym};
 use crate::source::{Code, Problem};
-use crate::system::model::{Model, Out};
+use crate::system::model::{DefId, Fault, Model, Out};
 use crate::system::structure::NodeId;
 
 impl Model<'_> {
@@ -21,25 +21,75 @@ impl Model<'_> {
 
     /// `feed.pump[1]` as a thing: the copy with that label.
     pub(super) fn copy_by_path(&mut self, expr: ExprId, sym: Sym) -> Out<NodeId> {
+        let found = self.find_copy(expr, sym)?;
+        self.built.instances[found as usize].out.unwrap_or(Err(Fault(0)))
+    }
+
+    /// The item that a copy is, if it is one.
+    pub(in crate::system) fn item_of_copy(&mut self, expr: ExprId, name: &str) -> Out<Option<u32>> {
+        let Some(sym) = self.tree.names.find(name) else {
+            // The path itself stands nowhere: only its figure does.
+            return self.find_labelled(expr, name).map(|i| self.item_of_instance(i));
+        };
+        self.find_copy(expr, sym).map(|i| self.item_of_instance(i))
+    }
+
+    fn item_of_instance(&self, instance: u32) -> Option<u32> {
+        Some(self.built.instances[instance as usize].item).filter(|i| *i != NONE)
+    }
+
+    fn find_copy(&mut self, expr: ExprId, sym: Sym) -> Out<u32> {
         let text = self.tree.names.text(sym).to_string();
+        self.find_labelled(expr, &text)
+    }
+
+    /// The copy with a label: in full, or in short where there is only one such.
+    fn find_labelled(&mut self, expr: ExprId, text: &str) -> Out<u32> {
+        // Whatever order the lines stand in, every copy has been made.
+        for def in 0..self.defs.len() as u32 {
+            self.try_definition(DefId(def));
+        }
+        let tail = format!(".{text}");
+        let mut short: Vec<(String, u32)> = Vec::new();
         for index in 0..self.built.instances.len() {
             let instance = &self.built.instances[index];
-            if instance.frame == NONE || instance.label == NONE {
+            // Copies of a question have no owner and no lasting name.
+            if instance.frame == NONE || instance.out.is_none() || !self.is_owned(instance.label) {
                 continue;
             }
-            if let (Some(out), true) = (instance.out, self.label_text(instance.label) == text) {
-                return out;
+            let label = self.label_text(instance.label);
+            if label == text {
+                return Ok(index as u32);
+            }
+            if label.ends_with(&tail) || label.replace("[1]", "") == text {
+                short.push((label, index as u32));
             }
         }
+        if let [(_, only)] = short.as_slice() {
+            return Ok(*only);
+        }
         let place = self.tree.span(expr);
-        Err(self.fault(
-            Problem::error(
-                Code::UnknownName,
-                place,
-                format!("unknown name \"{text}\": no copy is called so"),
-            )
-            .mend("copies are named owner first, with their number, as in `feed.pump[1]`"),
-        ))
+        let problem = if short.is_empty() {
+            Problem::error(Code::UnknownName, place, format!("unknown name \"{text}\": no copy is called so"))
+                .mend("copies are named owner first, with their number, as in `feed.pump[1]`")
+        } else {
+            let some: Vec<&str> = short.iter().take(3).map(|(n, _)| n.as_str()).collect();
+            Problem::error(Code::AmbiguousName, place, format!("\"{text}\" may be {}", some.join(" or ")))
+                .mend("write its name in full, owner first")
+        };
+        Err(self.fault(problem))
+    }
+
+    /// Whether a label begins with the name of a definition.
+    fn is_owned(&self, label: u32) -> bool {
+        let mut at = label;
+        while let Some(found) = self.built.labels.get(at as usize) {
+            if found.parent == NONE {
+                return found.index == 0;
+            }
+            at = found.parent;
+        }
+        false
     }
 
     /// The label as text: owner first, copies numbered.
