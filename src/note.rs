@@ -489,7 +489,7 @@ impl Work<'_> {
 
     fn not_an_answer(&mut self, place: Span) {
         let text = self.slice(place);
-        let shown: String = text.chars().take(40).collect();
+        let shown: String = text.trim().lines().next().unwrap_or("").chars().take(40).collect();
         self.problems.push(
             Problem::error(Code::NotAnAnswer, place, format!("`{shown}` is not shaped like an answer, and stays"))
                 .mend("what stands right of a `?` is tieback's: move your text before the question, or behind a number sign as a comment")

@@ -126,7 +126,7 @@ mod tests {
     use super::*;
 
     fn is_answer(text: &str) -> bool {
-        super::is_answer(text, &|w| matches!(w, "h" | "kg" | "start" | "yr" | "kh"))
+        super::is_answer(text, &|w| matches!(w, "h" | "kg" | "start" | "yr" | "kh" | "start-up" | "warm-up"))
     }
 
     #[test]
