@@ -13,6 +13,7 @@ use crate::source::{Code, Level, Problem, Sources, Span};
 use crate::steps::json as steps_json;
 use crate::system::{Fault, Model, Out};
 use std::collections::BTreeMap;
+use std::sync::Arc;
 
 /// One question and what came of it.
 #[derive(Clone, Debug)]
@@ -63,8 +64,14 @@ pub enum StepsForm {
 
 /// Fills a note: finds its questions and answers them.
 pub fn fill(name: &str, text: &str) -> Filled {
+    fill_shared(name, Arc::from(text))
+}
+
+/// The same for a text that the caller goes on using: a large note is held once.
+pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
     let mut sources = Sources::default();
-    let Some(base) = sources.add(name, text) else { return too_much_text(sources) };
+    let Some(base) = sources.add(name, text.clone()) else { return too_much_text(sources) };
+    let text: &str = &text;
     let found = find(text, base);
     if found.places.is_empty() {
         let mut problems = found.problems;

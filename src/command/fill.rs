@@ -9,6 +9,7 @@ use crate::source::{Code, Problem, Span};
 use clap::error::ErrorKind;
 use clap::{Args, CommandFactory};
 use std::path::{Path, PathBuf};
+use std::sync::Arc;
 
 /// Write the answers after their questions, in place
 #[derive(Args, Debug)]
@@ -51,7 +52,8 @@ impl Fill {
                 return outcome;
             }
         };
-        let mut outcome = Outcome::new(input, note::fill(&input.name(), &text));
+        let text: Arc<str> = text.into();
+        let mut outcome = Outcome::new(input, note::fill_shared(&input.name(), text.clone()));
         let patched = match std::mem::replace(&mut outcome.filled.rewrite, Rewrite::Unchanged) {
             Rewrite::Patched(bytes) => Some(bytes),
             Rewrite::Unchanged => None,
@@ -59,14 +61,14 @@ impl Fill {
         let (path, bytes, read) = match target {
             Target::Output => {
                 outcome.changed = patched.is_some();
-                outcome.output = Some(patched.unwrap_or_else(|| text.into_bytes()));
+                outcome.output = Some(patched.unwrap_or_else(|| text.as_bytes().to_vec()));
                 return outcome;
             }
             Target::InPlace(path) => match patched {
                 Some(bytes) => (path, bytes, Some(text.as_bytes())),
                 None => return outcome, // a file that stays as it is is not opened for writing
             },
-            Target::Elsewhere(path) => (path, patched.unwrap_or_else(|| text.clone().into_bytes()), None),
+            Target::Elsewhere(path) => (path, patched.unwrap_or_else(|| text.as_bytes().to_vec()), None),
         };
         match files::save(path, read, &bytes) {
             Ok(()) => {

@@ -2,7 +2,7 @@
 
 use std::fmt;
 use std::fs::{self, File, Metadata, OpenOptions};
-use std::io::{self, Seek, SeekFrom, Write};
+use std::io::{self, Read, Seek, SeekFrom, Write};
 use std::path::{Path, PathBuf};
 
 /// A file that could not be read or written.
@@ -111,11 +111,13 @@ pub fn save(path: &Path, read: Option<&[u8]>, bytes: &[u8]) -> Result<Saved, Fil
         let written = OpenOptions::new().write(true).open(&real).and_then(|mut f| f.write_all(bytes));
         return written.map_err(|e| trouble(&e)).map(|()| Saved::Written);
     }
-    let old = fs::read(&real).map_err(|e| trouble(&e))?;
-    if old == bytes {
+    // Compared piece by piece: the whole old file once more would be held beside both.
+    if holds(&real, bytes).map_err(|e| trouble(&e))? {
         return Ok(Saved::Unchanged);
     }
-    if read.is_some_and(|read| read != old) {
+    if let Some(read) = read
+        && !holds(&real, read).map_err(|e| trouble(&e))?
+    {
         return Err(FileTrouble::new(path, "it was changed by somebody else meanwhile", "run again"));
     }
     if meta.permissions().readonly() {
@@ -126,10 +128,10 @@ pub fn save(path: &Path, read: Option<&[u8]>, bytes: &[u8]) -> Result<Saved, Fil
         ));
     }
     let done = if links(&meta) > 1 {
-        write_through(&real, &old, bytes)
+        write_over(&real, bytes)
     } else {
         match replace(&real, Some(&meta), bytes) {
-            Err(e) if e.kind() == io::ErrorKind::Unsupported => write_through(&real, &old, bytes),
+            Err(e) if e.kind() == io::ErrorKind::Unsupported => write_over(&real, bytes),
             Err(e) if e.kind() == io::ErrorKind::PermissionDenied => {
                 return Err(FileTrouble::new(
                     path,
@@ -141,6 +143,29 @@ pub fn save(path: &Path, read: Option<&[u8]>, bytes: &[u8]) -> Result<Saved, Fil
         }
     };
     done.map_err(|e| trouble(&e)).map(|()| Saved::Written)
+}
+
+/// Writes into the file itself, keeping its old bytes at hand until that is done.
+fn write_over(path: &Path, bytes: &[u8]) -> io::Result<()> {
+    let old = fs::read(path)?;
+    write_through(path, &old, bytes)
+}
+
+/// Whether a file holds exactly these bytes.
+fn holds(path: &Path, bytes: &[u8]) -> io::Result<bool> {
+    let mut file = fs::File::open(path)?;
+    if file.metadata()?.len() != bytes.len() as u64 {
+        return Ok(false);
+    }
+    let mut piece = vec![0; 64 * 1024];
+    let mut rest = bytes;
+    loop {
+        match file.read(&mut piece)? {
+            0 => return Ok(rest.is_empty()),
+            n if rest.get(..n) == Some(&piece[..n]) => rest = &rest[n..],
+            _ => return Ok(false),
+        }
+    }
 }
 
 /// Writes a new file beside the old one and puts it in its place.
