@@ -258,10 +258,8 @@ fn bad_files_are_told_apart() {
     assert!(cause(replaced(&old, "xl/sharedStrings.xml", strings), &usual).contains("document type"));
     let utf16: Vec<u8> = "<worksheet/>".encode_utf16().flat_map(u16::to_le_bytes).collect();
     assert!(cause(replaced(&old, part, &utf16), &usual).contains("UTF-16"));
-    assert!(
-        cause(replaced(&old, part, b"<worksheet><sheetData><row>"), &usual).contains("broken")
-            || cause(replaced(&old, part, b"<worksheet><sheetData><row>"), &usual).contains("ends within")
-    );
+    let cut = cause(replaced(&old, part, b"<worksheet><sheetData><row>"), &usual);
+    assert!(cut.contains("broken") || cut.contains("ends within"), "{cut}");
     let twice = b"<worksheet><sheetData><row r='1'><c r='A1'/><c r='A1'/></row></sheetData></worksheet>";
     assert!(cause(replaced(&old, part, twice), &usual).contains("cell A1: rows or cells stand twice"));
     let mut encrypted = vec![0xd0, 0xcf, 0x11, 0xe0, 0xa1, 0xb1, 0x1a, 0xe1];
@@ -297,7 +295,7 @@ fn cut_files_never_panic() {
     {
         for end in (0..bytes.len()).step_by(64) {
             let cut = open(name, bytes[..end].to_vec(), &Limits::default());
-            assert!(cut.is_err() || name.ends_with("xls"), "{name} {end}");
+            assert!(cut.is_err(), "{name} {end}");
         }
     }
 }

@@ -24,9 +24,54 @@ pub(super) fn open_xls(bytes: Vec<u8>, limits: &Limits) -> Result<Book, BookTrou
             "save it without a password, in the spreadsheet program that wrote it",
         ));
     }
+    if !whole(&bytes) {
+        return Err(BookTrouble::file("it is cut short or damaged", "fetch or save the workbook again"));
+    }
     let book = Xls::new(Cursor::new(bytes.as_slice())).map_err(|e| broken(&e))?;
     let read = read(book, "xls", limits)?;
     Ok(read.book(bytes, limits))
+}
+
+/// Whether every sector that a compound file's table of sectors speaks of lies
+/// within the file. calamine trusts the table.
+fn whole(bytes: &[u8]) -> bool {
+    let word = |at: usize| bytes.get(at..at + 4).map(|b| u32::from_le_bytes([b[0], b[1], b[2], b[3]]));
+    let Some(&shift @ (9 | 12)) = bytes.get(30) else { return false };
+    let size = 1usize << shift;
+    let sectors = bytes.len() / size;
+    let inside = |id: u32| (id as usize) < sectors.saturating_sub(1);
+    let Some(mut tables) = word(44) else { return false };
+    // The first 109 tables are named in the header, more in sectors of names.
+    let mut names: Vec<u32> = (0..109).filter_map(|i| word(76 + 4 * i)).collect();
+    let (mut more, mut visited) = (word(68).unwrap_or(u32::MAX), 0);
+    while more < 0xffff_fff0 {
+        visited += 1;
+        if !inside(more) || visited > sectors {
+            return false;
+        }
+        let start = (more as usize + 1) * size;
+        names.extend((0..size / 4 - 1).filter_map(|i| word(start + 4 * i)));
+        more = word(start + size - 4).unwrap_or(u32::MAX);
+    }
+    let mut sector = 0u32;
+    for name in names {
+        if tables == 0 {
+            break;
+        }
+        tables -= 1;
+        if !inside(name) {
+            return false;
+        }
+        let start = (name as usize + 1) * size;
+        for entry in (0..size / 4).filter_map(|i| word(start + 4 * i)) {
+            let used = entry != u32::MAX;
+            if used && !inside(sector) || entry < 0xffff_fff0 && !inside(entry) {
+                return false;
+            }
+            sector = sector.saturating_add(1);
+        }
+    }
+    tables == 0
 }
 
 /// Reads an xlsb.

@@ -213,6 +213,12 @@ impl Packed {
         Packed { value: 0, look, column, sort: Sort::Empty, flags: u8::from(formula) * FORMULA }
     }
 
+    /// The same in another column.
+    pub(super) fn moved(mut self, column: u32) -> Packed {
+        self.column = u16::try_from(column.min(LAST_COLUMN)).unwrap_or(0);
+        self
+    }
+
     pub(super) fn number(&mut self, value: f64) {
         (self.sort, self.value) = (Sort::Number, value.to_bits());
     }

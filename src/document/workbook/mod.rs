@@ -252,7 +252,8 @@ pub fn open(name: &str, bytes: Vec<u8>, limits: &Limits) -> Result<Book, BookTro
     }
     let mut package = package::Package::open(&bytes, limits)?;
     if package.holds("content.xml") {
-        return ods::open(package, &bytes, limits).map(|read| read.book(bytes.clone(), limits));
+        let read = ods::open(package, limits)?;
+        return Ok(read.book(bytes, limits));
     }
     let workbook = xlsx::workbook_part(&mut package)?;
     if workbook.ends_with(".bin") {
