@@ -71,6 +71,8 @@ fn only_answers_change() {
             AnswerValue::Clear => assert_eq!(found, Data::Empty),
         }
     }
+    // For looking at it in a spreadsheet program.
+    std::fs::write(format!("{}/filled-office.ods", env!("CARGO_TARGET_TMPDIR")), &new).unwrap();
     let again = open("office.ods", new.clone(), &Limits::default()).unwrap();
     assert_eq!(again.write(&answers).unwrap(), new);
     assert_eq!(again.sheets()[0].at(6, 6).value, Value::Text("none: no  trial <yet>\nand more"));

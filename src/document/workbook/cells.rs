@@ -3,7 +3,7 @@
 //! A parts list may hold a million cells. Each takes sixteen bytes here and
 //! texts are kept once, so that a sheet in memory is smaller than its XML.
 
-use std::hash::{BuildHasher, Hash, Hasher};
+use std::hash::BuildHasher;
 
 use rustc_hash::FxBuildHasher;
 
@@ -155,10 +155,9 @@ impl Texts {
 
     /// Where `text` stands or would stand.
     fn slot(&self, text: &str) -> usize {
-        let mut hasher = FxBuildHasher.build_hasher();
-        text.hash(&mut hasher);
+        let hash = FxBuildHasher.hash_one(text);
         let mask = self.slots.len() - 1;
-        let mut slot = usize::try_from(hasher.finish() & mask as u64).unwrap_or(0);
+        let mut slot = usize::try_from(hash & mask as u64).unwrap_or(0);
         while self.slots[slot] != u32::MAX && self.get(self.slots[slot]) != text {
             slot = (slot + 1) & mask;
         }
@@ -219,6 +218,11 @@ impl Packed {
         self
     }
 
+    /// Takes over another cell's value.
+    pub(super) fn take(&mut self, other: &Packed) {
+        (self.sort, self.value) = (other.sort, other.value);
+    }
+
     pub(super) fn number(&mut self, value: f64) {
         (self.sort, self.value) = (Sort::Number, value.to_bits());
     }
@@ -263,17 +267,6 @@ impl Grid {
 
     pub(super) fn len(&self) -> usize {
         self.cells.len()
-    }
-
-    /// Visits all cells in the order of the file, until `visit` says no.
-    pub(super) fn each_mut(&mut self, mut visit: impl FnMut(u32, &mut Packed) -> bool) {
-        for index in 0..self.rows.len() {
-            let span = self.span(index);
-            let row = self.rows[index].0;
-            if !self.cells[span].iter_mut().all(|cell| visit(row, cell)) {
-                return;
-            }
-        }
     }
 
     pub(super) fn has_formula(&self) -> bool {

@@ -90,10 +90,9 @@ impl<'a> Tables<'a> {
         match met {
             Met::Table(tag) => self.begin(&tag),
             Met::Columns(first, count, style) => {
-                if let Some(look) = style.map(|style| self.look(style)).filter(|look| *look != 0) {
-                    if let Some(sheet) = self.sheets.last_mut() {
-                        sheet.grid.columns.push((first, first + count - 1, look));
-                    }
+                let look = style.map(|style| self.look(style)).filter(|look| *look != 0);
+                if let (Some(look), Some(sheet)) = (look, self.sheets.last_mut()) {
+                    sheet.grid.columns.push((first, first + count - 1, look));
                 }
             }
             Met::Row(row) => self.row(&row)?,

@@ -5,7 +5,6 @@ use std::collections::BTreeMap;
 use super::ods_styles::OdsStyles;
 use super::ods_table::{CellItem, Met, RowItem, cells, walk};
 use super::package::Package;
-use super::xlsx_write::patched;
 use super::xml::{Kind, Tags, XmlTrouble, escape, retag, unescape};
 use super::{Answer, AnswerValue, Book, BookTrouble, number_text};
 use crate::document::patch::{Edit, Rewrite, apply};
@@ -59,11 +58,10 @@ pub(super) fn write(book: &Book, answers: &[Vec<&Answer>]) -> Result<Vec<u8>, Bo
         return Ok(book.bytes.clone());
     }
     edits.extend(patch.styles.edit());
-    match patched(xml, &edits, CONTENT)? {
+    drop(patch.styles);
+    match content.edited(edits) {
         None => Ok(book.bytes.clone()),
-        Some(new) => {
-            Package::rewrite(&book.bytes, BTreeMap::from([(CONTENT.into(), (content.without_text(), new))]))
-        }
+        Some(edited) => Package::rewrite(&book.bytes, BTreeMap::from([(CONTENT.into(), edited)])),
     }
 }
 
@@ -152,6 +150,10 @@ impl Patch<'_> {
             let mut at = cell.column;
             while let Some(answer) = due.get(next).filter(|a| a.column < width) {
                 next += 1;
+                // The readers of a file may differ on what a merged range hides.
+                if cell.covered {
+                    return Err("an answer's cell lies hidden in a merged range".into());
+                }
                 let single = repeated(element, REPEAT, 1)?;
                 let Some(new) = self.cell(text, &cell, answer, default.as_deref()) else { continue };
                 if new == single {

@@ -2,13 +2,14 @@
 
 use std::borrow::Cow;
 use std::collections::BTreeMap;
-use std::io::{Cursor, Read, Write};
+use std::io::{BufWriter, Cursor, Read, Write};
 
 use zip::write::SimpleFileOptions;
 use zip::{CompressionMethod, ZipArchive, ZipWriter};
 
 use super::xml::Tags;
 use super::{BookTrouble, Limits};
+use crate::document::patch::Edit;
 
 /// A part of a package as text.
 #[derive(Clone, PartialEq, Eq, Debug)]
@@ -20,14 +21,36 @@ pub(super) struct Part {
 }
 
 impl Part {
-    /// The part with nothing but its form.
-    pub(super) fn without_text(&self) -> Part {
-        Part { mark: self.mark, xml: String::new() }
+    /// The part with these edits; `None` if they change nothing.
+    pub(super) fn edited(self, mut edits: Vec<Edit>) -> Option<Edited> {
+        edits.retain(|edit| self.xml.get(edit.span.clone()) != Some(edit.text.as_str()));
+        edits.sort_by_key(|edit| (edit.span.start, edit.span.end));
+        (!edits.is_empty()).then_some(Edited { part: self, edits })
     }
+}
 
-    /// The bytes that the zip holds for `xml` in place of this part's text.
-    fn bytes(&self, xml: String) -> Vec<u8> {
-        if self.mark { ["\u{feff}".as_bytes(), xml.as_bytes()].concat() } else { xml.into_bytes() }
+/// A part and its edits in order. They are put together only on their way into
+/// the zip, so that a large sheet is in memory once.
+pub(super) struct Edited {
+    part: Part,
+    edits: Vec<Edit>,
+}
+
+impl Edited {
+    fn write(&self, out: &mut impl Write) -> std::io::Result<()> {
+        let invalid = || std::io::Error::other("two edits overlap");
+        if self.part.mark {
+            out.write_all("\u{feff}".as_bytes())?;
+        }
+        let mut at = 0;
+        for edit in &self.edits {
+            let before = self.part.xml.get(at..edit.span.start).ok_or_else(invalid)?;
+            out.write_all(before.as_bytes())?;
+            out.write_all(edit.text.as_bytes())?;
+            at = edit.span.end;
+        }
+        let rest = self.part.xml.get(at..).ok_or_else(invalid)?;
+        out.write_all(rest.as_bytes())
     }
 }
 
@@ -145,7 +168,7 @@ impl<'a> Package<'a> {
     /// entry is copied as it is, in the same order.
     pub(super) fn rewrite(
         bytes: &[u8],
-        mut changed: BTreeMap<String, (Part, String)>,
+        mut changed: BTreeMap<String, Edited>,
     ) -> Result<Vec<u8>, BookTrouble> {
         let failed = |e: &dyn std::fmt::Display| {
             BookTrouble::file(
@@ -159,7 +182,7 @@ impl<'a> Package<'a> {
         for index in 0..archive.len() {
             let entry = archive.by_index_raw(index).map_err(|e| failed(&e))?;
             let name = entry.name().map_err(|e| failed(&e))?.into_owned();
-            let Some((part, xml)) = changed.remove(&name) else {
+            let Some(edited) = changed.remove(&name) else {
                 out.raw_copy_file(entry).map_err(|e| failed(&e))?;
                 continue;
             };
@@ -172,10 +195,11 @@ impl<'a> Package<'a> {
             if let Some(time) = entry.last_modified() {
                 options = options.last_modified_time(time);
             }
-            let new = part.bytes(xml);
-            options = options.large_file(new.len() >= u32::MAX as usize);
+            let size = edited.edits.iter().fold(edited.part.xml.len(), |n, e| n.saturating_add(e.text.len()));
+            options = options.large_file(size >= u32::MAX as usize / 2);
             out.start_file(name, options).map_err(|e| failed(&e))?;
-            out.write_all(&new).map_err(|e| failed(&e))?;
+            let mut buffer = BufWriter::with_capacity(1 << 16, &mut out);
+            edited.write(&mut buffer).and_then(|()| buffer.flush()).map_err(|e| failed(&e))?;
         }
         out.finish().map(Cursor::into_inner).map_err(|e| failed(&e))
     }

@@ -64,11 +64,18 @@ pub(super) struct Walk<'a> {
     next_row: u32,
     next_column: u32,
     in_data: bool,
+    /// The cell whose content is looked into; every cell if `None`.
+    only: Option<Option<(u32, u32)>>,
 }
 
 impl<'a> Walk<'a> {
     pub(super) fn new(xml: &'a str) -> Walk<'a> {
-        Walk { xml, tags: Tags::new(xml), row: 0, next_row: 0, next_column: 0, in_data: false }
+        Walk { xml, tags: Tags::new(xml), row: 0, next_row: 0, next_column: 0, in_data: false, only: None }
+    }
+
+    /// Looks from now on only into this cell, and passes over all others.
+    pub(super) fn only(&mut self, cell: Option<(u32, u32)>) {
+        self.only = Some(cell);
     }
 
     /// The next item; `None` at the end.
@@ -162,8 +169,10 @@ impl<'a> Walk<'a> {
             return Err(format!("a cell of row {} stands in row {}", cell.row + 1, self.row + 1));
         }
         self.next_column = cell.column + 1;
-        if cell.tag.kind == Kind::Open {
-            self.content(&mut cell)?;
+        match self.only {
+            Some(only) if only != Some((cell.row, cell.column)) => cell.end = self.tags.leap(&cell.tag)?,
+            _ if cell.tag.kind == Kind::Open => self.content(&mut cell)?,
+            _ => {}
         }
         Ok(Item::Cell(cell))
     }

@@ -3,6 +3,7 @@
 use std::collections::BTreeMap;
 use std::io::Cursor;
 use std::sync::Arc;
+use std::sync::mpsc::{SyncSender, sync_channel};
 
 use calamine::{DataRef, ExcelDateTime, Reader, Xlsx};
 
@@ -100,7 +101,6 @@ pub(super) fn open(
     let list = listed(&list.xml).map_err(|e| BookTrouble::part(workbook, e))?;
 
     let mut sheets: Vec<Sheet> = Vec::new();
-    let mut cells = 0;
     for Listed { name, visible, relation } in list {
         let Some((kind, part)) = relations.get(&relation).filter(|(_, part)| package.holds(part)) else {
             return Err(BookTrouble::sheet(&name, "its part is missing", "save the workbook again"));
@@ -115,19 +115,57 @@ pub(super) fn open(
                 "rename one of the two",
             ));
         }
-        let xml = package.part(part)?.xml;
-        let (mut grid, protected) =
-            scan(&xml, limits.cells - cells).map_err(|e| BookTrouble::part(part, e))?;
-        cells += grid.len() as u64;
-        finish(&mut grid, &name)?;
-        sheets.push(Sheet { name, visible, protected, grid, part: part.clone(), shared: Arc::default() });
+        let empty = Grid::default();
+        sheets.push(Sheet {
+            name,
+            visible,
+            protected: false,
+            grid: empty,
+            part: part.clone(),
+            shared: Arc::default(),
+        });
     }
     let signed = package.names().iter().any(|name| name.starts_with("_xmlsignatures/"));
     let read_only = signed.then(|| "it is signed, and every change would break the signature".to_string());
-    drop(package);
-
     let mut texts = Texts::default();
-    values(bytes, &mut sheets, &mut texts)?;
+    let mut book = None;
+    let mut left = limits.cells;
+    for sheet in &mut sheets {
+        // Checked before calamine sees it.
+        let xml = package.part(&sheet.part)?.xml;
+        // calamine reads beside the scan and hands its values over in batches: neither waits long for
+        // the other, and no more than a few batches are in memory.
+        let (send, receive) = sync_channel(8);
+        let (scanned, read) = std::thread::scope(|scope| {
+            let name = sheet.name.as_str();
+            let reading = scope.spawn(|| values(bytes, &mut book, name, &mut texts, send));
+            let mut batch = Vec::new().into_iter();
+            let next = || loop {
+                match batch.next() {
+                    Some(value) => return Some(value),
+                    None => batch = Vec::into_iter(receive.recv().ok()?),
+                }
+            };
+            let scanned = scan(&xml, left, next);
+            drop(receive);
+            let read = reading.join().unwrap_or_else(|_| Err(broken(Some(name), &"its values are broken")));
+            (scanned, read)
+        });
+        // Where one of the two stops, the other misses its cells; the first cause is the one to show.
+        let (mut grid, protected) = match (scanned, read) {
+            (Ok(scanned), Ok(())) => scanned,
+            (Err(cause), Err(trouble)) if cause == DIFFER => return Err(trouble),
+            (Ok(_), Err(trouble)) => return Err(trouble),
+            (Err(cause), _) => {
+                let trouble = BookTrouble::part(&sheet.part, cause);
+                return Err(BookTrouble { sheet: Some(sheet.name.clone()), ..trouble });
+            }
+        };
+        drop(xml);
+        left -= grid.len() as u64;
+        finish(&mut grid, &sheet.name)?;
+        (sheet.grid, sheet.protected) = (grid, protected);
+    }
     Ok(Read {
         storage: Storage::Xlsx { workbook: workbook.into(), styles },
         sheets,
@@ -136,9 +174,15 @@ pub(super) fn open(
     })
 }
 
-/// What a sheet part says of its cells beside their values, and whether the
-/// sheet is protected.
-fn scan(xml: &str, limit: u64) -> Result<(Grid, bool), String> {
+/// The two readers do not agree.
+const DIFFER: &str = "its cells are numbered in two ways";
+
+/// A value and its row.
+type Valued = (u32, Packed);
+
+/// The cells of a sheet part and whether the sheet is protected. `next` gives
+/// calamine's values, which must be those of the same cells in the same order.
+fn scan(xml: &str, limit: u64, mut next: impl FnMut() -> Option<Valued>) -> Result<(Grid, bool), String> {
     let mut grid = Grid::default();
     let mut protected = false;
     let mut walk = Walk::new(xml);
@@ -152,9 +196,15 @@ fn scan(xml: &str, limit: u64) -> Result<(Grid, bool), String> {
                 if grid.len() as u64 >= limit {
                     return Err("it holds more cells than the limit allows".into());
                 }
+                let (row, value) = next().ok_or(DIFFER)?;
+                if (row, u32::from(value.column)) != (cell.row, cell.column) {
+                    return Err(DIFFER.into());
+                }
                 let mut packed = Packed::new(cell.column, cell.style, cell.formula.is_some());
                 if cell.formula.is_some() && !cell.value {
                     packed.set(Sort::NoCache, 0);
+                } else {
+                    packed.take(&value);
                 }
                 grid.arrays
                     .extend(cell.formula.as_ref().and_then(|f| f.fills()).filter(|b| b.first != b.last));
@@ -163,66 +213,79 @@ fn scan(xml: &str, limit: u64) -> Result<(Grid, bool), String> {
             Item::Dimension(_) | Item::Data(_) | Item::DataEnd(_) | Item::RowEnd(_) => {}
         }
     }
-    Ok((grid, protected))
+    if next().is_some() { Err(DIFFER.into()) } else { Ok((grid, protected)) }
 }
 
-/// Fills in the values of all sheets.
-fn values(bytes: &[u8], sheets: &mut [Sheet], texts: &mut Texts) -> Result<(), BookTrouble> {
-    let broken = |e: &dyn std::fmt::Display| {
-        BookTrouble::file(
-            format!("it cannot be read: {e}"),
-            "open it in a spreadsheet program and save it again",
-        )
-    };
-    let mut book = Xlsx::new(Cursor::new(bytes)).map_err(|e| broken(&e))?;
-    // Shared texts keep their place while the book is open: the place is their key.
-    let mut shared: rustc_hash::FxHashMap<(usize, usize), u32> = rustc_hash::FxHashMap::default();
-    for sheet in sheets {
-        let name = sheet.name.clone();
-        let broken = |e: &dyn std::fmt::Display| BookTrouble { sheet: Some(name.clone()), ..broken(e) };
-        let differs = || broken(&"its cells are numbered in two ways");
-        let mut reader = book.worksheet_cells_reader(&name).map_err(|e| broken(&e))?;
-        let mut failed = None;
-        sheet.grid.each_mut(|row, packed| {
-            let cell = match reader.next_cell() {
-                Ok(Some(cell)) if cell.get_position() == (row, u32::from(packed.column)) => cell,
-                Ok(_) => {
-                    failed = Some(differs());
-                    return false;
-                }
-                Err(e) => {
-                    let at = super::a1(row, u32::from(packed.column));
-                    failed = Some(BookTrouble { cell: Some(at), ..broken(&e) });
-                    return false;
-                }
-            };
-            if packed.sort == Sort::NoCache {
-                return true;
-            }
-            match cell.get_value() {
-                DataRef::Empty => {}
-                DataRef::Int(i) => packed.number(*i as f64),
-                DataRef::Float(f) => packed.number(*f),
-                DataRef::Bool(b) => packed.set(Sort::Bool, u32::from(*b)),
-                DataRef::String(s) => packed.set(Sort::Text, texts.add(s)),
-                DataRef::SharedString(s) => {
-                    let key = (s.as_ptr() as usize, s.len());
-                    packed.set(Sort::Text, *shared.entry(key).or_insert_with(|| texts.add(s)));
-                }
-                DataRef::DateTime(d) => packed.set(Sort::Date, texts.add(&iso(d))),
-                DataRef::DateTimeIso(s) | DataRef::DurationIso(s) => packed.set(Sort::Date, texts.add(s)),
-                DataRef::Error(e) => packed.set(Sort::Error, texts.add(&e.to_string())),
-            }
-            true
-        });
-        if let Some(failed) = failed {
-            return Err(failed);
+/// What calamine has read so far.
+struct Values<'a> {
+    book: Xlsx<Cursor<&'a [u8]>>,
+    /// Shared texts keep their place while the book is open: it is their key.
+    shared: rustc_hash::FxHashMap<(usize, usize), u32>,
+}
+
+fn broken(sheet: Option<&str>, e: &dyn std::fmt::Display) -> BookTrouble {
+    let cause = format!("it cannot be read: {e}");
+    let mend = "open it in a spreadsheet program and save it again";
+    BookTrouble { sheet: sheet.map(String::from), ..BookTrouble::file(cause, mend) }
+}
+
+/// Sends the values of a sheet in the order of the file.
+fn values<'a>(
+    bytes: &'a [u8],
+    kept: &mut Option<Values<'a>>,
+    sheet: &str,
+    texts: &mut Texts,
+    send: SyncSender<Vec<Valued>>,
+) -> Result<(), BookTrouble> {
+    const BATCH: usize = 4096;
+    let Values { book, shared } = match kept {
+        Some(values) => values,
+        None => {
+            let book = Xlsx::new(Cursor::new(bytes)).map_err(|e| broken(None, &e))?;
+            kept.insert(Values { book, shared: rustc_hash::FxHashMap::default() })
         }
-        if reader.next_cell().map_err(|e| broken(&e))?.is_some() {
-            return Err(differs());
+    };
+    let mut reader = book.worksheet_cells_reader(sheet).map_err(|e| broken(Some(sheet), &e))?;
+    let mut out: Vec<Valued> = Vec::with_capacity(BATCH);
+    let mut last = None;
+    loop {
+        let cell = match reader.next_cell() {
+            Ok(Some(cell)) => cell,
+            Ok(None) => {
+                // Who does not listen any more has met an error and says so.
+                let _ = send.send(out);
+                return Ok(());
+            }
+            Err(e) => {
+                let place = match last {
+                    Some((row, column)) => format!("after cell {}", super::a1(row, column)),
+                    None => "in its first cell".into(),
+                };
+                return Err(broken(Some(sheet), &format!("{place}: {e}")));
+            }
+        };
+        let (row, column) = cell.get_position();
+        let mut packed = Packed::new(column, 0, false);
+        match cell.get_value() {
+            DataRef::Empty => {}
+            DataRef::Int(i) => packed.number(*i as f64),
+            DataRef::Float(f) => packed.number(*f),
+            DataRef::Bool(b) => packed.set(Sort::Bool, u32::from(*b)),
+            DataRef::String(s) => packed.set(Sort::Text, texts.add(s)),
+            DataRef::SharedString(s) => {
+                let key = (s.as_ptr() as usize, s.len());
+                packed.set(Sort::Text, *shared.entry(key).or_insert_with(|| texts.add(s)));
+            }
+            DataRef::DateTime(d) => packed.set(Sort::Date, texts.add(&iso(d))),
+            DataRef::DateTimeIso(s) | DataRef::DurationIso(s) => packed.set(Sort::Date, texts.add(s)),
+            DataRef::Error(e) => packed.set(Sort::Error, texts.add(&e.to_string())),
+        }
+        last = Some((row, column));
+        out.push((row, packed));
+        if out.len() == BATCH && send.send(std::mem::replace(&mut out, Vec::with_capacity(BATCH))).is_err() {
+            return Ok(());
         }
     }
-    Ok(())
 }
 
 /// A date, a time of day or a duration in ISO form.

@@ -3,12 +3,12 @@
 use std::collections::BTreeMap;
 
 use super::cells::a1;
-use super::package::{Package, Part};
+use super::package::{Edited, Package};
 use super::sheet::{CellItem, Item, Walk};
 use super::styles::Styles;
 use super::xml::{Kind, Tag, Tags, XmlTrouble, escape, retag};
 use super::{Answer, AnswerValue, Book, BookTrouble, Sheet, number_text, stands_as_value};
-use crate::document::patch::{Edit, Rewrite, apply};
+use crate::document::patch::Edit;
 
 /// The workbook with the answers; those of each sheet are sorted.
 pub(super) fn write(
@@ -23,7 +23,7 @@ pub(super) fn write(
         (Some(part), Some(name)) => Some(Styles::new(&part.xml).map_err(|e| BookTrouble::part(name, e))?),
         _ => None,
     };
-    let mut changed: BTreeMap<String, (Part, String)> = BTreeMap::new();
+    let mut changed: BTreeMap<String, Edited> = BTreeMap::new();
     for (sheet, answers) in book.sheets.iter().zip(answers) {
         if answers.is_empty() {
             continue;
@@ -31,38 +31,22 @@ pub(super) fn write(
         let part = package.part(&sheet.part)?;
         let edits = sheet_edits(&part.xml, sheet, answers, table.as_mut())
             .map_err(|e| BookTrouble::part(&sheet.part, e))?;
-        if let Some(new) = patched(&part.xml, &edits, &sheet.part)? {
-            // The old text is not needed any more, only whether it had a mark.
-            changed.insert(sheet.part.clone(), (part.without_text(), new));
-        }
+        changed.extend(part.edited(edits).map(|edited| (sheet.part.clone(), edited)));
     }
     if changed.is_empty() {
         return Ok(book.bytes.clone());
     }
-    if let (Some(part), Some(name), Some(table)) = (&style_part, styles, &table) {
-        if let Some(new) = patched(&part.xml, &table.edits(), name)? {
-            changed.insert(name.into(), (part.without_text(), new));
-        }
+    let style_edits = table.map(|table| table.edits()).unwrap_or_default();
+    if let (Some(part), Some(name)) = (style_part, styles) {
+        changed.extend(part.edited(style_edits).map(|edited| (name.to_string(), edited)));
     }
     if book.holds_formula() {
         let part = package.part(workbook)?;
         let edits = calculation(&part.xml).map_err(|e| BookTrouble::part(workbook, e))?;
-        if let Some(new) = patched(&part.xml, &edits, workbook)? {
-            changed.insert(workbook.into(), (part.without_text(), new));
-        }
+        changed.extend(part.edited(edits).map(|edited| (workbook.to_string(), edited)));
     }
+    drop(package);
     Package::rewrite(&book.bytes, changed)
-}
-
-/// A part's text after its edits; `None` if they change nothing.
-pub(super) fn patched(xml: &str, edits: &[Edit], part: &str) -> Result<Option<String>, BookTrouble> {
-    match apply(xml.as_bytes(), edits).map_err(|e| BookTrouble::part(part, e))? {
-        Rewrite::Unchanged => Ok(None),
-        Rewrite::Patched(new) => match String::from_utf8(new) {
-            Ok(new) => Ok(Some(new)),
-            Err(e) => Err(BookTrouble::part(part, e)),
-        },
-    }
 }
 
 /// The edit that asks the spreadsheet program to compute everything anew when
@@ -119,7 +103,10 @@ fn sheet_edits<'a>(
     let mut row: Option<(Tag<'a>, u32)> = None;
     let mut grown = None;
     let mut walk = Walk::new(xml);
-    while let Some(item) = walk.next()? {
+    loop {
+        // Of all other cells only the place is of interest.
+        walk.only(answers.get(patch.next).map(|a| (a.row, a.column)));
+        let Some(item) = walk.next()? else { break };
         match item {
             Item::Dimension(tag) => dimension = Some(tag),
             Item::Data(tag) => {
@@ -349,10 +336,14 @@ fn escape_text(text: &str) -> String {
 #[cfg(test)]
 mod tests {
     use super::*;
+    use crate::document::patch::{Rewrite, apply};
 
     #[test]
     fn the_calculation_flag_is_set_once() {
-        let set = |xml: &str| patched(xml, &calculation(xml).unwrap(), "w").unwrap();
+        let set = |xml: &str| match apply(xml.as_bytes(), &calculation(xml).unwrap()).unwrap() {
+            Rewrite::Unchanged => None,
+            Rewrite::Patched(new) => Some(String::from_utf8(new).unwrap()),
+        };
         let plain = "<workbook><sheets><sheet/></sheets><definedNames/><extLst/></workbook>";
         let flagged = set(plain).unwrap();
         assert!(flagged.contains("<definedNames/><calcPr fullCalcOnLoad=\"1\"/><extLst/>"), "{flagged}");
