@@ -4,9 +4,11 @@
 //! the fences, comment pairs and tables of a note; [`answer_place`] turns
 //! answers into edits there; [`patch`] applies edits and keeps every other
 //! byte; [`save`] puts the result on disk whole or not at all.
+//! [`workbook`] does the same for spreadsheets, cell by cell.
 
 pub mod answer_place;
 pub mod escape;
 pub mod markdown;
 pub mod patch;
 pub mod save;
+pub mod workbook;
