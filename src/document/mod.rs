@@ -4,11 +4,15 @@
 //! the fences, comment pairs and tables of a note; [`answer_place`] turns
 //! answers into edits there; [`patch`] applies edits and keeps every other
 //! byte; [`save`] puts the result on disk whole or not at all.
-//! [`workbook`] does the same for spreadsheets, cell by cell.
+//! [`workbook`] does the same for spreadsheets, cell by cell, [`delimited`] for
+//! CSV and TSV; [`sheet`] finds the tables among cells. The program does not
+//! reach these three yet.
 
 pub mod answer_place;
+pub mod delimited;
 pub mod escape;
 pub mod markdown;
 pub mod patch;
 pub mod save;
+pub mod sheet;
 pub mod workbook;

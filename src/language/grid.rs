@@ -235,7 +235,8 @@ impl<'a> GridReader<'_, 'a> {
             clauses.iter().all(|c| matches!(c.word, ClauseWord::Attribute | ClauseWord::Source));
         let alone =
             parts.value.is_none() && parts.qty.is_none() && parts.need.is_none() && assembly.is_none();
-        if !clauses.is_empty() && !(only_counted && alone) {
+        let takes_part = !only_counted || !alone;
+        if takes_part && !clauses.is_empty() {
             parts.value = Some(self.with_clauses(parts.value, clauses, name.1)?);
         }
         if assembly.is_some() && parts.value.is_none() && parts.qty.is_none() && parts.need.is_none() {

@@ -123,7 +123,6 @@ pub fn is_answer_block(text: &str) -> bool {
 
 #[cfg(test)]
 mod tests {
-    use super::*;
 
     fn is_answer(text: &str) -> bool {
         super::is_answer(text, &|w| matches!(w, "h" | "kg" | "start" | "yr" | "kh" | "start-up" | "warm-up"))

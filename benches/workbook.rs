@@ -1,7 +1,6 @@
 //! How long a large parts list takes, beside what reading and packing it costs
-//! at least. Run it by hand, as a release build:
-//!
-//! `cargo test --release --test workbook_speed -- --ignored --nocapture`
+//! at least: `cargo bench --bench workbook`.
+#![allow(clippy::print_stdout)]
 
 use std::io::{Cursor, Read, Write};
 use std::time::{Duration, Instant};
@@ -73,10 +72,7 @@ fn peak() -> u64 {
     kib * 1024
 }
 
-#[test]
-#[ignore = "a measurement"]
-#[allow(clippy::print_stdout)]
-fn fill_beside_the_least() {
+fn main() {
     // A file made by an earlier run keeps the making of it out of the memory's peak.
     let kept = std::env::temp_dir().join("tieback-speed-parts.xlsx");
     let bytes = std::fs::read(&kept).unwrap_or_else(|_| parts());
