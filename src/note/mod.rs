@@ -1,17 +1,17 @@
 //! One note from end to end: places, language, model, answers, edits.
 
+mod place;
+mod read;
+
 use crate::answer::{Desk, Number, Reply, Verdict, require, written};
-use crate::document::answer_place::{
-    FenceAnswer, block_edit, bytes_of_lines, fence_edits, inline_edit, old_answer_lines, row_edits,
-};
-use crate::document::escape::{Context, escape, same_answer, same_block, unescape};
-use crate::document::markdown::{Fence, Found, Pair, PairForm, Place, Table, find};
+use crate::document::markdown::find;
 pub use crate::document::patch::Rewrite;
 use crate::document::patch::{Edit, apply};
-use crate::language::{self, Line, Mark, Source, Tree, is_answer, is_answer_block, is_answer_line};
-use crate::source::{Code, Level, Problem, Sources, Span};
+use crate::language::{self, Line, Mark, Source, Tree};
+use crate::source::{Code, Problem, Sources, Span};
 use crate::steps::json as steps_json;
 use crate::system::{Fault, Model, Out};
+use read::{Read, read};
 use std::collections::BTreeMap;
 use std::sync::Arc;
 
@@ -103,67 +103,6 @@ pub fn syntax(name: &str, text: &str) -> (Sources, Tree, Vec<Problem>) {
     let Some(base) = sources.add(name, text) else { return (sources, Tree::default(), Vec::new()) };
     let read = read(text, base, find(text, base));
     (sources, read.tree, read.problems)
-}
-
-/// A note as read: its places, its syntax, and what asks where.
-struct Read {
-    found: Found,
-    tree: Tree,
-    problems: Vec<Problem>,
-    /// Cells that ask: statement, place, row, column.
-    cells: Vec<(usize, usize, usize, usize)>,
-}
-
-fn read(text: &str, base: u32, found: Found) -> Read {
-    let mut tree = Tree::default();
-    let mut problems = Vec::new();
-    let mut cells = Vec::new();
-    let slice = |span: Span| text.get((span.start - base) as usize..(span.end - base) as usize).unwrap_or("");
-    for (block, place) in found.places.iter().enumerate() {
-        match place {
-            Place::Fence(fence) => {
-                let lines = fence.lines.iter().map(|l| Source { text: slice(l.text), at: l.text.start });
-                language::read_block(lines, block as u32, &mut tree, &mut problems);
-            }
-            Place::Pair(pair) => {
-                let source = Source { text: slice(pair.question), at: pair.question.start };
-                language::read_question(source, block as u32, &mut tree, &mut problems);
-            }
-            Place::Table(_) => {}
-        }
-    }
-    // Tables come last: their headers may name attributes that a later block declares,
-    // and their rows may ask about things that stand elsewhere.
-    let grids: Vec<(usize, language::Grid<'_>)> = found
-        .places
-        .iter()
-        .enumerate()
-        .filter_map(|(block, place)| match place {
-            Place::Table(table) => Some((block, grid_of(table, &slice))),
-            _ => None,
-        })
-        .collect();
-    for (block, grid) in &grids {
-        language::read_grid(grid, *block as u32, &mut tree, &mut problems);
-    }
-    for (block, grid) in &grids {
-        let asks = language::ask_grid(grid, *block as u32, &mut tree, &mut problems);
-        cells.extend(asks.into_iter().map(|(s, row, column)| (s, *block, row, column)));
-    }
-    Read { found, tree, problems, cells }
-}
-
-fn grid_of<'a>(table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid<'a> {
-    let row = |row: &crate::document::markdown::Row| {
-        row.cells.iter().map(|c| Source { text: slice(c.text), at: c.text.start }).collect::<Vec<_>>()
-    };
-    let broken = table.rows.iter().enumerate().filter(|(_, r)| r.too_many).map(|(i, _)| i).collect();
-    language::Grid {
-        opener: table.opener,
-        header: row(&table.header),
-        rows: table.rows.iter().map(row).collect(),
-        broken,
-    }
 }
 
 type Outcome = (Vec<Problem>, Vec<Asked>, usize, Rewrite);
@@ -274,51 +213,6 @@ struct Work<'a> {
 }
 
 impl Work<'_> {
-    /// Places all replies. An answer that names a line names it as it will be
-    /// numbered once all answers stand: where answers above it come to have
-    /// more lines or fewer, the placing is done again with those counted.
-    fn place_all(&mut self, replies: &[Answered], model: &Model<'_>) {
-        let problems = self.problems.len();
-        self.place_once(replies, model);
-        self.shifts = self.line_shifts();
-        let names_lines = replies.iter().any(|r| r.reply.is_err());
-        if names_lines && !self.shifts.is_empty() {
-            self.problems.truncate(problems);
-            self.edits.clear();
-            self.asked.clear();
-            self.place_once(replies, model);
-        }
-    }
-
-    fn place_once(&mut self, replies: &[Answered], model: &Model<'_>) {
-        for answered in replies {
-            self.place(answered, model);
-        }
-        self.finish_tables();
-    }
-
-    fn line_shifts(&self) -> Vec<(usize, i64)> {
-        let count = |text: &str| text.bytes().filter(|b| *b == b'\n').count() as i64;
-        let mut total = 0;
-        let mut shifts = Vec::new();
-        for edit in &self.edits {
-            let change = count(&edit.text) - count(self.text.get(edit.span.clone()).unwrap_or(""));
-            if change != 0 {
-                total += change;
-                shifts.push((edit.span.start, total));
-            }
-        }
-        shifts
-    }
-
-    /// The line of a place as it will be numbered in the filled note.
-    fn line_once_filled(&self, place: Span, model: &Model<'_>) -> i64 {
-        let line = model.sources.line(place).map_or(0, |l| l.1 as i64);
-        let at = (place.start.saturating_sub(self.base)) as usize;
-        let after = self.shifts.partition_point(|(start, _)| *start < at);
-        line + after.checked_sub(1).map_or(0, |i| self.shifts[i].1)
-    }
-
     fn statement(&mut self, index: usize, model: &mut Model<'_>, desk: &mut Desk) -> Option<Answered> {
         let statement = &self.read.tree.statements[index];
         let asks = statement.mark.is_some();
@@ -414,256 +308,6 @@ impl Work<'_> {
             }
         }
     }
-
-    fn place(&mut self, answered: &Answered, model: &Model<'_>) {
-        let Answered { statement: index, mark, unmet, .. } = *answered;
-        let reply = answered.reply.clone();
-        let read = self.read;
-        let statement = &read.tree.statements[index];
-        let reply = reply.unwrap_or_else(|fault| {
-            let in_cell = matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
-            Reply::Error(self.message(fault, statement.span, mark, in_cell, model))
-        });
-        let error = matches!(reply, Reply::Error(_));
-        let broken = matches!(statement.line, Line::Broken(_));
-        let (old, stale) = match &read.found.places[statement.block as usize] {
-            Place::Fence(fence) => self.in_fence(fence, mark, &reply, broken, model),
-            Place::Pair(pair) => self.in_pair(pair, &reply, broken, model),
-            Place::Table(table) => {
-                let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
-                    return;
-                };
-                self.in_table(table, (block, row, column), &reply, model)
-            }
-        };
-        let question = self.slice(statement.span).to_string();
-        self.asked.push(Asked {
-            place: statement.span,
-            question,
-            old,
-            new: reply.text(),
-            stale,
-            error,
-            unmet,
-            remarks: answered.remarks.clone(),
-        });
-    }
-
-    fn slice(&self, span: Span) -> &str {
-        self.text.get((span.start - self.base) as usize..(span.end - self.base) as usize).unwrap_or("")
-    }
-
-    /// The message of an answer that is none.
-    fn message(&self, fault: Fault, span: Span, mark: Mark, in_cell: bool, model: &Model<'_>) -> String {
-        let whole = Span { start: span.start, end: span.end.max(mark.at + 1) };
-        // A question in a cell is its header and its row.
-        let row = model.sources.line(Span { start: mark.at, end: mark.at }).map(|l| l.1);
-        let within = |place: Span| match in_cell {
-            true => {
-                (span.start <= place.start && place.start <= span.end)
-                    || model.sources.line(place).map(|l| l.1) == row
-            }
-            false => whole.start <= place.start && place.start <= whole.end,
-        };
-        let own = |p: &Problem| {
-            within(p.place)
-                || (matches!(p.code, Code::UnknownName | Code::UnknownUnit)
-                    && p.labels.iter().any(|l| within(l.place)))
-        };
-        let below = fault.0 != u32::MAX && model.rests_below(fault);
-        let own_line = below && in_cell && within(model.problem(fault).place);
-        let problem = if fault.0 == u32::MAX || own_line {
-            self.read.problems.iter().find(|p| p.level == Level::Error && own(p))
-        } else {
-            Some(model.problem(fault))
-        };
-        let text = match problem {
-            Some(problem) if own(problem) && (own_line || !below) => {
-                let hint = problem.mends.iter().find(|m| m.starts_with("did you mean"));
-                match hint {
-                    Some(hint) => format!("{}: {hint}", problem.message),
-                    None => problem.message.clone(),
-                }
-            }
-            Some(problem) => {
-                let line = self.line_once_filled(problem.place, model);
-                format!("rests on line {line}, which is in error")
-            }
-            None => "this line is in error".to_string(),
-        };
-        without_number_signs(&text)
-    }
-
-    fn not_an_answer(&mut self, place: Span) {
-        let text = self.slice(place);
-        let shown: String = text.trim().lines().next().unwrap_or("").chars().take(40).collect();
-        self.problems.push(
-            Problem::error(Code::NotAnAnswer, place, format!("`{shown}` is not shaped like an answer, and stays"))
-                .mend("what stands right of a `?` is tieback's: move your text before the question, or behind a number sign as a comment")
-                .mend("delete it to have the question answered here"),
-        );
-    }
-
-    fn in_fence(
-        &mut self,
-        fence: &Fence,
-        mark: Mark,
-        reply: &Reply,
-        broken: bool,
-        model: &Model<'_>,
-    ) -> (String, bool) {
-        let line = &fence.lines[mark.line as usize];
-        let old_lines = old_answer_lines(self.text, self.base, fence, mark.line as usize);
-        let mut old = self.slice(mark.answer).to_string();
-        for number in old_lines.clone() {
-            if !old.is_empty() {
-                old.push('\n');
-            }
-            old.push_str(self.slice(fence.lines[number].text).trim_start().trim_start_matches("? "));
-        }
-        if !answer_shaped(self.slice(mark.answer), model) {
-            // A line in error may have its mark too early: `R(A ? ) ?` is one mistake.
-            if !broken {
-                self.not_an_answer(mark.answer);
-            }
-            return (old, false);
-        }
-        // An answer stands on the question's line or on the lines below it, never on both;
-        // and the lines of a table or a list begin in ways of their own.
-        if let Some(first) = old_lines.clone().next()
-            && (!self.slice(mark.answer).is_empty() || !is_answer_line(self.slice(fence.lines[first].text)))
-        {
-            if !broken {
-                self.not_an_answer(fence.lines[first].text);
-            }
-            return (old, false);
-        }
-        let answer = FenceAnswer { inline: reply.line(), lines: reply.fence_lines() };
-        let following = bytes_of_lines(fence, old_lines);
-        let edits = fence_edits(
-            self.text,
-            self.base,
-            line,
-            mark.at + 1,
-            mark.answer.end.max(mark.at + 1),
-            following,
-            &answer,
-        );
-        let stale = !edits.is_empty();
-        self.edits.extend(edits);
-        (old, stale)
-    }
-
-    fn in_pair(&mut self, pair: &Pair, reply: &Reply, broken: bool, model: &Model<'_>) -> (String, bool) {
-        let old = pair.answer.map_or("", |a| self.slice(a)).to_string();
-        let in_lines = matches!(pair.form, PairForm::Block { on_line: false, .. });
-        if let Some(answer) = pair.answer.filter(|_| in_lines && !is_answer_block(&old)) {
-            self.not_an_answer(answer);
-            return (old, false);
-        }
-        let line = reply.line();
-        let edit = match (&line, pair.form) {
-            (Some(line), form) => {
-                let context = match form {
-                    PairForm::Inline { in_cell: true, .. } => Context::Cell,
-                    PairForm::Inline { in_html: false, .. } => Context::Prose,
-                    _ => Context::Html,
-                };
-                let single = !matches!(form, PairForm::Block { on_line: false, .. }) || pair.answer.is_none();
-                if let (Some(answer), true) = (pair.answer, single)
-                    // A formatter may have wrapped the line that it stands on.
-                    && !answer_shaped(&unescape(&old), model)
-                {
-                    if !broken {
-                        self.not_an_answer(answer);
-                    }
-                    return (old, false);
-                }
-                if pair.answer.is_some() && same_answer(&old, &escape(line, context)) {
-                    return (unescape(old.trim()), false);
-                }
-                inline_edit(self.text, self.base, pair, line)
-            }
-            (None, PairForm::Block { on_line, .. }) => {
-                let lines = reply.markdown();
-                if pair.answer.is_some() && !on_line && same_block(&old, &lines) {
-                    return (old.trim().to_string(), false);
-                }
-                block_edit(self.text, self.base, pair, &lines)
-            }
-            (None, PairForm::Inline { .. }) => {
-                self.problems.push(
-                    Problem::error(
-                        Code::MisplacedPair,
-                        pair.opener,
-                        "this answer has many lines and does not fit into a line of text",
-                    )
-                    .mend("put the opener alone on a line of its own, with blank lines around it")
-                    .mend("or ask for one figure: `count(…)`"),
-                );
-                return (old, false);
-            }
-        };
-        let stale = edit.is_some();
-        self.edits.extend(edit);
-        (unescape(old.trim()), stale)
-    }
-
-    fn in_table(
-        &mut self,
-        table: &Table,
-        (block, row, column): (usize, usize, usize),
-        reply: &Reply,
-        model: &Model<'_>,
-    ) -> (String, bool) {
-        let Some(cell) = table.rows.get(row).and_then(|r| r.cells.get(column)) else {
-            return (String::new(), false);
-        };
-        let old = self.slice(cell.text).to_string();
-        if !answer_shaped(&unescape(&old), model) {
-            self.not_an_answer(cell.text);
-            return (old, false);
-        }
-        let Some(line) = reply.line() else {
-            self.problems.push(
-                Problem::error(
-                    Code::MisplacedPair,
-                    cell.text,
-                    "this answer has many lines and does not fit into a cell",
-                )
-                .mend("ask it in a block of its own"),
-            );
-            return (old, false);
-        };
-        if !old.is_empty() && same_answer(&old, &escape(&line, Context::Cell)) {
-            return (unescape(&old), false);
-        }
-        self.cells.push((block, row, column, line));
-        (unescape(&old), true)
-    }
-
-    /// Edits of tables, row by row, since missing cells of a row are added together.
-    fn finish_tables(&mut self) {
-        let cells = std::mem::take(&mut self.cells);
-        let mut at = 0;
-        while at < cells.len() {
-            let (block, row, ..) = cells[at];
-            let end =
-                cells[at..].iter().position(|c| (c.0, c.1) != (block, row)).map_or(cells.len(), |n| at + n);
-            let answers: Vec<(usize, &str)> = cells[at..end].iter().map(|c| (c.2, c.3.as_str())).collect();
-            if let Place::Table(table) = &self.read.found.places[block] {
-                self.edits.extend(row_edits(self.text, self.base, &table.rows[row], &answers));
-            }
-            at = end;
-        }
-        self.edits.sort_by_key(|e| (e.span.start, e.span.end));
-    }
-}
-
-/// Whether a text is one that tieback writes, whatever blanks stand between its words.
-fn answer_shaped(text: &str, model: &Model<'_>) -> bool {
-    let text = text.split_whitespace().collect::<Vec<_>>().join(" ");
-    is_answer(&text, &|word| model.units.is_unit(word, &model.tree.names))
 }
 
 fn reply_to(
@@ -685,24 +329,6 @@ fn reply_to(
             Err(model.fault(*problem))
         }
     }
-}
-
-/// An answer holds no `#` outside quotes: it would begin a comment.
-fn without_number_signs(text: &str) -> String {
-    let mut inside = false;
-    let mut out = String::with_capacity(text.len());
-    for c in text.chars() {
-        match c {
-            '"' => {
-                inside = !inside;
-                out.push(c);
-            }
-            '#' if !inside => out.push_str("number sign"),
-            '\n' | '\r' => out.push(' '),
-            c => out.push(c),
-        }
-    }
-    out
 }
 
 /// One question against the definitions of a note and further lines.

@@ -1,0 +1,66 @@
+//! Places of a note to syntax: fences, comment pairs, then tables.
+
+use crate::document::markdown::{Found, Place, Table};
+use crate::language::{self, Source, Tree};
+use crate::source::{Problem, Span};
+
+/// A note as read: its places, its syntax, and what asks where.
+pub(super) struct Read {
+    pub(super) found: Found,
+    pub(super) tree: Tree,
+    pub(super) problems: Vec<Problem>,
+    /// Cells that ask: statement, place, row, column.
+    pub(super) cells: Vec<(usize, usize, usize, usize)>,
+}
+
+pub(super) fn read(text: &str, base: u32, found: Found) -> Read {
+    let mut tree = Tree::default();
+    let mut problems = Vec::new();
+    let mut cells = Vec::new();
+    let slice = |span: Span| text.get((span.start - base) as usize..(span.end - base) as usize).unwrap_or("");
+    for (block, place) in found.places.iter().enumerate() {
+        match place {
+            Place::Fence(fence) => {
+                let lines = fence.lines.iter().map(|l| Source { text: slice(l.text), at: l.text.start });
+                language::read_block(lines, block as u32, &mut tree, &mut problems);
+            }
+            Place::Pair(pair) => {
+                let source = Source { text: slice(pair.question), at: pair.question.start };
+                language::read_question(source, block as u32, &mut tree, &mut problems);
+            }
+            Place::Table(_) => {}
+        }
+    }
+    // Tables come last: their headers may name attributes that a later block declares,
+    // and their rows may ask about things that stand elsewhere.
+    let grids: Vec<(usize, language::Grid<'_>)> = found
+        .places
+        .iter()
+        .enumerate()
+        .filter_map(|(block, place)| match place {
+            Place::Table(table) => Some((block, grid_of(table, &slice))),
+            _ => None,
+        })
+        .collect();
+    for (block, grid) in &grids {
+        language::read_grid(grid, *block as u32, &mut tree, &mut problems);
+    }
+    for (block, grid) in &grids {
+        let asks = language::ask_grid(grid, *block as u32, &mut tree, &mut problems);
+        cells.extend(asks.into_iter().map(|(s, row, column)| (s, *block, row, column)));
+    }
+    Read { found, tree, problems, cells }
+}
+
+fn grid_of<'a>(table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid<'a> {
+    let row = |row: &crate::document::markdown::Row| {
+        row.cells.iter().map(|c| Source { text: slice(c.text), at: c.text.start }).collect::<Vec<_>>()
+    };
+    let broken = table.rows.iter().enumerate().filter(|(_, r)| r.too_many).map(|(i, _)| i).collect();
+    language::Grid {
+        opener: table.opener,
+        header: row(&table.header),
+        rows: table.rows.iter().map(row).collect(),
+        broken,
+    }
+}
