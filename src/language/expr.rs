@@ -5,30 +5,11 @@
 //! between them: a level that mixes them becomes [`Expr::Mixed`] with the
 //! readings it may have.
 
+use super::chain::Chain;
 use super::token::{Tok, Token};
 use super::tree::*;
 use super::words;
 use crate::source::{Code, Problem, Span};
-
-/// An operator between the members of a level.
-#[derive(Clone, Copy, PartialEq, Eq, Debug)]
-enum Chain {
-    Series,
-    Parallel,
-    And,
-    Or,
-}
-
-impl Chain {
-    fn text(self) -> &'static str {
-        match self {
-            Chain::Series => "->",
-            Chain::Parallel => "//",
-            Chain::And => "and",
-            Chain::Or => "or",
-        }
-    }
-}
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 enum Ar {
@@ -144,7 +125,7 @@ impl Reader<'_> {
         })
     }
 
-    fn tok(&self, ahead: usize) -> Option<Tok> {
+    pub(super) fn tok(&self, ahead: usize) -> Option<Tok> {
         self.tokens.get(self.at + ahead).map(|t| t.tok)
     }
 
@@ -156,7 +137,7 @@ impl Reader<'_> {
         }
     }
 
-    fn touches(&self, ahead: usize) -> bool {
+    pub(super) fn touches(&self, ahead: usize) -> bool {
         match (self.tokens.get(self.at + ahead), self.tokens.get(self.at + ahead + 1)) {
             (Some(a), Some(b)) => a.span.end == b.span.start,
             _ => false,
@@ -281,7 +262,7 @@ impl Reader<'_> {
     }
 
     /// `2of3`, `2 of3`: a word of its own to the reader, and no unit.
-    fn run_together(&self) -> Option<Box<Problem>> {
+    pub(super) fn run_together(&self) -> Option<Box<Problem>> {
         let word = self.word(0)?;
         let n = word.strip_prefix("of").filter(|n| n.starts_with(|c: char| c.is_ascii_digit()))?;
         let problem =
@@ -496,93 +477,6 @@ impl Reader<'_> {
         }
     }
 
-    fn add_literal(&mut self, literal: Literal, span: Span) -> ExprId {
-        self.tree.literals.push(literal);
-        let id = self.tree.literals.len() as u32 - 1;
-        self.tree.add(Expr::Literal(id), span)
-    }
-
-    /// A number with what belongs to it: `%`, a unit, `in 500`.
-    pub(crate) fn literal(&mut self) -> Read<ExprId> {
-        let number = self.peek_span();
-        self.at += 1;
-        if let Some(problem) = self.run_together() {
-            return Err(problem);
-        }
-        let mut span = number;
-        let suffix = match self.peek() {
-            Some(Tok::Percent) => {
-                span = span.to(self.peek_span());
-                self.at += 1;
-                if self.peek() == Some(Tok::Slash) && self.touches(0) && self.unit_word(1).is_some() {
-                    let word = self.unit_word(1).expect("looked at before");
-                    let from = self.last_span();
-                    self.at += 2;
-                    span = span.to(self.last_span());
-                    Suffix::Unit(Unit { form: UnitForm::PercentPer, word, span: from.to(self.last_span()) })
-                } else {
-                    Suffix::Percent
-                }
-            }
-            Some(Tok::Slash) => match self.per_unit() {
-                Some(unit) => {
-                    span = span.to(unit.span);
-                    Suffix::Unit(unit)
-                }
-                None => Suffix::None,
-            },
-            Some(Tok::Name { .. }) if self.word(0) == Some("in") => {
-                if self.tok(1) == Some(Tok::Number) {
-                    let second = self.tokens[self.at + 1].span;
-                    self.at += 2;
-                    span = span.to(second);
-                    Suffix::In(second)
-                } else {
-                    Suffix::None
-                }
-            }
-            Some(Tok::Name { .. }) => match self.unit_word(0) {
-                Some(word) if self.tok(1) != Some(Tok::Number) || !self.is_inner_word() => {
-                    let unit = self.peek_span();
-                    self.at += 1;
-                    span = span.to(unit);
-                    Suffix::Unit(Unit { form: UnitForm::Plain, word, span: unit })
-                }
-                _ => Suffix::None,
-            },
-            _ => Suffix::None,
-        };
-        Ok(self.add_literal(Literal { number, suffix }, span))
-    }
-
-    /// `over 1000 h` after a probability: the word is no unit there.
-    fn is_inner_word(&self) -> bool {
-        matches!(self.word(0), Some("over" | "error"))
-    }
-
-    /// A word that may be a unit.
-    fn unit_word(&self, ahead: usize) -> Option<Sym> {
-        match self.tok(ahead)? {
-            Tok::Name { sym, quoted } => {
-                let text = self.tree.names.text(sym);
-                // A line may begin with `year`, and a number may be counted in it.
-                (quoted || text == "year" || !words::is_reserved(text)).then_some(sym)
-            }
-            _ => None,
-        }
-    }
-
-    /// `/Mh` directly after a literal or `)`; with a space after the stroke it is division.
-    pub(crate) fn per_unit(&mut self) -> Option<Unit> {
-        if self.peek() != Some(Tok::Slash) || !self.touches(0) {
-            return None;
-        }
-        let word = self.unit_word(1)?;
-        let from = self.peek_span();
-        self.at += 2;
-        Some(Unit { form: UnitForm::Per, word, span: from.to(self.last_span()) })
-    }
-
     /// A finished operand: what waited for it is applied.
     fn finish_operand(&mut self, level: &mut Level, operand: ExprId) -> Read<()> {
         let mut done = operand;
@@ -785,124 +679,6 @@ impl Reader<'_> {
             done = self.tree.add(Expr::Choice(word, done), span);
         }
         Ok(done)
-    }
-
-    fn chain(&mut self, items: &[ExprId], chain: &[Chain]) -> ExprId {
-        let Some(&first) = chain.first() else { return items.first().copied().unwrap_or(ExprId(0)) };
-        let bare = items.iter().any(|i| self.is_bare_of(*i));
-        if !bare && chain.iter().all(|c| *c == first) {
-            return self.join(first, items);
-        }
-        self.mixed(items, chain)
-    }
-
-    /// `2 of …` without parentheses around it.
-    fn is_bare_of(&self, item: ExprId) -> bool {
-        match self.tree.expr(item) {
-            Expr::AtLeast(..) => true,
-            Expr::Settled(of, _) => self.is_bare_of(of),
-            _ => false,
-        }
-    }
-
-    fn join(&mut self, chain: Chain, items: &[ExprId]) -> ExprId {
-        if let [only] = items {
-            return *only;
-        }
-        let span = self.tree.span(items[0]).to(self.tree.span(items[items.len() - 1]));
-        let list = self.tree.add_list(items);
-        let expr = match chain {
-            Chain::Series => Expr::Series(list),
-            Chain::Parallel => Expr::Parallel(list),
-            Chain::And => Expr::And(list),
-            Chain::Or => Expr::Or(list),
-        };
-        self.tree.add(expr, span)
-    }
-
-    fn group(&mut self, expr: ExprId) -> ExprId {
-        match self.tree.expr(expr) {
-            Expr::Name(_) | Expr::Literal(_) | Expr::Group(_) | Expr::Call(..) => expr,
-            _ => {
-                let span = self.tree.span(expr);
-                self.tree.add(Expr::Group(expr), span)
-            }
-        }
-    }
-
-    fn mixed(&mut self, items: &[ExprId], chain: &[Chain]) -> ExprId {
-        let mut kinds: Vec<Chain> = Vec::new();
-        for c in chain {
-            if !kinds.contains(c) {
-                kinds.push(*c);
-            }
-        }
-        let bare: Vec<usize> = (0..items.len()).filter(|i| self.is_bare_of(items[*i])).collect();
-        let mut operators: Vec<&'static str> = kinds.iter().map(|c| c.text()).collect();
-        if !bare.is_empty() {
-            operators.push("of");
-        }
-        let mut readings = Vec::new();
-        match (kinds.as_slice(), bare.as_slice()) {
-            (&[a, b], []) => {
-                readings.push(self.binding_tighter(items, chain, a, b));
-                readings.push(self.binding_tighter(items, chain, b, a));
-            }
-            (&[only], _) => {
-                let grouped: Vec<ExprId> = items.iter().map(|i| self.group(*i)).collect();
-                readings.push(self.join(only, &grouped));
-                if let &[at] = bare.as_slice()
-                    && let Some(wide) = self.reaching_on(only, items, at)
-                {
-                    readings.push(wide);
-                }
-            }
-            _ => {}
-        }
-        let span = self.tree.span(items[0]).to(self.tree.span(items[items.len() - 1]));
-        self.tree.mixed.push(Mixed { readings, operators });
-        let id = self.tree.mixed.len() as u32 - 1;
-        self.tree.add(Expr::Mixed(id), span)
-    }
-
-    fn binding_tighter(&mut self, items: &[ExprId], chain: &[Chain], tight: Chain, loose: Chain) -> ExprId {
-        let mut outer = Vec::new();
-        let mut inner = vec![items[0]];
-        for (i, c) in chain.iter().enumerate() {
-            if *c == loose {
-                let joined = self.join(tight, &inner);
-                outer.push(if inner.len() > 1 { self.group(joined) } else { joined });
-                inner.clear();
-            }
-            inner.push(items[i + 1]);
-        }
-        let joined = self.join(tight, &inner);
-        outer.push(if inner.len() > 1 { self.group(joined) } else { joined });
-        self.join(loose, &outer)
-    }
-
-    /// `2 of 3 A -> B` read as `2 of 3 (A -> B)`.
-    fn reaching_on(&mut self, chain: Chain, items: &[ExprId], at: usize) -> Option<ExprId> {
-        let Expr::AtLeast(need, members) = self.tree.expr(items[at]) else { return None };
-        let &[counted] = self.tree.list(members) else { return None };
-        let Expr::Counted(count, of) = self.tree.expr(counted) else { return None };
-        if at + 1 == items.len() {
-            return None;
-        }
-        let mut inner = vec![of];
-        inner.extend_from_slice(&items[at + 1..]);
-        let joined = self.join(chain, &inner);
-        let group = self.group(joined);
-        let span = self.tree.span(items[at]).to(self.tree.span(group));
-        let counted = self.tree.add(Expr::Counted(count, group), span);
-        let members = self.tree.add_list(&[counted]);
-        let wide = self.tree.add(Expr::AtLeast(need, members), span);
-        if at == 0 {
-            return Some(wide);
-        }
-        let mut outer = items[..at].to_vec();
-        outer.push(self.group(wide));
-        Some(self.join(chain, &outer))
     }
 
     /// A level whose `)` has come.

@@ -4,10 +4,12 @@
 //! a [`Tree`] of them, `print` writes a tree back as text, and `shape` knows
 //! what an answer looks like. Nothing here knows what a name means.
 
+mod chain;
 mod clause;
 mod expr;
 mod grid;
 mod line;
+mod literal;
 mod print;
 mod read;
 mod shape;

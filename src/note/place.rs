@@ -204,13 +204,7 @@ impl Work<'_> {
         (old, stale)
     }
 
-    fn in_pair(
-        &mut self,
-        pair: &Pair,
-        reply: &Reply,
-        broken: bool,
-        model: &Model<'_>,
-    ) -> (String, bool) {
+    fn in_pair(&mut self, pair: &Pair, reply: &Reply, broken: bool, model: &Model<'_>) -> (String, bool) {
         let old = pair.answer.map_or("", |a| self.slice(a)).to_string();
         let in_lines = matches!(pair.form, PairForm::Block { on_line: false, .. });
         if let Some(answer) = pair.answer.filter(|_| in_lines && !is_answer_block(&old)) {
