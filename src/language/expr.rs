@@ -581,6 +581,13 @@ impl Reader<'_> {
                 Some("and") => Chain::And,
                 Some("or") => Chain::Or,
                 Some("of") => return self.late_of(level, span),
+                // A phase of a question's exposure: `R(x, climb 1 h stress 2)`. Stress is a factor on it.
+                Some("stress") if matches!(level.opened, Opened::Call(_)) && level.chain.is_empty() => {
+                    while !level.operators.is_empty() {
+                        self.reduce(level);
+                    }
+                    return Ok(self.arith(level, ArithOp::Mul));
+                }
                 Some(word @ ("else" | "with")) => return Err(Box::new(later(span, &format!("`{word}`")))),
                 _ => return Ok(false),
             },
