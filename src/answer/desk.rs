@@ -266,17 +266,24 @@ pub(super) fn too_large(model: &mut Model<'_>, thing: ExprId, limit: usize) -> F
     )
 }
 
+/// Up to so many things a table of their items takes longer than it saves.
+const FEW: usize = 8;
+
 fn leaf_chances(
     model: &mut Model<'_>,
     system: &System,
     exposure: &Exposure,
     place: Span,
 ) -> Out<Vec<Chance>> {
-    // Copies share their item: its chance is computed once.
+    // Copies share their item, and copies of one thing mostly stand side by side:
+    // its chance is computed once.
     let mut known: FxHashMap<u32, Chance> = FxHashMap::default();
-    let mut chances = Vec::with_capacity(system.leaves.len());
+    let mut last = None;
+    let mut chances: Vec<Chance> = Vec::with_capacity(system.leaves.len());
     for leaf in &system.leaves {
-        if let Some(chance) = known.get(&leaf.item) {
+        let same = if last == Some(leaf.item) { chances.last() } else { known.get(&leaf.item) };
+        last = Some(leaf.item);
+        if let Some(chance) = same {
             chances.push(*chance);
             continue;
         }
@@ -287,7 +294,9 @@ fn leaf_chances(
             return Err(not_given(model, &name, base, clause, exposure, place));
         }
         let chance = item.chance(exposure);
-        known.insert(leaf.item, chance);
+        if system.leaves.len() > FEW {
+            known.insert(leaf.item, chance);
+        }
         chances.push(chance);
     }
     Ok(chances)
