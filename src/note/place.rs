@@ -60,23 +60,28 @@ impl Work<'_> {
 
     fn place(&mut self, answered: &Answered, model: &Model<'_>) {
         let Answered { statement: index, mark, unmet, .. } = *answered;
-        let reply = answered.reply.clone();
         let read = self.read;
         let statement = &read.tree.statements[index];
-        let reply = reply.unwrap_or_else(|fault| {
-            let in_cell = matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
-            Reply::Error(self.message(fault, statement.span, mark, in_cell, model))
-        });
+        let message;
+        let reply = match &answered.reply {
+            Ok(reply) => reply,
+            Err(fault) => {
+                let in_cell =
+                    matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
+                message = Reply::Error(self.message(*fault, statement.span, mark, in_cell, model));
+                &message
+            }
+        };
         let error = matches!(reply, Reply::Error(_));
         let broken = matches!(statement.line, Line::Broken(_));
         let (old, stale) = match &read.found.places[statement.block as usize] {
-            Place::Fence(fence) => self.in_fence(fence, mark, &reply, broken, model),
-            Place::Pair(pair) => self.in_pair(pair, &reply, broken, model),
+            Place::Fence(fence) => self.in_fence(fence, mark, reply, broken, model),
+            Place::Pair(pair) => self.in_pair(pair, reply, broken, model),
             Place::Table(table) => {
                 let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
                     return;
                 };
-                self.in_table(table, (block, row, column), &reply, model)
+                self.in_table(table, (block, row, column), reply, model)
             }
         };
         let question = self.slice(statement.span).to_string();

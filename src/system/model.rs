@@ -390,36 +390,33 @@ impl<'a> Model<'a> {
     fn check_look_alikes(&mut self) {
         // By hash: the keys themselves took 100 bytes a name.
         let mut seen: FxHashMap<u64, DefId> = FxHashMap::default();
-        seen.reserve(self.defs.len());
+        seen.reserve(2 * self.defs.len());
+        let (mut keys, mut other_keys) = ([String::new(), String::new()], [String::new(), String::new()]);
+        let tree = self.tree;
         for index in 0..self.defs.len() {
             let def = DefId(index as u32);
-            let name = self.tree.names.text(self.def(def).name);
-            for text in super::scope::look_alike_keys(name) {
-                let key = rustc_hash::FxBuildHasher.hash_one(&text);
-                match seen.get(&key) {
-                    None => {
-                        seen.insert(key, def);
-                    }
-                    Some(first) if *first != def => {
-                        let other = self.def(*first);
-                        let keys = super::scope::look_alike_keys(self.tree.names.text(other.name));
-                        if !keys.contains(&text) {
-                            continue; // equal by hash alone
-                        }
-                        let (first_span, span) = (other.span, self.def(def).span);
-                        let message = format!(
-                            "`{name}` and `{}` differ only by case or by letters that look alike",
-                            self.tree.names.text(other.name)
-                        );
-                        self.fault(
-                            Problem::remark(Code::LookAlikeNames, span, message)
-                                .label(first_span, "the other one")
-                                .mend("rename one of them, unless both are meant"),
-                        );
-                        break;
-                    }
-                    Some(_) => {}
+            let name = tree.names.text(self.def(def).name);
+            super::scope::look_alike_keys(name, &mut keys);
+            for key in &keys {
+                let first = *seen.entry(rustc_hash::FxBuildHasher.hash_one(key)).or_insert(def);
+                if first == def {
+                    continue;
                 }
+                let other = self.def(first);
+                let (other_name, other_span) = (tree.names.text(other.name), other.span);
+                super::scope::look_alike_keys(other_name, &mut other_keys);
+                if !other_keys.contains(key) {
+                    continue; // equal by hash alone
+                }
+                let message =
+                    format!("`{name}` and `{other_name}` differ only by case or by letters that look alike");
+                let span = self.def(def).span;
+                self.fault(
+                    Problem::remark(Code::LookAlikeNames, span, message)
+                        .label(other_span, "the other one")
+                        .mend("rename one of them, unless both are meant"),
+                );
+                break;
             }
         }
     }
