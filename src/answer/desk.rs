@@ -8,7 +8,7 @@ use crate::number::{Chance, Real};
 use crate::source::{Code, Problem, Span};
 use crate::system::{Base, Exposure, Fault, Model, NodeId, Out, System};
 use rustc_hash::FxHashMap;
-use std::rc::Rc;
+use std::sync::Arc;
 
 /// The most diagram nodes spent on Fussell–Vesely within one group.
 const CUT_NODES: usize = 200_000;
@@ -44,18 +44,18 @@ pub struct Valued {
 }
 
 /// The importance of each block, by number.
-type Ranked = Rc<Vec<Option<Importance>>>;
+type Ranked = Arc<Vec<Option<Importance>>>;
 
 /// Keeps what has been worked out for one set of notes.
 #[derive(Default)]
 pub struct Desk {
-    prepared: FxHashMap<ExprKey, Out<Rc<Prepared>>>,
-    valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Rc<Valued>>>,
+    prepared: FxHashMap<ExprKey, Out<Arc<Prepared>>>,
+    valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Arc<Valued>>>,
     ranked: FxHashMap<(ExprKey, Vec<ExprId>), Ranked>,
     /// Questions within questions.
     pub(super) depth: u32,
     /// What the answer at hand rests on; each becomes one folded remark.
-    pub(super) leant_on: Vec<Rc<Prepared>>,
+    pub(super) leant_on: Vec<Arc<Prepared>>,
     /// Fixed probabilities that an asked exposure left as they are.
     pub(super) unscaled: Vec<String>,
     /// Lists that a limit cut short which no question set.
@@ -71,7 +71,7 @@ enum ExprKey {
 
 impl Desk {
     /// The systems that the answer at hand rests on; the list starts anew.
-    pub fn take_leant_on(&mut self) -> Vec<Rc<Prepared>> {
+    pub fn take_leant_on(&mut self) -> Vec<Arc<Prepared>> {
         std::mem::take(&mut self.leant_on)
     }
 
@@ -96,7 +96,7 @@ impl Desk {
     ///
     /// # Errors
     /// What is wrong with it, or that it is too large.
-    pub fn prepare(&mut self, model: &mut Model<'_>, thing: ExprId) -> Out<Rc<Prepared>> {
+    pub fn prepare(&mut self, model: &mut Model<'_>, thing: ExprId) -> Out<Arc<Prepared>> {
         let key = Self::key(model, thing);
         let known = self.prepared.get(&key).cloned();
         let out = match known {
@@ -118,7 +118,7 @@ impl Desk {
         out
     }
 
-    fn prepare_new(model: &mut Model<'_>, thing: ExprId) -> Out<Rc<Prepared>> {
+    fn prepare_new(model: &mut Model<'_>, thing: ExprId) -> Out<Arc<Prepared>> {
         let asked = model.build(thing)?;
         let system = model.system(asked)?;
         let plan = match Plan::new(&system.structure, system.root) {
@@ -126,7 +126,7 @@ impl Desk {
             Err(large) => return Err(too_large(model, thing, large.limit)),
         };
         let repeated = repeated_names(model, &system);
-        Ok(Rc::new(Prepared { asked, system, plan, repeated }))
+        Ok(Arc::new(Prepared { asked, system, plan, repeated }))
     }
 
     /// The exposure of a question: its own, or the mission.
@@ -161,7 +161,7 @@ impl Desk {
         prepared: &Prepared,
         given: &[ExprId],
         place: Span,
-    ) -> Out<Rc<Valued>> {
+    ) -> Out<Arc<Valued>> {
         let key = (Self::key(model, thing), given.to_vec());
         if let Some(known) = self.valued.get(&key).cloned() {
             // The fault of an exposure that is not given points at the question that missed it.
@@ -187,7 +187,7 @@ impl Desk {
             let chance = told_from_zero(&prepared.plan, &chances, chance);
             // Two operations more than the plan counts, for each datum.
             let bound = bound(&prepared.plan) + crate::system::STEP * 16.0;
-            Ok(Rc::new(Valued { chances, values, chance, bound }))
+            Ok(Arc::new(Valued { chances, values, chance, bound }))
         });
         if out.is_ok() {
             self.note_unscaled(model, prepared, given);
@@ -222,7 +222,7 @@ impl Desk {
     ) -> Ranked {
         let key = (Self::key(model, thing), given.to_vec());
         let entry = self.ranked.entry(key);
-        entry.or_insert_with(|| Rc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
+        entry.or_insert_with(|| Arc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
     }
 }
 
@@ -266,17 +266,24 @@ pub(super) fn too_large(model: &mut Model<'_>, thing: ExprId, limit: usize) -> F
     )
 }
 
+/// Up to so many things a table of their items takes longer than it saves.
+const FEW: usize = 8;
+
 fn leaf_chances(
     model: &mut Model<'_>,
     system: &System,
     exposure: &Exposure,
     place: Span,
 ) -> Out<Vec<Chance>> {
-    // Copies share their item: its chance is computed once.
+    // Copies share their item, and copies of one thing mostly stand side by side:
+    // its chance is computed once.
     let mut known: FxHashMap<u32, Chance> = FxHashMap::default();
-    let mut chances = Vec::with_capacity(system.leaves.len());
+    let mut last = None;
+    let mut chances: Vec<Chance> = Vec::with_capacity(system.leaves.len());
     for leaf in &system.leaves {
-        if let Some(chance) = known.get(&leaf.item) {
+        let same = if last == Some(leaf.item) { chances.last() } else { known.get(&leaf.item) };
+        last = Some(leaf.item);
+        if let Some(chance) = same {
             chances.push(*chance);
             continue;
         }
@@ -287,7 +294,9 @@ fn leaf_chances(
             return Err(not_given(model, &name, base, clause, exposure, place));
         }
         let chance = item.chance(exposure);
-        known.insert(leaf.item, chance);
+        if system.leaves.len() > FEW {
+            known.insert(leaf.item, chance);
+        }
         chances.push(chance);
     }
     Ok(chances)

@@ -9,7 +9,7 @@ use crate::number::Chance;
 use crate::source::{Code, Problem, Span};
 use crate::steps::Side;
 use crate::system::{Ctx, Dim, Fault, Model, Oracle, Out, Quantity, STEP};
-use std::rc::Rc;
+use std::sync::Arc;
 
 /// Diagram nodes allowed while minimal sets are made.
 pub(super) const SET_NODES: usize = 4_000_000;
@@ -80,8 +80,8 @@ impl Oracle for Desk {
 pub(super) struct Subject {
     pub(super) thing: ExprId,
     pub(super) given: Vec<ExprId>,
-    pub(super) prepared: Rc<Prepared>,
-    pub(super) valued: Rc<Valued>,
+    pub(super) prepared: Arc<Prepared>,
+    pub(super) valued: Arc<Valued>,
 }
 
 impl Desk {
@@ -131,8 +131,9 @@ impl Desk {
         let Expr::Call(word, args) = model.tree.expr(call) else {
             return Ok(Number::None("nothing is asked".to_string()));
         };
-        let text = model.tree.names.text(word).to_string();
-        match text.as_str() {
+        let tree = model.tree;
+        let text = tree.names.text(word);
+        match text {
             "R" | "F" => {
                 let side = if text == "R" { Side::Works } else { Side::Fails };
                 let subject = self.subject(model, call, args, 1)?;
@@ -141,7 +142,7 @@ impl Desk {
             "count" => self.count(model, call, args),
             "total" => self.total(model, call, args),
             "Birnbaum" | "criticality" | "FV" | "RAW" | "RRW" | "doubled" | "made perfect" => {
-                self.importance(model, call, args, &text)
+                self.importance(model, call, args, text)
             }
             "cuts" | "paths" | "single points" | "rank" | "steps" | "assumptions" | "inputs" => {
                 let place = model.tree.span(call);
@@ -163,7 +164,8 @@ impl Desk {
         skip: usize,
     ) -> Out<Subject> {
         let place = model.tree.span(call);
-        let args = model.tree.list(args).to_vec();
+        let tree = model.tree;
+        let args = tree.list(args);
         let Some(&thing) = args.first() else { return Err(no_thing(model, call)) };
         self.no_figure(model, thing)?;
         let prepared = self.prepare(model, thing)?;

@@ -59,11 +59,9 @@ impl Desk {
     pub fn list(&mut self, model: &mut Model<'_>, expr: ExprId) -> Out<Option<Reply>> {
         let call = model.tree.inside_groups(expr);
         let Expr::Call(word, args) = model.tree.expr(call) else { return Ok(None) };
-        let text = model.tree.names.text(word).to_string();
-        if !matches!(
-            text.as_str(),
-            "cuts" | "paths" | "single points" | "rank" | "steps" | "assumptions" | "inputs"
-        ) {
+        let tree = model.tree;
+        let text = tree.names.text(word);
+        if !matches!(text, "cuts" | "paths" | "single points" | "rank" | "steps" | "assumptions" | "inputs") {
             return Ok(None);
         }
         let Some(&thing) = model.tree.list(args).first() else { return Err(no_thing(model, call)) };
@@ -72,7 +70,7 @@ impl Desk {
             return Ok(Some(self.steps_reply(model, &steps, false)));
         }
         self.no_figure(model, thing)?;
-        match text.as_str() {
+        match text {
             "cuts" => self.sets(model, call, args, Which::Cuts).map(Some),
             "paths" => self.sets(model, call, args, Which::Paths).map(Some),
             "single points" => self.single_points(model, call, args).map(Some),

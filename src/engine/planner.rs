@@ -59,16 +59,33 @@ impl Place<'_> {
 }
 
 pub(super) fn plan(structure: &Structure, root: NodeId, options: Options) -> Result<Plan, TooLarge> {
-    let mut plan = Plan {
+    let mut plan = empty(structure);
+    if !plan_tree(structure, root, &mut plan) {
+        plan_shared(structure, root, options, &mut plan)?;
+    }
+    Ok(plan)
+}
+
+fn empty(structure: &Structure) -> Plan {
+    Plan {
         shells: Vec::new(),
         pool: Vec::new(),
         groups: Vec::new(),
         root: BlockId(0),
         by_node: vec![NONE; structure.len()],
         by_leaf: Vec::new(),
-    };
+    }
+}
+
+/// Plans any system.
+fn plan_shared(
+    structure: &Structure,
+    root: NodeId,
+    options: Options,
+    plan: &mut Plan,
+) -> Result<(), TooLarge> {
     let graph = Graph::new(structure, root);
-    let mut planner = Planner { plan: &mut plan, options };
+    let mut planner = Planner { plan, options };
     let block_of = match planner.structure(&graph, root, None, &mut 0) {
         Ok(block_of) => block_of,
         Err(Stop::TooLarge(error)) => return Err(error),
@@ -81,7 +98,65 @@ pub(super) fn plan(structure: &Structure, root: NodeId, options: Options) -> Res
         }
     }
     plan.root = BlockId(plan.by_node[root.0 as usize]);
-    Ok(plan)
+    Ok(())
+}
+
+/// Plans a system in which nothing stands in two places, which most are: every
+/// node is a block on its own, and nothing has to be looked for. Whether it was
+/// such a system; if not, the plan is as it was.
+///
+/// The root must be the last node, and all others must lie under it in the
+/// order of a walk: so systems are cut out.
+fn plan_tree(structure: &Structure, root: NodeId, plan: &mut Plan) -> bool {
+    let len = structure.len();
+    if root.0 as usize + 1 != len {
+        return false;
+    }
+    plan.shells.reserve(len);
+    plan.pool.reserve(len);
+    // In the order of a walk, the members of a node are the topmost that have
+    // no owner yet. `by_node` serves as the stack of these.
+    let waiting = &mut plan.by_node;
+    let mut top = 0;
+    for id in (0..len as u32).map(NodeId) {
+        let block = match structure.node(id) {
+            Node::Works => Block::Works,
+            Node::Leaf(leaf) => {
+                let by_leaf = &mut plan.by_leaf;
+                by_leaf.resize(by_leaf.len().max(leaf as usize + 1), NONE);
+                if by_leaf[leaf as usize] != NONE {
+                    break;
+                }
+                by_leaf[leaf as usize] = id.0;
+                Block::Leaf(leaf)
+            }
+            Node::AtLeast { need, .. } => {
+                let members = structure.members(id);
+                let tidy = top >= members.len()
+                    && waiting[top - members.len()..top].iter().zip(members).all(|(w, m)| *w == m.0);
+                if !tidy {
+                    break;
+                }
+                top -= members.len();
+                let start = plan.pool.len() as u32;
+                plan.pool.extend(members.iter().map(|m| BlockId(m.0)));
+                Block::Independent { need, members: Span { start, end: plan.pool.len() as u32 } }
+            }
+        };
+        plan.shells.push(Shell { block, stands: Stands::Node(id), group: NONE });
+        waiting[top] = id.0;
+        top += 1;
+    }
+    if plan.shells.len() == len && top == 1 {
+        plan.by_node.iter_mut().zip(0..).for_each(|(at, id)| *at = id);
+        plan.root = BlockId(root.0);
+        return true;
+    }
+    plan.shells.clear();
+    plan.pool.clear();
+    plan.by_leaf.clear();
+    plan.by_node.fill(NONE);
+    false
 }
 
 struct Planner<'a> {
@@ -445,5 +520,37 @@ impl Grouping {
         origin.resize(structure.len(), place.node(at));
         let members = members.iter().map(|&m| place.node(m)).collect();
         Local { structure, origin, root, members, frontier }
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::engine::trial::Dice;
+
+    /// The same plan, looked for in the long way.
+    fn searched(structure: &Structure, root: NodeId) -> Plan {
+        let mut plan = empty(structure);
+        assert!(plan_shared(structure, root, Options::default(), &mut plan).is_ok());
+        plan
+    }
+
+    #[test]
+    fn a_tree_is_planned_as_the_search_would() {
+        let (mut trees, mut others) = (0, 0);
+        for seed in 0..2000 {
+            let mut dice = Dice::new(seed);
+            let n = 1 + dice.below(6);
+            let (structure, root) = dice.system(n);
+            let mut quick = empty(&structure);
+            if plan_tree(&structure, root, &mut quick) {
+                trees += 1;
+                assert_eq!(format!("{quick:?}"), format!("{:?}", searched(&structure, root)));
+            } else {
+                others += 1;
+                assert_eq!(format!("{quick:?}"), format!("{:?}", empty(&structure)));
+            }
+        }
+        assert!(trees > 20 && others > 100, "{trees} {others}");
     }
 }

@@ -5,6 +5,7 @@ use super::token::Tok;
 use super::tree::*;
 use super::words::{self, ClauseWord};
 use crate::source::{Code, Problem, Span};
+use smallvec::{SmallVec, smallvec};
 
 impl Reader<'_> {
     /// Whether a clause begins here: a clause word, or a word before a number.
@@ -26,7 +27,7 @@ impl Reader<'_> {
     pub(crate) fn right_side(&mut self) -> Read<ExprId> {
         if self.clause_starts() {
             let clause = self.clause()?;
-            return self.item(vec![clause]);
+            return self.item(smallvec![clause]);
         }
         let start = self.at;
         let value = self.expression()?;
@@ -41,7 +42,7 @@ impl Reader<'_> {
             return Err(self.stray_comma());
         }
         let clause = self.finish_probability(start, value)?;
-        self.item(vec![clause])
+        self.item(smallvec![clause])
     }
 
     /// Whether a value can only be a structure, so that no clause may follow it.
@@ -70,7 +71,7 @@ impl Reader<'_> {
         Ok(self.tree.add(Expr::Changed(copy, list), span))
     }
 
-    fn item(&mut self, mut clauses: Vec<Clause>) -> Read<ExprId> {
+    fn item(&mut self, mut clauses: SmallVec<[Clause; 2]>) -> Read<ExprId> {
         while self.accept(Tok::Comma).is_some() {
             clauses.push(self.clause()?);
         }
@@ -101,11 +102,12 @@ impl Reader<'_> {
             }
             return self.bare_probability(start);
         };
-        let text = if quoted { String::new() } else { self.tree.names.text(sym).to_string() };
-        if words::LATER_CLAUSES.contains(&text.as_str()) {
+        let text = if quoted { "" } else { self.tree.names.text(sym) };
+        if words::LATER_CLAUSES.contains(&text) {
             return Err(Box::new(later(span, &format!("the clause `{text}`"))));
         }
-        let Some(word) = words::clause(&text) else {
+        let Some(word) = words::clause(text) else {
+            let text = text.to_string();
             return self.unknown_word(start, sym, &text);
         };
         self.at += 1;

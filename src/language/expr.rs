@@ -10,6 +10,7 @@ use super::token::{Tok, Token};
 use super::tree::*;
 use super::words;
 use crate::source::{Code, Problem, Span};
+use smallvec::{SmallVec, smallvec};
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 enum Ar {
@@ -60,13 +61,17 @@ struct Level {
     /// `order` of `order 3` in a question's arguments.
     choice: Option<(Sym, Span)>,
     /// Finished entries of a list or arguments of a call.
-    entries: Vec<ExprId>,
-    items: Vec<ExprId>,
-    chain: Vec<Chain>,
-    operands: Vec<ExprId>,
-    operators: Vec<Ar>,
-    prefixes: Vec<Prefix>,
+    entries: SmallVec<[ExprId; 4]>,
+    items: SmallVec<[ExprId; 4]>,
+    chain: SmallVec<[Chain; 4]>,
+    operands: SmallVec<[ExprId; 4]>,
+    operators: SmallVec<[Ar; 4]>,
+    prefixes: SmallVec<[Prefix; 1]>,
 }
+
+/// Open levels, the innermost last. Few lines nest, and few operators stand on
+/// one level: in place, they cost no allocation.
+type Levels = SmallVec<[Level; 1]>;
 
 impl Level {
     fn new(opened: Opened, at: Span, failing: bool) -> Level {
@@ -76,12 +81,12 @@ impl Level {
             failing,
             fails_when: None,
             choice: None,
-            entries: Vec::new(),
-            items: Vec::new(),
-            chain: Vec::new(),
-            operands: Vec::new(),
-            operators: Vec::new(),
-            prefixes: Vec::new(),
+            entries: SmallVec::new(),
+            items: SmallVec::new(),
+            chain: SmallVec::new(),
+            operands: SmallVec::new(),
+            operators: SmallVec::new(),
+            prefixes: SmallVec::new(),
         }
     }
 
@@ -189,7 +194,7 @@ impl Reader<'_> {
     /// An expression, up to the first token that cannot go on with it outside
     /// parentheses; the caller looks at what that token is.
     pub(crate) fn expression(&mut self) -> Read<ExprId> {
-        let mut levels = vec![Level::new(Opened::Root, self.peek_span(), false)];
+        let mut levels: Levels = smallvec![Level::new(Opened::Root, self.peek_span(), false)];
         loop {
             self.operand(&mut levels)?;
             // After an operand: operators go on, closers finish levels.
@@ -271,7 +276,7 @@ impl Reader<'_> {
     }
 
     /// Everything up to and with one operand; may open levels.
-    fn operand(&mut self, levels: &mut Vec<Level>) -> Read<()> {
+    fn operand(&mut self, levels: &mut Levels) -> Read<()> {
         loop {
             let depth = levels.len();
             let level = &mut levels[depth - 1];
@@ -332,7 +337,7 @@ impl Reader<'_> {
     }
 
     /// A word where an operand may stand. Whether it was a whole operand.
-    fn name(&mut self, levels: &mut Vec<Level>, sym: Sym, quoted: bool, span: Span) -> Read<bool> {
+    fn name(&mut self, levels: &mut Levels, sym: Sym, quoted: bool, span: Span) -> Read<bool> {
         let depth = levels.len();
         let level = &mut levels[depth - 1];
         let text = if quoted { "" } else { self.tree.names.text(sym) };

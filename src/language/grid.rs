@@ -143,7 +143,8 @@ impl<'a> GridReader<'_, 'a> {
 
     fn defined(&self) -> FxHashSet<Sym> {
         let names = self.tree.statements.iter().flat_map(|s| match &s.line {
-            Line::Define { names, .. } | Line::Broken(names) => names.as_slice(),
+            Line::Define { names, .. } => names.as_slice(),
+            Line::Broken(names) => names.as_slice(),
             _ => &[],
         });
         names.map(|(s, _)| *s).collect()
@@ -192,7 +193,10 @@ impl<'a> GridReader<'_, 'a> {
     }
 
     fn define_statement(&mut self, name: (Sym, Span), value: ExprId) {
-        self.statement(Line::Define { names: vec![name], params: None, value, display: None }, name.1);
+        self.statement(
+            Line::Define { names: smallvec::smallvec![name], params: None, value, display: None },
+            name.1,
+        );
     }
 
     fn row_name(&mut self, columns: &[Column], cells: &[Source<'a>]) -> Option<(Sym, Span)> {

@@ -5,6 +5,7 @@ use super::token::{Tok, Token};
 use super::tree::*;
 use super::words;
 use crate::source::{Code, Problem, Span};
+use smallvec::SmallVec;
 
 /// What a run of tokens begins.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -119,7 +120,7 @@ impl Reader<'_> {
     }
 
     fn definition(&mut self, asks: bool) -> Read<Line> {
-        let mut names = Vec::new();
+        let mut names = SmallVec::new();
         let mut params = None;
         while let Some(Tok::Name { sym, quoted }) = self.peek() {
             let span = self.peek_span();

@@ -184,7 +184,7 @@ impl Open {
         problems: &mut Vec<Problem>,
         asks: bool,
     ) {
-        let open = std::mem::take(self);
+        let mut open = std::mem::take(self);
         if open.tokens.is_empty() && mark.is_none() && !open.broken {
             return;
         }
@@ -204,5 +204,8 @@ impl Open {
             Line::Broken(names_before_equals(&open.tokens))
         });
         tree.statements.push(Statement { line, span, mark, block });
+        // The next statement takes the room of this one's tokens.
+        open.tokens.clear();
+        self.tokens = open.tokens;
     }
 }

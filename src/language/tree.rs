@@ -7,6 +7,7 @@
 use super::words::ClauseWord;
 use crate::source::Span;
 use rustc_hash::FxHashMap;
+use smallvec::SmallVec;
 use unicode_normalization::UnicodeNormalization;
 
 /// A name, as a number that is equal where the names are equal.
@@ -236,7 +237,7 @@ pub enum Line {
     /// `P1, P2 = a pump`, `lane(s) = s -> cpu`, `gain = F(a) / F(b) ?`
     Define {
         /// The names, with their places.
-        names: Vec<(Sym, Span)>,
+        names: SmallVec<[(Sym, Span); 1]>,
         /// Parameters, where there is a list of them.
         params: Option<Vec<(Sym, Span)>>,
         /// The right side.

@@ -125,13 +125,22 @@ pub fn clause(word: &str) -> Option<ClauseWord> {
 
 /// Whether `word` begins a clause, now or later.
 pub fn begins_clause(word: &str) -> bool {
-    clause(word).is_some() || LATER_CLAUSES.contains(&word)
+    may_be_word(word) && (clause(word).is_some() || LATER_CLAUSES.contains(&word))
 }
 
 /// Whether `word` cannot be a name unless it is quoted.
 pub fn is_reserved(word: &str) -> bool {
-    RESERVED.contains(&word) || begins_clause(word) || STARTERS.contains(&word)
+    may_be_word(word) && (RESERVED.contains(&word) || begins_clause(word) || STARTERS.contains(&word))
 }
+
+/// Reserved words are of few small letters: most names are told from them
+/// without looking through the lists.
+fn may_be_word(word: &str) -> bool {
+    word.len() <= LONGEST_WORD && word.bytes().all(|b| b.is_ascii_lowercase())
+}
+
+/// Letters of the longest reserved word.
+const LONGEST_WORD: usize = 9;
 
 /// The known word nearest to `word`, when one is near enough to be meant.
 ///
@@ -179,6 +188,15 @@ fn distance(a: &[char], b: &[char]) -> usize {
 #[cfg(test)]
 mod tests {
     use super::*;
+
+    #[test]
+    fn reserved_words_are_of_few_small_letters() {
+        let clauses = CLAUSES.iter().map(|(w, _)| *w);
+        for word in clauses.chain([LATER_CLAUSES, RESERVED, STARTERS].concat()) {
+            assert!(is_reserved(word), "{word}");
+        }
+        assert!(!is_reserved("pump_1") && !is_reserved("Rate") && !is_reserved("separately"));
+    }
 
     #[test]
     fn nearest_allows_a_third_of_the_letters() {

@@ -1,18 +1,19 @@
 //! One note from end to end: places, language, model, answers, edits.
 
+mod ahead;
+mod answers;
 mod place;
 mod read;
 
 use crate::answer::{Desk, Number, Reply, Verdict, require, written};
-use crate::document::markdown::find;
 pub use crate::document::patch::Rewrite;
 use crate::document::patch::{Edit, apply};
 use crate::language::{self, Line, Mark, Source, Tree};
 use crate::source::{Code, Problem, Sources, Span};
 use crate::steps::json as steps_json;
 use crate::system::{Fault, Model, Out};
-use read::{Read, read};
-use std::collections::BTreeMap;
+use answers::{answer_all, remarks, told_once};
+use read::{Read, find_and_read};
 use std::sync::Arc;
 
 /// One question and what came of it.
@@ -72,9 +73,9 @@ pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text.clone()) else { return too_much_text(sources) };
     let text: &str = &text;
-    let found = find(text, base);
-    if found.places.is_empty() {
-        let mut problems = found.problems;
+    let read = find_and_read(text, base);
+    if read.found.places.is_empty() {
+        let mut problems = read.found.problems;
         if problems.is_empty() {
             let place = Span { start: base, end: base };
             problems.push(
@@ -85,7 +86,6 @@ pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
         }
         return Filled { sources, problems, asked: Vec::new(), unmet: 0, rewrite: Rewrite::Unchanged };
     }
-    let read = read(text, base, found);
     let (problems, asked, unmet, rewrite) = answer_note(&read, &sources, text, base);
     Filled { sources, problems, asked, unmet, rewrite }
 }
@@ -101,44 +101,19 @@ fn too_much_text(sources: Sources) -> Filled {
 pub fn syntax(name: &str, text: &str) -> (Sources, Tree, Vec<Problem>) {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return (sources, Tree::default(), Vec::new()) };
-    let read = read(text, base, find(text, base));
+    let read = find_and_read(text, base);
     (sources, read.tree, read.problems)
 }
 
 type Outcome = (Vec<Problem>, Vec<Asked>, usize, Rewrite);
 
-/// A statement's reply, before it has a place in the note.
-struct Answered {
-    statement: usize,
-    mark: Mark,
-    reply: Out<Reply>,
-    unmet: bool,
-    remarks: Vec<String>,
-}
-
 fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome {
     let mut model = Model::new(&read.tree, sources);
-    let mut desk = Desk::default();
-    let mut work = Work {
-        read,
-        text,
-        base,
-        edits: Vec::new(),
-        asked: Vec::new(),
-        unmet: 0,
-        problems: Vec::new(),
-        cells: Vec::new(),
-        shifts: Vec::new(),
-        told: BTreeMap::new(),
-    };
-    let replies: Vec<Answered> = (0..read.tree.statements.len())
-        .filter_map(|index| work.statement(index, &mut model, &mut desk))
-        .collect();
-    work.finish_remarks();
-    work.place_all(&replies, &model);
-    for def in 0..model.defs.len() as u32 {
-        model.try_definition(crate::system::DefId(def));
-    }
+    let (answered, mut desk) = answer_all(&mut model);
+    let unmet = answered.iter().filter(|a| a.unmet).count();
+    let mut work = Work::new(read, text, base);
+    work.problems = told_once(&answered);
+    work.place_all(&answered, &model);
     let mut problems = read.found.problems.clone();
     problems.extend(read.problems.iter().cloned());
     show_readings(&mut model, &mut desk);
@@ -163,7 +138,7 @@ fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome
         }
     };
     work.asked.sort_by_key(|a| a.place.start);
-    (problems, work.asked, work.unmet, rewrite)
+    (problems, work.asked, unmet, rewrite)
 }
 
 /// Adds what each reading of a mixed line would give.
@@ -202,110 +177,24 @@ struct Work<'a> {
     base: u32,
     edits: Vec<Edit>,
     asked: Vec<Asked>,
-    unmet: usize,
     problems: Vec<Problem>,
     /// Answers of table cells: place, row, column, text.
     cells: Vec<(usize, usize, usize, String)>,
     /// Where answers add or take lines, and how many: by place, summed up.
     shifts: Vec<(usize, i64)>,
-    /// Remarks made so far: where among the problems, and how many more answers they belong to.
-    told: BTreeMap<(Code, String), (usize, usize)>,
 }
 
-impl Work<'_> {
-    fn statement(&mut self, index: usize, model: &mut Model<'_>, desk: &mut Desk) -> Option<Answered> {
-        let statement = &self.read.tree.statements[index];
-        let asks = statement.mark.is_some();
-        let value = match &statement.line {
-            Line::Ask { value, display } => Some((*value, *display)),
-            Line::Define { value, display, .. } if asks => Some((*value, *display)),
-            Line::Require { left, limit, right } => {
-                let out = require(desk, model, *left, *limit, *right);
-                let (reply, unmet) = match out {
-                    Ok((verdict, text)) => (Ok(Reply::Line(text)), verdict != Verdict::Met),
-                    Err(fault) => (Err(fault), false),
-                };
-                if unmet {
-                    self.unmet += 1;
-                    if let Ok(Reply::Line(text)) = &reply {
-                        self.problems.push(Problem::remark(
-                            Code::NotMet,
-                            statement.span,
-                            format!("requirement {text}"),
-                        ));
-                    }
-                }
-                let remarks = self.remarks(statement.span, desk);
-                let mark = statement.mark?;
-                return Some(Answered { statement: index, mark, reply, unmet, remarks });
-            }
-            Line::Broken(_) if asks => None,
-            _ => return None,
-        };
-        let mark = statement.mark?;
-        let reply = match value {
-            None => Err(Fault(u32::MAX)),
-            Some((value, display)) => reply_to(value, display, model, desk),
-        };
-        let remarks = self.remarks(statement.span, desk);
-        Some(Answered { statement: index, mark, reply, unmet: false, remarks })
-    }
-
-    /// What an answer rests on that its reader should know: one folded remark for
-    /// things in several places, one for probabilities that an asked exposure left
-    /// alone, one for a list cut short. Returned for the answer; as a problem each
-    /// stands once, at the first answer it belongs to.
-    fn remarks(&mut self, place: Span, desk: &mut Desk) -> Vec<String> {
-        let mut found: Vec<Problem> = Vec::new();
-        let mut names: Vec<String> = Vec::new();
-        for prepared in desk.take_leant_on() {
-            for name in &prepared.repeated {
-                if !names.contains(name) {
-                    names.push(name.clone());
-                }
-            }
-        }
-        if !names.is_empty() {
-            let (verb, count) = if names.len() == 1 {
-                ("stands", "counts as one thing")
-            } else {
-                ("stand", "count as one thing each")
-            };
-            let list = crate::steps::listed(&names);
-            let message = format!("{list} {verb} in several places and {count}");
-            found.push(Problem::remark(Code::UsedTwice, place, message));
-        }
-        for text in desk.take_cut_short() {
-            let mend = "ask for a number of your own, `first 200`, for low orders, `order 3`, or for their `count(…)`";
-            found.push(Problem::remark(Code::CutShort, place, text).mend(mend));
-        }
-        let unscaled = desk.take_unscaled();
-        if !unscaled.is_empty() {
-            let list = crate::steps::listed(&unscaled);
-            let message = format!("the exposure asked for does not change the fixed probability of {list}");
-            let mend = "give a rate, or the exposure that the probability is for: `0.98 over 1000 h`";
-            found.push(Problem::remark(Code::FixedProbability, place, message).mend(mend));
-        }
-        let texts = found.iter().map(|p| p.message.clone()).collect();
-        for problem in found {
-            match self.told.get_mut(&(problem.code, problem.message.clone())) {
-                Some((_, more)) => *more += 1,
-                None => {
-                    self.told.insert((problem.code, problem.message.clone()), (self.problems.len(), 0));
-                    self.problems.push(problem);
-                }
-            }
-        }
-        texts
-    }
-
-    /// Says of each remark how many more answers it belongs to.
-    fn finish_remarks(&mut self) {
-        for (at, more) in self.told.values() {
-            if *more > 0 {
-                let answers = if *more == 1 { "answer" } else { "answers" };
-                self.problems[*at].mark = format!("and {more} more {answers}");
-            }
+impl<'a> Work<'a> {
+    fn new(read: &'a Read, text: &'a str, base: u32) -> Work<'a> {
+        Work {
+            read,
+            text,
+            base,
+            edits: Vec::new(),
+            asked: Vec::new(),
+            problems: Vec::new(),
+            cells: Vec::new(),
+            shifts: Vec::new(),
         }
     }
 }
@@ -359,7 +248,7 @@ fn one_question(
 ) -> Filled {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return too_much_text(sources) };
-    let mut read = read(text, base, find(text, base));
+    let mut read = find_and_read(text, base);
     let wanted = read.tree.statements.len();
     let lines = given.iter().map(|g| ("--given", g.as_str()));
     let question_line = question.trim().trim_end_matches('?');
@@ -389,19 +278,9 @@ fn one_question(
         }
         _ => Err(Fault(u32::MAX)),
     };
-    let mut work = Work {
-        read: &read,
-        text,
-        base,
-        edits: Vec::new(),
-        asked: Vec::new(),
-        unmet,
-        problems: Vec::new(),
-        cells: Vec::new(),
-        shifts: Vec::new(),
-        told: BTreeMap::new(),
-    };
-    let remarks = work.remarks(statement.span, &mut desk);
+    let mut work = Work::new(&read, text, base);
+    remarks(statement.span, &mut desk, &mut work.problems);
+    let told = work.problems.iter().map(|p| p.message.clone()).collect();
     show_readings(&mut model, &mut desk);
     let mark = statement.mark.unwrap_or(Mark { at: statement.span.end, answer: statement.span, line: 0 });
     let (new, error) = match out {
@@ -416,7 +295,7 @@ fn one_question(
         stale: false,
         error,
         unmet: unmet > 0,
-        remarks,
+        remarks: told,
     };
     let mut problems: Vec<Problem> = read.found.problems.clone();
     problems.extend(read.problems.iter().cloned());

@@ -1,7 +1,8 @@
 //! Replies to edits: each answer goes to the place of its question, and what
 //! the user wrote there stays.
 
-use super::{Answered, Asked, Work};
+use super::answers::{Answered, MANY};
+use super::{Asked, Work};
 use crate::answer::Reply;
 use crate::document::answer_place::{
     FenceAnswer, block_edit, bytes_of_lines, fence_edits, inline_edit, old_answer_lines, row_edits,
@@ -20,7 +21,7 @@ impl Work<'_> {
         let problems = self.problems.len();
         self.place_once(replies, model);
         self.shifts = self.line_shifts();
-        let names_lines = replies.iter().any(|r| r.reply.is_err());
+        let names_lines = replies.iter().any(|r| r.mark.is_some() && r.reply.is_err());
         if names_lines && !self.shifts.is_empty() {
             self.problems.truncate(problems);
             self.edits.clear();
@@ -29,7 +30,28 @@ impl Work<'_> {
         }
     }
 
+    /// Places all replies; of many, both halves at once.
     fn place_once(&mut self, replies: &[Answered], model: &Model<'_>) {
+        // The cells of one row are written together.
+        let block = |a: &Answered| self.read.tree.statements[a.statement].block;
+        let mut half = if replies.len() < MANY { replies.len() } else { replies.len() / 2 };
+        while half > 0 && half < replies.len() && block(&replies[half]) == block(&replies[half - 1]) {
+            half += 1;
+        }
+        let (first, second) = replies.split_at(half);
+        if second.is_empty() {
+            return self.place_some(first, model);
+        }
+        let mut other = Work::new(self.read, self.text, self.base);
+        other.shifts.clone_from(&self.shifts);
+        rayon::join(|| self.place_some(first, model), || other.place_some(second, model));
+        self.edits.append(&mut other.edits);
+        self.edits.sort_by_key(|e| (e.span.start, e.span.end));
+        self.asked.append(&mut other.asked);
+        self.problems.append(&mut other.problems);
+    }
+
+    fn place_some(&mut self, replies: &[Answered], model: &Model<'_>) {
         for answered in replies {
             self.place(answered, model);
         }
@@ -59,24 +81,29 @@ impl Work<'_> {
     }
 
     fn place(&mut self, answered: &Answered, model: &Model<'_>) {
-        let Answered { statement: index, mark, unmet, .. } = *answered;
-        let reply = answered.reply.clone();
+        let Answered { statement: index, mark: Some(mark), unmet, .. } = *answered else { return };
         let read = self.read;
         let statement = &read.tree.statements[index];
-        let reply = reply.unwrap_or_else(|fault| {
-            let in_cell = matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
-            Reply::Error(self.message(fault, statement.span, mark, in_cell, model))
-        });
+        let message;
+        let reply = match &answered.reply {
+            Ok(reply) => reply,
+            Err(fault) => {
+                let in_cell =
+                    matches!(read.found.places.get(statement.block as usize), Some(Place::Table(_)));
+                message = Reply::Error(self.message(*fault, statement.span, mark, in_cell, model));
+                &message
+            }
+        };
         let error = matches!(reply, Reply::Error(_));
         let broken = matches!(statement.line, Line::Broken(_));
         let (old, stale) = match &read.found.places[statement.block as usize] {
-            Place::Fence(fence) => self.in_fence(fence, mark, &reply, broken, model),
-            Place::Pair(pair) => self.in_pair(pair, &reply, broken, model),
+            Place::Fence(fence) => self.in_fence(fence, mark, reply, broken, model),
+            Place::Pair(pair) => self.in_pair(pair, reply, broken, model),
             Place::Table(table) => {
                 let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
                     return;
                 };
-                self.in_table(table, (block, row, column), &reply, model)
+                self.in_table(table, (block, row, column), reply, model)
             }
         };
         let question = self.slice(statement.span).to_string();
@@ -88,7 +115,7 @@ impl Work<'_> {
             stale,
             error,
             unmet,
-            remarks: answered.remarks.clone(),
+            remarks: answered.remarks(),
         });
     }
 

@@ -40,11 +40,21 @@ pub struct Digits {
 /// coarser bound the two ends must round alike.
 const TIE_BOUND: f64 = 8.3e-25; // 2^-80
 
+/// The doubles nearest to 10^-16 up to 10^16, where most answers lie.
+#[rustfmt::skip]
+const NEAR_TENS: [f64; 33] = [
+    1e-16, 1e-15, 1e-14, 1e-13, 1e-12, 1e-11, 1e-10, 1e-9, 1e-8, 1e-7, 1e-6, 1e-5, 1e-4, 1e-3, 1e-2, 1e-1,
+    1e0, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16,
+];
+
 /// The largest k with 10^k <= value, for a finite value above zero.
 fn decimal_exponent(value: Real) -> i32 {
-    // Computed where it is needed: a table of all powers took more than half of
-    // the instructions that a small note takes in all.
-    let ten = |k: i32| decimal::real(1, i64::from(k)).hi();
+    // Far out computed where it is needed: a table of all powers took more than
+    // half of the instructions that a small note takes in all.
+    let ten = |k: i32| match NEAR_TENS.get((k + 16) as usize) {
+        Some(near) => *near,
+        None => decimal::real(1, i64::from(k)).hi(),
+    };
     // 1233 / 4096 is log10(2) to within 2e-6: low by one at most.
     let mut k = ((binary_exponent(value.hi()) * 1233) >> 12) - 1;
     while value.hi() > ten(k + 1) || (value.hi() == ten(k + 1) && value >= decimal::real(1, i64::from(k + 1)))
@@ -56,14 +66,37 @@ fn decimal_exponent(value: Real) -> i32 {
 
 /// `value * 10^places` rounded to a whole number, for a finite value of zero
 /// or more; `None` if the bound does not decide it.
-fn round_scaled(value: Real, places: i32, bound: f64, rounding: Rounding) -> Option<UBig> {
+fn round_scaled(value: Real, places: i32, bound: f64, rounding: Rounding) -> Option<Whole> {
     if !(0.0..1.0).contains(&bound) {
         return None;
     }
     match round_quickly(value, places, bound, rounding) {
-        Quick::Decided(whole) => Some(UBig::from(whole)),
+        Quick::Decided(whole) => Some(Whole::Small(whole)),
         Quick::Undecided => None,
-        Quick::Unclear => round_exactly(value, places, bound, rounding),
+        Quick::Unclear => round_exactly(value, places, bound, rounding).map(Whole::Large),
+    }
+}
+
+/// A whole number of the size that it needs.
+#[derive(Clone, PartialEq, Eq, Debug)]
+enum Whole {
+    Small(u64),
+    Large(UBig),
+}
+
+impl Whole {
+    fn is_zero(&self) -> bool {
+        match self {
+            Whole::Small(whole) => *whole == 0,
+            Whole::Large(whole) => *whole == UBig::ZERO,
+        }
+    }
+
+    fn text(&self) -> String {
+        match self {
+            Whole::Small(whole) => whole.to_string(),
+            Whole::Large(whole) => whole.to_string(),
+        }
     }
 }
 
@@ -212,7 +245,7 @@ pub fn round_significant(value: Real, digits: u8, bound: f64, rounding: Rounding
         return None;
     }
     if value.is_zero() {
-        return Some(Digits::from_whole(false, &UBig::ZERO, 0));
+        return Some(Digits::from_whole(false, &Whole::Small(0), 0));
     }
     let count = i32::from(digits.clamp(1, 17));
     let negative = value.is_negative();
@@ -235,11 +268,11 @@ pub fn round_decimals(value: Real, decimals: u16, bound: f64, rounding: Rounding
     let places = i32::from(decimals);
     let negative = value.is_negative();
     let whole = if value.is_zero() {
-        UBig::ZERO
+        Whole::Small(0)
     } else {
         round_scaled(value.abs(), places, bound, for_size(rounding, negative))?
     };
-    Some(Digits::from_whole(negative && whole != UBig::ZERO, &whole, -places))
+    Some(Digits::from_whole(negative && !whole.is_zero(), &whole, -places))
 }
 
 /// How many significant digits, `wanted` at most, the bound decides when
@@ -251,10 +284,18 @@ pub fn decided_digits(value: Real, bound: f64, wanted: u8) -> u8 {
         .unwrap_or(0)
 }
 
+/// The value to as many significant digits, `wanted` at most, as the bound
+/// decides when rounding to the nearest; `None` if not even one.
+pub(super) fn round_decided(value: Real, bound: f64, wanted: u8) -> Option<Digits> {
+    (1..=wanted.clamp(1, 17))
+        .rev()
+        .find_map(|count| round_significant(value, count, bound, Rounding::Nearest))
+}
+
 impl Digits {
     /// A whole number times 10^last.
-    fn from_whole(negative: bool, whole: &UBig, last: i32) -> Digits {
-        let digits = whole.to_string();
+    fn from_whole(negative: bool, whole: &Whole, last: i32) -> Digits {
+        let digits = whole.text();
         let exponent = last + digits.len() as i32 - 1;
         Digits { negative, digits, exponent }
     }
@@ -296,11 +337,19 @@ impl Digits {
     #[must_use]
     pub fn complement(&self) -> Digits {
         let decimals = self.decimals().max(0);
+        let small = || {
+            let one = 10_u64.checked_pow(decimals.unsigned_abs()).filter(|_| decimals == self.decimals())?;
+            let whole: u64 = self.digits.parse().ok()?;
+            Some(Whole::Small(if self.negative { 0 } else { one.saturating_sub(whole) }))
+        };
+        if let Some(left) = small() {
+            return Digits::from_whole(false, &left, -decimals);
+        }
         let one = UBig::from(10u8).pow(decimals as usize);
         let zeros = "0".repeat((decimals - self.decimals()) as usize);
         let whole = format!("{}{zeros}", self.digits).parse().unwrap_or(UBig::ZERO);
         let left = if self.negative || whole > one { UBig::ZERO } else { one - whole };
-        Digits::from_whole(false, &left, -decimals)
+        Digits::from_whole(false, &Whole::Large(left), -decimals)
     }
 
     /// In plain decimals, such as `0.01430`. Places before the point that have
@@ -467,8 +516,8 @@ mod tests {
                 for bound in [0.0, FINE, 1e-16, 1e-5] {
                     let exact = round_exactly(value, places, bound, rounding);
                     assert_eq!(
-                        round_scaled(value, places, bound, rounding),
-                        exact,
+                        round_scaled(value, places, bound, rounding).map(|whole| whole.text()),
+                        exact.map(|whole| whole.to_string()),
                         "{value:?} {count} {bound}"
                     );
                 }

@@ -4,7 +4,7 @@
 //! the wanted digits are, fewer are written, and where none is, the result is
 //! `None` and the caller must show an interval.
 
-use super::digits::{Digits, Rounding, decided_digits, round_decimals, round_significant};
+use super::digits::{Digits, Rounding, round_decided, round_decimals};
 use super::{Chance, Real};
 
 /// From this power of ten on, numbers take an exponent.
@@ -18,7 +18,7 @@ const NINES: i32 = -15;
 const LEAST: i32 = -300;
 
 fn significant(value: Real, digits: u8, bound: f64) -> Option<Digits> {
-    round_significant(value, decided_digits(value, bound, digits), bound, Rounding::Nearest)
+    round_decided(value, bound, digits)
 }
 
 /// The rounded number in the notation of its size, after rounding.

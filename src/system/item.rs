@@ -44,9 +44,9 @@ pub struct Item {
     /// Ways to fail that grow with exposures.
     pub ageing: Vec<Ageing>,
     /// `duty 30%`
-    pub duty: Option<Quantity>,
+    pub duty: Option<Box<Quantity>>,
     /// `stress 8`
-    pub stress: Option<Quantity>,
+    pub stress: Option<Box<Quantity>>,
     /// `source "…"`
     pub source: Option<Sym>,
     /// `cost`, `mass` and declared ones.
@@ -74,8 +74,8 @@ impl Item {
     /// The figure of a clause, for `pump.rate`.
     pub(super) fn figure(&self, word: &str, names: &Names) -> Option<Quantity> {
         match word {
-            "duty" => return self.duty.clone(),
-            "stress" => return self.stress.clone(),
+            "duty" => return self.duty.as_deref().cloned(),
+            "stress" => return self.stress.as_deref().cloned(),
             _ => {}
         }
         if let Some((_, value)) = self.attributes.iter().find(|(w, _)| names.text(*w) == word) {
@@ -230,8 +230,10 @@ impl Model<'_> {
     fn read_item(&mut self, expr: ExprId, clauses: List) -> Out<Item> {
         let mut item = Item { span: self.tree.span(expr), ..Item::default() };
         let mut failed = None;
-        for clause in self.tree.clauses(clauses).to_vec() {
-            if let Err(fault) = self.read_clause(&mut item, clause) {
+        let tree = self.tree;
+        item.clauses.reserve_exact(clauses.len());
+        for clause in tree.clauses(clauses) {
+            if let Err(fault) = self.read_clause(&mut item, *clause) {
                 failed = failed.or(Some(fault));
             }
         }
@@ -303,10 +305,12 @@ impl Model<'_> {
             ClauseWord::Works | ClauseWord::Fails => self.read_probability(item, clause)?,
             ClauseWord::Rate | ClauseWord::Mttf | ClauseWord::Mtbf => self.read_pace(item, clause)?,
             ClauseWord::Duty => {
-                item.duty = clause.value.map(|v| self.factor(v, "duty", Some(1.0))).transpose()?;
+                item.duty =
+                    clause.value.map(|v| self.factor(v, "duty", Some(1.0)).map(Box::new)).transpose()?;
             }
             ClauseWord::Stress => {
-                item.stress = clause.value.map(|v| self.factor(v, "stress", None)).transpose()?;
+                item.stress =
+                    clause.value.map(|v| self.factor(v, "stress", None).map(Box::new)).transpose()?;
             }
             ClauseWord::Source => {
                 if let Some(Expr::Name(sym)) = clause.value.map(|v| self.tree.expr(v)) {
@@ -373,12 +377,9 @@ impl Model<'_> {
             Some(over) => {
                 let amount = self.figure(over)?;
                 let place = self.tree.span(over);
-                let base = self.exposure_base(
-                    &amount,
-                    1,
-                    place,
-                    "after `over` stands a time or a declared exposure",
-                )?;
+                let base = self.exposure_base(&amount, 1, place, &|| {
+                    "after `over` stands a time or a declared exposure".to_string()
+                })?;
                 if amount.value <= Real::ZERO {
                     return Err(self.fault(
                         Problem::error(Code::OutsideRange, place, "the exposure after `over` is above zero")
@@ -417,12 +418,14 @@ impl Model<'_> {
         let place = self.tree.span(value);
         let figure = self.figure(value)?;
         let is_rate = clause.word == ClauseWord::Rate;
-        let word = self.tree.names.text(clause.name).to_string();
+        let tree = self.tree;
+        let word = tree.names.text(clause.name);
         let (power, wants) = if is_rate {
-            (-1, format!("`{word}` takes a rate: /h, /Mh, /yr, FIT, %/kh, or per a declared exposure"))
+            (-1, "takes a rate: /h, /Mh, /yr, FIT, %/kh, or per a declared exposure")
         } else {
-            (1, format!("`{word}` takes a time: h, kh, Mh, yr, or a declared exposure"))
+            (1, "takes a time: h, kh, Mh, yr, or a declared exposure")
         };
+        let wants = || format!("`{word}` {wants}");
         let base = self.exposure_base(&figure, power, place, &wants)?;
         if figure.value.is_negative() || (!is_rate && figure.value.is_zero()) {
             return Err(self.fault(if is_rate {
@@ -450,12 +453,20 @@ impl Model<'_> {
                 .mend("keep one, or add the rates: `rate 2 /Mh + 3 /Mh`"),
             ));
         }
+        // Nearly all items have one: left to itself, the list makes room for four.
+        item.ageing.reserve_exact(1);
         item.ageing.push(ageing);
         Ok(())
     }
 
     /// The base of a figure that must be an exposure (`power` 1) or a rate (−1).
-    fn exposure_base(&mut self, figure: &Quantity, power: i16, place: Span, wants: &str) -> Out<Base> {
+    fn exposure_base(
+        &mut self,
+        figure: &Quantity,
+        power: i16,
+        place: Span,
+        wants: &dyn Fn() -> String,
+    ) -> Out<Base> {
         let fits = |b: Base, this: &Model<'_>| match b {
             Base::Time => true,
             Base::Word(w) => this.units.exposures.contains_key(&w),
@@ -463,10 +474,8 @@ impl Model<'_> {
         };
         match figure.dim.single() {
             Some((base, p)) if p == power && fits(base, self) => Ok(base),
-            None if figure.dim.is_none() => {
-                Err(self
-                    .fault(Problem::error(Code::MissingUnit, place, "this value needs its unit").mend(wants)))
-            }
+            None if figure.dim.is_none() => Err(self
+                .fault(Problem::error(Code::MissingUnit, place, "this value needs its unit").mend(wants()))),
             _ => {
                 let what = self.units.describe(&figure.dim, &self.tree.names);
                 let problem = Problem::error(
@@ -474,7 +483,7 @@ impl Model<'_> {
                     place,
                     format!("this is {what}, which does not fit here"),
                 );
-                Err(self.fault(problem.mend(wants)))
+                Err(self.fault(problem.mend(wants())))
             }
         }
     }

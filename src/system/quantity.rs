@@ -2,6 +2,7 @@
 
 use crate::language::Sym;
 use crate::number::Real;
+use smallvec::{SmallVec, smallvec};
 
 /// What a dimension is made of.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -16,15 +17,15 @@ pub enum Base {
 
 /// Powers of bases; empty for a bare number.
 #[derive(Clone, PartialEq, Eq, Debug, Default)]
-pub struct Dim(Vec<(Base, i16)>);
+pub struct Dim(SmallVec<[(Base, i16); 1]>);
 
 impl Dim {
     /// A bare number.
-    pub const NONE: Dim = Dim(Vec::new());
+    pub const NONE: Dim = Dim(SmallVec::new_const());
 
     /// A base to a power.
     pub fn of(base: Base, power: i16) -> Dim {
-        Dim(vec![(base, power)])
+        Dim(smallvec![(base, power)])
     }
 
     /// Whether it is a bare number.
@@ -62,7 +63,11 @@ impl Dim {
 
     /// The root of degree 2, where there is one.
     pub fn sqrt(&self) -> Option<Dim> {
-        self.0.iter().map(|(b, p)| (p % 2 == 0).then_some((*b, p / 2))).collect::<Option<Vec<_>>>().map(Dim)
+        self.0
+            .iter()
+            .map(|(b, p)| (p % 2 == 0).then_some((*b, p / 2)))
+            .collect::<Option<SmallVec<_>>>()
+            .map(Dim)
     }
 }
 

@@ -4,6 +4,7 @@
 use super::model::{DefId, Fault, Model};
 use crate::language::{Expr, ExprId, Line, Need, Suffix, Sym, words};
 use crate::source::{Code, Label, Problem, Span};
+use smallvec::{SmallVec, smallvec};
 use unicode_security::skeleton;
 
 /// Places shown beside the first where one cause has many.
@@ -22,21 +23,36 @@ enum Use {
 
 /// Two keys under which names that look alike are equal: one without case, one
 /// by the shapes of letters (Unicode Technical Standard 39 beyond ASCII).
-pub(super) fn look_alike_keys(name: &str) -> Vec<String> {
-    // Letters of other scripts become the Latin ones that they look like; what is
-    // then alike in small print is made one by hand: I, l, 1; O, 0; rn, m.
-    let latin: std::borrow::Cow<'_, str> =
-        if name.is_ascii() { name.into() } else { skeleton(name).collect::<String>().into() };
-    let shapes: String = latin
-        .chars()
-        .map(|c| match c {
-            'I' | '1' | 'l' => 'l',
-            'O' | 'o' | '0' => 'o',
-            c => c.to_ascii_lowercase(),
-        })
-        .collect();
+///
+/// They are written into the two given texts: thousands of names in turn take
+/// the room of one.
+pub(super) fn look_alike_keys(name: &str, [case, shapes]: &mut [String; 2]) {
+    case.clear();
+    shapes.clear();
     // The mark keeps the two kinds of key apart.
-    vec![name.to_lowercase(), format!("~{}", shapes.replace("rn", "m"))]
+    shapes.push('~');
+    if name.is_ascii() {
+        case.push_str(name);
+        case.make_ascii_lowercase();
+        name.chars().for_each(|c| push_shape(c, shapes));
+    } else {
+        case.extend(name.chars().flat_map(char::to_lowercase));
+        // Letters of other scripts become the Latin ones that they look like.
+        skeleton(name).for_each(|c| push_shape(c, shapes));
+    }
+}
+
+/// What is alike in small print is made one: I, l, 1; O, o, 0; rn, m.
+fn push_shape(c: char, shapes: &mut String) {
+    match c {
+        'I' | '1' | 'l' => shapes.push('l'),
+        'O' | 'o' | '0' => shapes.push('o'),
+        'n' | 'N' if shapes.ends_with('r') => {
+            shapes.pop();
+            shapes.push('m');
+        }
+        c => shapes.push(c.to_ascii_lowercase()),
+    }
 }
 
 impl Model<'_> {
@@ -46,6 +62,7 @@ impl Model<'_> {
         // Who rests on whom; sorted by owner only where a circle is possible.
         let mut below: Vec<(DefId, DefId)> = Vec::new();
         let mut owners: Vec<DefId> = Vec::new();
+        let mut stack: Vec<(ExprId, Use)> = Vec::new();
         let mut only_back = true;
         for index in 0..self.tree.statements.len() {
             let statement = &self.tree.statements[index];
@@ -58,7 +75,8 @@ impl Model<'_> {
                 owners.extend(names.iter().filter_map(|(s, _)| self.lookup(*s)));
             }
             for root in roots(&statement.line) {
-                self.walk(root, &params, &mut |model, expr, def, used| {
+                stack.push((root, Use::Open));
+                self.walk(&mut stack, &params, &mut |model, expr, def, used| {
                     let slot = &mut uses[def.0 as usize];
                     let place = model.tree.span(expr);
                     match used {
@@ -84,9 +102,13 @@ impl Model<'_> {
         self.check_aliases(&uses);
     }
 
-    /// Calls `found` with every name under `root` that is defined.
-    fn walk(&mut self, root: ExprId, params: &[Sym], found: &mut dyn FnMut(&Model<'_>, ExprId, DefId, Use)) {
-        let mut stack = vec![(root, Use::Open)];
+    /// Calls `found` with every name under those on the stack that is defined.
+    fn walk(
+        &mut self,
+        stack: &mut Vec<(ExprId, Use)>,
+        params: &[Sym],
+        found: &mut impl FnMut(&Model<'_>, ExprId, DefId, Use),
+    ) {
         while let Some((id, used)) = stack.pop() {
             match self.tree.expr(id) {
                 Expr::Literal(_) | Expr::Broken => {}
@@ -134,10 +156,10 @@ impl Model<'_> {
                     // The second argument of `total` is the word of an attribute, no name.
                     stack.extend(args.filter(|(i, _)| !(total && *i == 1)).map(|(i, x)| (*x, of(i))));
                 }
-                Expr::Item(clauses) => self.clause_values(clauses, &mut stack),
+                Expr::Item(clauses) => self.clause_values(clauses, stack),
                 Expr::Changed(copy, clauses) => {
                     stack.push((copy, Use::Thing));
-                    self.clause_values(clauses, &mut stack);
+                    self.clause_values(clauses, stack);
                 }
                 Expr::Mixed(mixed) => {
                     self.mixed_operators(id, mixed);
@@ -378,13 +400,13 @@ pub(super) enum Bound {
 }
 
 /// The expressions of a line.
-fn roots(line: &Line) -> Vec<ExprId> {
+fn roots(line: &Line) -> SmallVec<[ExprId; 2]> {
     match line {
         Line::Define { value, .. } | Line::Ask { value, .. } | Line::Digits(value) | Line::Year(value) => {
-            vec![*value]
+            smallvec![*value]
         }
-        Line::Require { left, right, .. } => vec![*left, *right],
+        Line::Require { left, right, .. } => smallvec![*left, *right],
         Line::Mission(phases) => phases.iter().flat_map(|p| [Some(p.amount), p.stress]).flatten().collect(),
-        Line::Exposure(_) | Line::Attribute(_) | Line::Broken(_) => Vec::new(),
+        Line::Exposure(_) | Line::Attribute(_) | Line::Broken(_) => SmallVec::new(),
     }
 }

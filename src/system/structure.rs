@@ -33,6 +33,12 @@ pub struct Structure {
 }
 
 impl Structure {
+    /// Makes room for so many nodes more.
+    pub fn reserve(&mut self, nodes: usize) {
+        self.nodes.reserve(nodes);
+        self.pool.reserve(nodes);
+    }
+
     /// Adds the thing with number `leaf`. Adding it twice makes two nodes for
     /// one thing; callers keep the first.
     pub fn leaf(&mut self, leaf: u32) -> NodeId {

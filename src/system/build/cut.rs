@@ -22,6 +22,15 @@ pub struct System {
     pub repeated: Vec<NodeId>,
 }
 
+/// Tables that each system takes over from the one before.
+#[derive(Clone, Debug, Default)]
+pub(super) struct Room {
+    order: Vec<NodeId>,
+    stack: Vec<(NodeId, usize)>,
+    places: Vec<u32>,
+    members: Vec<NodeId>,
+}
+
 impl Model<'_> {
     /// Cuts out the part of the structure under an asked thing.
     ///
@@ -36,8 +45,10 @@ impl Model<'_> {
         // Depth first in the order written, so that the numbers do not depend on
         // what else was asked before.
         const OPEN: u32 = NONE - 1;
-        let mut order: Vec<NodeId> = Vec::new();
-        let mut stack = vec![(root, 0_usize)];
+        let room = &mut built.room;
+        room.order.clear();
+        let (order, stack) = (&mut room.order, &mut room.stack);
+        stack.push((root, 0));
         built.cut[root.0 as usize] = OPEN;
         while let Some((node, next)) = stack.last_mut() {
             if let Some(&member) = built.structure.members(*node).get(*next) {
@@ -61,9 +72,11 @@ impl Model<'_> {
             places: Vec::with_capacity(order.len()),
             repeated: Vec::new(),
         };
-        let mut places = vec![0_u32; order.len()];
-        let mut members: Vec<NodeId> = Vec::new();
-        for old in &order {
+        system.structure.reserve(order.len());
+        let (places, members) = (&mut room.places, &mut room.members);
+        places.clear();
+        places.resize(order.len(), 0_u32);
+        for old in order.iter() {
             match built.structure.node(*old) {
                 Node::Works => system.structure.works(),
                 Node::Leaf(leaf) => {
@@ -74,16 +87,16 @@ impl Model<'_> {
                     members.clear();
                     let olds = built.structure.members(*old).iter();
                     members.extend(olds.map(|m| NodeId(built.cut[m.0 as usize])));
-                    for member in &members {
+                    for member in members.iter() {
                         places[member.0 as usize] += 1;
                     }
-                    system.structure.at_least(need, &members)
+                    system.structure.at_least(need, members)
                 }
             };
             system.places.push(built.origin.get(old.0 as usize).copied());
             system.labels.push(built.names.get(old).copied().unwrap_or(NONE));
         }
-        for old in &order {
+        for old in order.iter() {
             built.cut[old.0 as usize] = NONE;
         }
         system.repeated = (0..places.len()).filter(|i| places[*i] > 1).map(|i| NodeId(i as u32)).collect();

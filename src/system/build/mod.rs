@@ -112,7 +112,7 @@ pub struct Leaf {
 }
 
 /// Everything built so far.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub struct Built {
     structure: Structure,
     origin: Vec<ExprId>,
@@ -132,6 +132,11 @@ pub struct Built {
     has_parts: bool,
     /// By node, its number in the system being cut out; [`NONE`] between two.
     cut: Vec<u32>,
+    room: cut::Room,
+    /// Room that each walk takes over from the one before.
+    tasks: Vec<Task>,
+    values: Vec<Out<NodeId>>,
+    members: Vec<NodeId>,
 }
 
 impl Default for Built {
@@ -154,11 +159,15 @@ impl Default for Built {
             used_settles: FxHashSet::default(),
             has_parts: false,
             cut: Vec::new(),
+            room: cut::Room::default(),
+            tasks: Vec::new(),
+            values: Vec::new(),
+            members: Vec::new(),
         }
     }
 }
 
-#[derive(Clone, Copy)]
+#[derive(Clone, Copy, Debug)]
 struct Visit {
     expr: ExprId,
     ctx: Ctx,
@@ -173,6 +182,7 @@ fn listed(words: &[&str]) -> String {
     words.iter().map(|w| format!("`{w}`")).collect::<Vec<_>>().join(", ")
 }
 
+#[derive(Clone, Copy, Debug)]
 enum Task {
     Visit(Visit),
     Copy(Visit),
@@ -194,10 +204,12 @@ impl Model<'_> {
         }
         let instance = self.new_instance(NONE, NONE, NONE);
         let ctx = self.new_ctx(CtxData { label: NONE, instance, frame: NONE, bindings: NONE });
-        let out = self.run(vec![
+        let mut tasks = std::mem::take(&mut self.built.tasks);
+        tasks.extend([
             Task::Finish(instance),
             Task::Visit(Visit { expr, ctx, whole: false, failing: false, settles: NONE }),
         ]);
+        let out = self.run(tasks);
         let out = out.and_then(|node| self.settled(instance).map(|()| node));
         self.built.instances[instance as usize].out = Some(out);
         self.built.asked.insert(expr, instance);
@@ -224,12 +236,10 @@ impl Model<'_> {
             // of copies would take the square of its length.
             Expr::Copy(of) if self.is_definition(of) => {}
             _ => {
-                let mut tasks = Vec::new();
+                let mut tasks = std::mem::take(&mut self.built.tasks);
                 let mut values = Vec::new();
                 self.push_instance(def, NONE, NONE, &mut tasks, &mut values);
-                if values.is_empty() {
-                    let _ = self.run(tasks);
-                }
+                let _ = self.run(tasks);
             }
         }
     }
@@ -265,14 +275,16 @@ impl Model<'_> {
     }
 
     fn run(&mut self, mut tasks: Vec<Task>) -> Out<NodeId> {
-        let mut values: Vec<Out<NodeId>> = Vec::new();
+        let mut values = std::mem::take(&mut self.built.values);
         while let Some(task) = tasks.pop() {
             match task {
                 Task::Visit(visit) => self.visit(visit, &mut tasks, &mut values),
                 Task::Copy(visit) => self.visit_copy(visit, &mut tasks, &mut values),
                 Task::Gate { expr, need, count } => {
-                    let members = values.split_off(values.len() - count);
-                    values.push(self.gate(expr, need, members));
+                    let from = values.len() - count;
+                    let out = self.gate(expr, need, &values[from..]);
+                    values.truncate(from);
+                    values.push(out);
                 }
                 Task::Finish(instance) => self.finish(instance, values.last().copied()),
                 Task::Argument(key) => {
@@ -287,12 +299,20 @@ impl Model<'_> {
                 }
             }
         }
-        values.pop().unwrap_or(Err(Fault(0)))
+        let out = values.pop().unwrap_or(Err(Fault(0)));
+        values.clear();
+        self.built.tasks = tasks;
+        self.built.values = values;
+        out
     }
 
-    fn gate(&mut self, expr: ExprId, need: u32, members: Vec<Out<NodeId>>) -> Out<NodeId> {
-        let members = members.into_iter().collect::<Out<Vec<NodeId>>>()?;
-        let node = self.built.structure.at_least(need, &members);
+    fn gate(&mut self, expr: ExprId, need: u32, outs: &[Out<NodeId>]) -> Out<NodeId> {
+        let built = &mut self.built;
+        built.members.clear();
+        for out in outs {
+            built.members.push((*out)?);
+        }
+        let node = built.structure.at_least(need, &built.members);
         self.note_origin(expr);
         Ok(node)
     }
