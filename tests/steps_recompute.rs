@@ -10,6 +10,7 @@ use tieback::number::{Chance, Real};
 use tieback::source::Sources;
 use tieback::steps::{Formula, Outcome, Rule, Side, StepList, shown};
 use tieback::system::Model;
+use tieback::system::network::Network;
 
 type Wide = FBig<HalfEven, 2>;
 
@@ -48,6 +49,11 @@ fn value(formula: &Formula, results: &[(Wide, Wide)]) -> Wide {
             let works = at_least(*need as usize, &members);
             if *side == Side::Works { works } else { whole(1) - works }
         }
+        Formula::Network(network, members, side) => {
+            let members: Vec<Wide> = members.iter().map(|m| results[*m].0.clone()).collect();
+            let works = ways(network, &members);
+            if *side == Side::Works { works } else { whole(1) - works }
+        }
     }
 }
 
@@ -77,6 +83,27 @@ fn function(name: &str, args: &[Wide]) -> Wide {
         "max" => args.iter().skip(1).fold(first, |a, b| if *b > a { b.clone() } else { a }),
         _ => panic!("no function {name}"),
     }
+}
+
+/// All sets of working members in which the network works. Only what is not
+/// settled by what has been decided is split further.
+fn ways(network: &Network, works: &[Wide]) -> Wide {
+    let mut total = whole(0);
+    let mut open = vec![(0, Vec::<bool>::new(), whole(1))];
+    while let Some((at, known, mass)) = open.pop() {
+        let up = |rest: bool| network.works(|m| known.get(m as usize).copied().unwrap_or(rest));
+        if up(false) {
+            total += mass;
+        } else if up(true) {
+            for state in [true, false] {
+                let p = if state { works[at].clone() } else { whole(1) - &works[at] };
+                let mut known = known.clone();
+                known.push(state);
+                open.push((at + 1, known, &mass * p));
+            }
+        }
+    }
+    total
 }
 
 /// All counts, one member after another.

@@ -35,7 +35,7 @@ impl Desk {
             // Perfect: it stands in no cut, and nothing changes with it.
             return Ok(measure_of_perfect(word, subject.valued.chance));
         };
-        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given);
+        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given)?;
         let Some(found) = ranked.get(block.0 as usize).copied().flatten() else {
             return Ok(Number::None("it has no importance of its own here".to_string()));
         };

@@ -27,6 +27,10 @@ pub enum Rule {
     TotalProbability,
     /// A node of a decision diagram.
     DiagramNode,
+    /// A state of a network on the frontier of what is decided.
+    NetworkState,
+    /// A network of too many states to be shown.
+    Network,
     /// Arithmetic that the note asks for.
     Arithmetic,
 }
@@ -45,6 +49,8 @@ impl Rule {
             Rule::UnlikeVote => "k of n, unlike members",
             Rule::TotalProbability => "total probability",
             Rule::DiagramNode => "diagram node",
+            Rule::NetworkState => "state of a network",
+            Rule::Network => "frontier method",
             Rule::Arithmetic => "arithmetic",
         }
     }
@@ -61,6 +67,9 @@ impl Rule {
             Rule::UnlikeVote => "Barlow and Heidtmann, IEEE Trans. Reliability R-33 (1984)",
             Rule::TotalProbability => {
                 "Barlow and Proschan, Statistical Theory of Reliability (1975), pivotal decomposition"
+            }
+            Rule::NetworkState | Rule::Network => {
+                "Carlier and Lucet, Discrete Applied Mathematics 65 (1996); Hardy, Lucet and Limnios, IEEE Trans. Reliability 56 (2007)"
             }
             Rule::DiagramNode => "Bryant, IEEE Trans. Computers C-35 (1986); Rauzy (1993)",
         }

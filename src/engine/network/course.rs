@@ -7,8 +7,8 @@
 
 use super::super::modules::NONE;
 use super::Network;
-use super::dominate::Dominators;
 use super::order;
+use crate::system::network::Dominators;
 use rustc_hash::{FxHashMap, FxHashSet};
 
 /// What an open stop is to the network.

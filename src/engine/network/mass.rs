@@ -45,6 +45,28 @@ impl Interval {
         Interval { low: chance, high: chance, error: UNIT }
     }
 
+    /// The value, or the middle of the bounds that a limit has left.
+    pub fn middle(&self) -> Chance {
+        let half = Real::from(0.5);
+        let (low, high) = (self.low, self.high);
+        match self.value() {
+            Some(value) => value,
+            None => Chance::new((low.works() + high.works()) * half, (low.fails() + high.fails()) * half),
+        }
+    }
+
+    /// How far [`Interval::middle`] may be off, in parts of its smaller tail.
+    pub fn off(&self) -> f64 {
+        if self.low == self.high {
+            return self.error;
+        }
+        let (low, high, middle) = (self.low, self.high, self.middle().smaller());
+        let works = (high.works() - low.works()).abs();
+        let width = works.max((low.fails() - high.fails()).abs()) * Real::from(0.5);
+        let part = if middle.is_zero() { 1.0 } else { (width / middle).to_f64() };
+        self.error + part * 1.000_001
+    }
+
     /// The value, if no limit was reached.
     pub fn value(&self) -> Option<Chance> {
         (self.low == self.high).then_some(self.low)

@@ -1,117 +1,32 @@
 //! Networks: whether some way leads through working things from a start to
 //! its ends.
 //!
-//! A network is reduced first ([`Network::reduce`]): what lies on no way goes,
-//! things in series and in parallel become one, and a stop that every way
-//! passes splits it in two. What no rule reduces further is computed by the
-//! frontier method: its things are decided one after the other in an order
+//! A network is reduced first ([`Network::reduce`]). What no rule reduces
+//! further is computed by the frontier method: its things are decided one after the other in an order
 //! that keeps few stops open, and all states that agree on how the open stops
 //! hang together are one.
 //!
-//! Sources: C. J. Colbourn, "The Combinatorics of Network Reliability" (1987),
-//! for the reductions; J. Carlier, C. Lucet, "A decomposition algorithm for
-//! network reliability evaluation", Discrete Applied Mathematics 65 (1996),
-//! and G. Hardy, C. Lucet, N. Limnios, "K-terminal network reliability
-//! measures with binary decision diagrams", IEEE Trans. Reliability 56 (2007),
-//! for the frontier method. All from memory. That stops can fail, and that
+//! Sources: J. Carlier, C. Lucet, "A decomposition algorithm for network
+//! reliability evaluation", Discrete Applied Mathematics 65 (1996); G. Hardy,
+//! C. Lucet, N. Limnios, "K-terminal network reliability measures with binary
+//! decision diagrams", IEEE Trans. Reliability 56 (2007). From memory. That stops can fail, and that
 //! one-way links keep a relation of reachability in place of classes, is
 //! worked out here and checked against enumeration.
 
 mod classes;
 mod course;
-mod dominate;
 mod labels;
 mod mass;
 mod order;
 mod reach;
-mod reduce;
-mod split;
 mod sweep;
 mod table;
 mod tally;
-mod terms;
 mod trace;
 mod value;
 
 #[cfg(test)]
 mod tests;
 
+pub use crate::system::network::{Network, Reduced, Term};
 pub use mass::{Interval, Limits};
-pub use terms::{Reduced, Term};
-
-/// Stops joined by links that cannot fail, each stop perhaps with a thing that
-/// can.
-///
-/// It works when at least `need` of its ends are reached: a way of links
-/// leads there from the start, and the things at all stops of it work, with
-/// those at the start and at the end.
-#[derive(Clone, PartialEq, Eq, Debug)]
-pub struct Network {
-    /// The thing at each stop, by a number of the caller's; nothing stands at
-    /// a stop that cannot fail.
-    pub stops: Vec<Option<u32>>,
-    /// Links from the first stop to the second; a two-way link is two.
-    pub links: Vec<(u32, u32)>,
-    /// Where every way begins.
-    pub start: u32,
-    /// Where ways end.
-    pub ends: Vec<u32>,
-    /// How many of the ends must be reached; at least 1.
-    pub need: u32,
-}
-
-impl Network {
-    /// The network under the condition that a thing works or has failed.
-    #[must_use]
-    pub fn given(&self, thing: u32, works: bool) -> Network {
-        let hit: Vec<bool> = self.stops.iter().map(|&t| t == Some(thing)).collect();
-        let mut left = self.clone();
-        if works {
-            for (stop, _) in left.stops.iter_mut().zip(&hit).filter(|(_, hit)| **hit) {
-                *stop = None;
-            }
-            return left;
-        }
-        let up = |stop: u32| !hit.get(stop as usize).copied().unwrap_or(true);
-        left.links.retain(|&(from, to)| up(from) && up(to));
-        left.ends.retain(|&end| up(end));
-        if !up(left.start) {
-            left.ends.clear();
-        }
-        left
-    }
-
-    /// The things that stand at more than one stop, in the order of their
-    /// numbers.
-    pub fn repeated(&self) -> Vec<u32> {
-        let mut things: Vec<u32> = self.stops.iter().filter_map(|&t| t).collect();
-        things.sort_unstable();
-        let mut twice: Vec<u32> = things.windows(2).filter(|w| w[0] == w[1]).map(|w| w[0]).collect();
-        twice.dedup();
-        twice
-    }
-
-    /// Whether exactly these things working make it work.
-    pub fn works(&self, up: impl Fn(u32) -> bool) -> bool {
-        let n = self.stops.len();
-        let alive = |stop: u32| self.stops.get(stop as usize).is_some_and(|t| t.is_none_or(&up));
-        let mut out: Vec<Vec<u32>> = vec![Vec::new(); n];
-        for &(from, to) in &self.links {
-            if let Some(list) = out.get_mut(from as usize) {
-                list.push(to);
-            }
-        }
-        let mut seen = vec![false; n];
-        let mut stack = vec![self.start];
-        while let Some(at) = stack.pop() {
-            if alive(at) && !seen[at as usize] {
-                seen[at as usize] = true;
-                stack.extend(&out[at as usize]);
-            }
-        }
-        let mut ends: Vec<u32> = self.ends.clone();
-        ends.sort_unstable();
-        ends.dedup();
-        ends.iter().filter(|&&e| seen.get(e as usize) == Some(&true)).count() >= self.need as usize
-    }
-}

@@ -211,6 +211,13 @@ fn gate(list: &[u32], values: &[Interval], join: fn(Chance, Chance) -> Chance, n
 }
 
 impl Network {
+    /// The chance of a [`Term::Network`] whose things stand at one stop each,
+    /// by the frontier method; see [`Network::chance`].
+    pub fn frontier(&self, chances: &[Chance], limits: &Limits) -> Interval {
+        let exact = |&chance: &Chance| Interval { low: chance, high: chance, error: 0.0 };
+        self.core(&chances.iter().map(exact).collect::<Vec<_>>(), limits)
+    }
+
     /// By the frontier method, its things at one stop each.
     pub(super) fn core(&self, values: &[Interval], limits: &Limits) -> Interval {
         let exact = self.stops.iter().flatten().all(|&t| values[t as usize].value().is_some());

@@ -92,6 +92,15 @@ impl Model<'_> {
                     }
                     system.structure.at_least(need, members)
                 }
+                Node::Network { shape, .. } => {
+                    members.clear();
+                    let olds = built.structure.members(*old).iter();
+                    members.extend(olds.map(|m| NodeId(built.cut[m.0 as usize])));
+                    for member in members.iter() {
+                        places[member.0 as usize] += 1;
+                    }
+                    system.structure.shaped(built.structure.shape(shape).clone(), members)
+                }
             };
             system.places.push(built.origin.get(old.0 as usize).copied());
             system.labels.push(built.names.get(old).copied().unwrap_or(NONE));

@@ -1,6 +1,6 @@
 //! What a reduced network is made of: series, parallel, and networks.
 
-use super::super::modules::NONE;
+use super::NONE;
 use super::Network;
 use rustc_hash::FxHashMap;
 

@@ -4,21 +4,21 @@
 //! algorithm" (2001), from memory: immediate dominators by passes over the
 //! stops in reverse postorder until nothing changes.
 
-use super::super::modules::NONE;
+use super::NONE;
 
 /// The dominator tree of what is reached from one stop.
-pub(super) struct Dominators {
+pub struct Dominators {
     /// The next stop above that every way to this one passes; the root's is
     /// itself, and [`NONE`] stands where no way leads.
-    pub(super) above: Vec<u32>,
+    pub above: Vec<u32>,
     /// When a walk over the tree comes to each stop; those above come first.
-    pub(super) enter: Vec<u32>,
+    pub enter: Vec<u32>,
     leave: Vec<u32>,
 }
 
 impl Dominators {
     /// Of the stops reached from `root` over `out`.
-    pub(super) fn new(out: &[Vec<u32>], into: &[Vec<u32>], root: u32) -> Dominators {
+    pub fn new(out: &[Vec<u32>], into: &[Vec<u32>], root: u32) -> Dominators {
         let order = postorder(out, root);
         let mut rank = vec![NONE; out.len()];
         for (i, &at) in order.iter().enumerate() {
@@ -46,7 +46,7 @@ impl Dominators {
 
     /// Whether every way to `below` passes `top`; false where no way leads to
     /// either.
-    pub(super) fn dominates(&self, top: u32, below: u32) -> bool {
+    pub fn dominates(&self, top: u32, below: u32) -> bool {
         let (t, b) = (top as usize, below as usize);
         self.above[t] != NONE
             && self.above[b] != NONE
@@ -55,7 +55,7 @@ impl Dominators {
     }
 
     /// From a stop up to the root, both with it.
-    pub(super) fn chain(&self, mut at: u32) -> Vec<u32> {
+    pub fn chain(&self, mut at: u32) -> Vec<u32> {
         let mut chain = vec![at];
         while self.above[at as usize] != at && self.above[at as usize] != NONE {
             at = self.above[at as usize];

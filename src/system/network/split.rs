@@ -1,6 +1,6 @@
 //! Parts between the stops that every way passes.
 
-use super::super::modules::NONE;
+use super::NONE;
 use super::Network;
 use super::dominate::Dominators;
 use super::reduce::Work;
