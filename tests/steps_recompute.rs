@@ -3,6 +3,7 @@
 
 use dashu_float::FBig;
 use dashu_float::round::mode::HalfEven;
+use std::collections::BTreeSet;
 use tieback::answer::{Desk, Number};
 use tieback::language::{self, Expr, Line};
 use tieback::note::{fill, syntax};
@@ -475,6 +476,41 @@ fn steps_can_be_computed_again() {
     each_step_list(&mesh.join("\n"), &["R(mesh)"], |question, list, answer, sources| {
         recompute(question, list, answer, sources, &mut rules);
     });
+    // Networks: by reductions and a few cases, by their states, and in one step.
+    let small = "a, b, c, d, e = fails 3%\n\
+        net = routes(in -> a -> c -> out, in -> b -> d -> out, a <-> e <-> b, c <-> e <-> d)\n\
+        line = routes(in -> a -> (b // c) -> out, a -> d -> e -> out)\n\
+        lines = routes(in -> a -> b, in -> c -> b, in -> c -> d, a -> d, b <-> e) with ends 2 of (b, d, e)\n\
+        nest = (net -> a) // (line -> e)";
+    each_step_list(
+        small,
+        &["R(net)", "F(line)", "R(lines)", "F(nest)"],
+        |question, list, answer, sources| {
+            recompute(question, list, answer, sources, &mut rules);
+        },
+    );
+    let square: Vec<(usize, usize)> = (0..16)
+        .flat_map(|i| [(i, i + 4), (i, i + 1)])
+        .filter(|(i, j)| *j < 16 && (j % 4 > 0 || j - i > 1))
+        .collect();
+    let ring: Vec<(usize, usize)> =
+        (0..15).flat_map(|i| [1, 3, 4].map(|step| (i, (i + step) % 15))).collect();
+    for (links, firsts, lasts, rule) in
+        [(square, [0, 0], [15, 15], Rule::NetworkState), (ring, [0, 1], [7, 9], Rule::Network)]
+    {
+        let names: BTreeSet<String> =
+            links.iter().flat_map(|(i, j)| [format!("g{i}"), format!("g{j}")]).collect();
+        let names: Vec<String> = names.into_iter().collect();
+        let mut ways: Vec<String> = firsts.iter().map(|i| format!("in -> g{i}")).collect();
+        ways.extend(lasts.iter().map(|i| format!("g{i} -> out")));
+        ways.extend(links.iter().map(|(i, j)| format!("g{i} <-> g{j}")));
+        let net = format!("{} = fails 5%\nnet = routes({})", names.join(", "), ways.join(", "));
+        let mut own = Vec::new();
+        each_step_list(&net, &["R(net)"], |question, list, answer, sources| {
+            recompute(question, list, answer, sources, &mut own);
+        });
+        assert!(own.contains(&rule), "{own:?}");
+    }
     for rule in [
         Rule::Given,
         Rule::Exposure,

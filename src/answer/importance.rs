@@ -42,7 +42,7 @@ impl Desk {
         Ok(measure(word, &found, subject.valued.chance, subject.valued.bound))
     }
 
-    /// The block of a named thing within a system; `None` for a perfect one.
+    /// The block of a named thing within a system; `None` for one that changes nothing.
     fn find_block(&mut self, model: &mut Model<'_>, subject: &Subject, name: ExprId) -> Out<Option<BlockId>> {
         if let Some(fault) = model.faulty(name) {
             return Err(fault);
@@ -81,6 +81,9 @@ impl Desk {
         if let [(_, block)] = ends.as_slice() {
             return Ok(*block);
         }
+        if ends.is_empty() && lies_on_no_way(model, subject, &wanted) {
+            return Ok(None);
+        }
         if let Expr::Name(sym) = model.tree.expr(model.tree.inside_groups(name))
             && ends.is_empty()
         {
@@ -107,9 +110,8 @@ impl Desk {
                     return Ok(None);
                 }
                 let found = subject.prepared.system.leaves.iter().position(|l| model.leaf_name(l) == own);
-                if let Some(number) = found {
-                    return Ok(subject.prepared.plan.of_leaf(number as u32));
-                }
+                // What lies on no way of a network is none of the leaves.
+                return Ok(found.and_then(|number| subject.prepared.plan.of_leaf(number as u32)));
             }
         }
         let wanted = model.tree.names.text(sym).to_string();
@@ -158,6 +160,17 @@ impl Desk {
         };
         model.fault(problem)
     }
+}
+
+/// Whether a thing stands under the asked one and yet nothing rests on it: a
+/// stop of a network that lies on no way, which changes as little as a perfect one.
+fn lies_on_no_way(model: &Model<'_>, subject: &Subject, wanted: &str) -> bool {
+    let tail = format!(".{wanted}");
+    let things = model.things_under(subject.prepared.asked);
+    if things.iter().any(|(name, _)| name == wanted) {
+        return true;
+    }
+    things.iter().filter(|(name, _)| name.ends_with(&tail)).count() == 1
 }
 
 /// One measure of importance. Definitions: criticality B·q/F, Fussell–Vesely

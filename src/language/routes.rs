@@ -118,14 +118,8 @@ impl Reader<'_> {
         loop {
             match self.peek() {
                 Some(Tok::Name { sym, quoted }) => {
-                    let span = self.peek_span();
-                    let expr = match (quoted, self.tree.names.text(sym)) {
-                        (false, "out") => Expr::Terminal(false),
-                        (false, "in") => Expr::Terminal(true),
-                        _ => Expr::Name(sym),
-                    };
-                    ends.push(self.tree.add(expr, span));
-                    self.at += 1;
+                    let end = self.end(sym, quoted)?;
+                    ends.push(end);
                 }
                 _ => return Err(self.unexpected("the name of a stop")),
             }
@@ -139,6 +133,33 @@ impl Reader<'_> {
         let span = self.tree.span(routes).to(close);
         self.tree.set_span(routes, span);
         Ok(())
+    }
+
+    /// The name of a stop, or a call with names for its arguments.
+    fn end(&mut self, sym: Sym, quoted: bool) -> Read<ExprId> {
+        let span = self.peek_span();
+        let calls = self.tok(1) == Some(Tok::Open) && self.touches(0);
+        self.at += 1;
+        if !calls {
+            let expr = match (quoted, self.tree.names.text(sym)) {
+                (false, "out") => Expr::Terminal(false),
+                (false, "in") => Expr::Terminal(true),
+                _ => Expr::Name(sym),
+            };
+            return Ok(self.tree.add(expr, span));
+        }
+        self.at += 1;
+        let mut arguments = Vec::new();
+        while let Some(Tok::Name { sym, .. }) = self.peek() {
+            arguments.push(self.tree.add(Expr::Name(sym), self.peek_span()));
+            self.at += 1;
+            if self.accept(Tok::Comma).is_none() {
+                break;
+            }
+        }
+        let Some(close) = self.accept(Tok::Close) else { return Err(self.unexpected("a name or `)`")) };
+        let list = self.tree.add_list(&arguments);
+        Ok(self.tree.add(Expr::Call(sym, list), span.to(close)))
     }
 
     /// `all of`, `any of`, `2 of`, `k of`.

@@ -1,8 +1,9 @@
 //! Networks: ways to stops, each once, and what their reduction leaves.
 //!
 //! Stops of one name are one stop, also under another name for the same thing;
-//! so are calls written alike. Numbers and structures in parentheses are stops
-//! of their own wherever they stand.
+//! so are calls, and structures of names, that are written alike. Numbers, and
+//! structures with numbers or counts in them, are stops of their own wherever
+//! they stand, since each makes things of its own.
 
 use super::{Ctx, NONE, Task, Visit};
 use crate::language::{Expr, ExprId, Link, List, Need, Sym};
@@ -29,7 +30,7 @@ const OUT: u32 = 1;
 #[derive(PartialEq, Eq, Hash)]
 enum Key {
     Name(Sym),
-    Call(String),
+    Text(String),
 }
 
 impl Model<'_> {
@@ -113,11 +114,31 @@ impl Model<'_> {
         match self.tree.expr(stop) {
             Expr::Name(sym) if self.argument_index(sym, ctx).is_some() => Some(Key::Name(sym)),
             Expr::Name(sym) => Some(Key::Name(self.first_name(sym))),
-            Expr::Call(..) => Some(Key::Call(crate::language::print(self.tree, stop, &|span| {
-                self.sources.text(span).to_string()
-            }))),
+            Expr::Call(..) | Expr::Group(_) if self.names_only(stop) => {
+                let digits = |span| self.sources.text(span).to_string();
+                Some(Key::Text(crate::language::print(self.tree, stop, &digits)))
+            }
             _ => None,
         }
+    }
+
+    /// Whether an expression is made of names, and of what joins them.
+    fn names_only(&self, expr: ExprId) -> bool {
+        let mut stack = vec![expr];
+        while let Some(at) = stack.pop() {
+            match self.tree.expr(at) {
+                Expr::Name(_) => {}
+                Expr::Group(x) | Expr::FailsWhen(x) => stack.push(x),
+                Expr::Series(l)
+                | Expr::Parallel(l)
+                | Expr::And(l)
+                | Expr::Or(l)
+                | Expr::AtLeast(_, l)
+                | Expr::Call(_, l) => stack.extend(self.tree.list(l)),
+                _ => return false,
+            }
+        }
+        true
     }
 
     /// The name that other names of the same thing lead back to.
