@@ -163,3 +163,30 @@ fn markdown_made_of_openers() {
         }
     });
 }
+
+#[test]
+fn large_networks() {
+    // A chain, a ladder and a nest of networks; stops fail with 1e-6 each.
+    let names = |n: usize| (0..n).map(|i| format!("s{i}")).collect::<Vec<_>>();
+    let define = |n: usize| format!("{} = fails 1e-6", names(n).join(", "));
+    let chain = format!("x = routes(in -> {} -> out)", names(20_000).join(" -> "));
+    check(vec![define(20_000), chain, "F(x) ?".into()], &["0.01980"]);
+    let rungs = (0..3000).map(|i| format!("s{} <-> s{}", 2 * i, 2 * i + 1));
+    let rails = (0..5998).map(|i| format!("s{i} <-> s{}", i + 2));
+    let ladder: Vec<String> = rungs.chain(rails).collect();
+    let ladder = format!("x = routes(in -> s0, in -> s1, {}, s5998 -> out, s5999 -> out)", ladder.join(", "));
+    // Cut by both stops of a rung, or by two that lie crosswise on neighbouring
+    // rungs: 3000 + 2 * 2999 sets of two, 1e-12 each, and hardly ever two at once.
+    check(vec![define(6000), ladder, "F(x) ?".into(), "count(cuts(x)) ?".into()], &["8.998e-9", "8998"]);
+    let nest = nested("routes(in -> (", "s0", ") -> s1 -> out)", 3000);
+    check(vec![define(2), format!("x = {nest}"), "F(x) ?".into()], &["2.000e-6"]);
+    // Sixteen by sixteen: too many states to be kept, and what is likely is soon summed.
+    let stop = |i: usize, j: usize| format!("s{}", 16 * i + j);
+    let mut ways = vec!["in -> s0".to_string(), "s255 -> out".to_string()];
+    for (i, j) in (0..16).flat_map(|i| (0..15).map(move |j| (i, j))) {
+        ways.push(format!("{} <-> {}", stop(i, j), stop(i, j + 1)));
+        ways.push(format!("{} <-> {}", stop(j, i), stop(j + 1, i)));
+    }
+    let grid = format!("x = routes({})", ways.join(", "));
+    check(vec![define(256), grid, "F(x) ?".into(), "rank(x) ?".into()], &["2.000e-6", "! …"]);
+}

@@ -100,6 +100,74 @@ impl Labels for u64 {
     }
 }
 
+/// The lowest bit of each group of five in 125 bits.
+const FIVES: u128 = {
+    let (mut ones, mut at) = (0u128, 0);
+    while at < 25 {
+        ones |= 1 << (5 * at);
+        at += 1;
+    }
+    ones
+};
+
+/// The lowest bit of each group of five that equals `label`.
+#[inline]
+fn equal_fives(word: u128, label: u8) -> u128 {
+    let x = word ^ (u128::from(label) * FIVES);
+    let any = x | (x >> 1) | (x >> 2) | (x >> 3) | (x >> 4);
+    !any & FIVES
+}
+
+impl State for u128 {
+    const NONE: u128 = u128::MAX;
+
+    #[inline]
+    fn mix(&self) -> u64 {
+        mixed(mixed(*self as u64).rotate_left(23) ^ (*self >> 64) as u64)
+    }
+}
+
+/// Five bits for each of 25 slots.
+impl Labels for u128 {
+    const MARKS: Marks = Marks { end: 31, start: 30, dead: 29 };
+    const SLOTS: usize = 25;
+    type Set = u128;
+
+    fn empty() -> u128 {
+        0
+    }
+
+    fn set_of(slots: &[u8]) -> u128 {
+        slots.iter().fold(0, |set, &s| set | 1 << (5 * u32::from(s)))
+    }
+
+    #[inline]
+    fn get(self, slot: u8) -> u8 {
+        (self >> (5 * u32::from(slot))) as u8 & 31
+    }
+
+    #[inline]
+    fn with(self, slot: u8, label: u8) -> u128 {
+        self.closed(slot) | u128::from(label) << (5 * u32::from(slot))
+    }
+
+    #[inline]
+    fn closed(self, slot: u8) -> u128 {
+        self & !(31 << (5 * u32::from(slot)))
+    }
+
+    #[inline]
+    fn relabel(self, from: u8, to: u8, open: &u128) -> u128 {
+        self ^ ((equal_fives(self, from) & open) * u128::from(from ^ to))
+    }
+
+    #[inline]
+    fn first(self, label: u8, open: &u128) -> Option<u8> {
+        let hits = equal_fives(self, label) & open;
+        (hits != 0).then(|| (hits.trailing_zeros() / 5) as u8)
+    }
+}
+
 /// A byte for each slot.
 #[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
 pub(super) struct Bytes<const W: usize>([u8; W]);

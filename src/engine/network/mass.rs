@@ -16,14 +16,20 @@ pub struct Limits {
     /// The most memory for states, in bytes; at most this much is in use
     /// while one layer is turned into the next.
     pub bytes: usize,
+    /// The most states that are moved on, over all layers; some ten million
+    /// take a second.
+    pub states: f64,
     /// The relative part of the smaller tail that dropped states may amount
     /// to. It is used only where there are thousands of states.
     pub error: f64,
+    /// The same where the first would take more than a sixteenth of the states
+    /// allowed. Digits that are not decided then are not printed.
+    pub coarse: f64,
 }
 
 impl Default for Limits {
     fn default() -> Limits {
-        Limits { bytes: 1_000_000_000, error: 2f64.powi(-60) }
+        Limits { bytes: 1_000_000_000, states: 6e8, error: 2f64.powi(-60), coarse: 1e-10 }
     }
 }
 
@@ -78,6 +84,9 @@ pub(super) const UNIT: f64 = 1.0 / (1u128 << 100) as f64;
 
 /// Layers with fewer states than this are kept whole.
 const WHOLE: usize = 4096;
+/// How many states a layer keeps where a limit is reached and there will be
+/// bounds only.
+const BOUNDS: usize = 200_000;
 /// How many states the first estimate of the smaller tail keeps.
 const ESTIMATE: usize = 2048;
 
@@ -97,18 +106,21 @@ pub(super) fn interval<T: Sweep>(sweep: &T, chance: impl Fn(u32) -> Chance, limi
     // A layer makes at most twice as many states; a table that grows holds
     // its old and its new slots; the layer before is there as well.
     let keep = (limits.bytes / (entry * 6)).max(ESTIMATE);
-    let small = Run { sweep, chance: &chance, keep, budget: 0.0, whole: true }.go();
-    let mass = small.or_else(|| {
-        let first = Run { sweep, chance: &chance, keep: ESTIMATE, budget: 0.0, whole: false }.go()?;
-        let budget = limits.error * first.works.min(first.fails).to_f64();
-        Run { sweep, chance: &chance, keep, budget, whole: false }.go()
+    let chance = &chance;
+    let run = |keep, budget, most: Option<f64>| Run { sweep, chance, keep, budget, most }.go();
+    let mass = run(WHOLE.min(keep), 0.0, Some(limits.states)).or_else(|| {
+        let first = run(ESTIMATE, 0.0, None)?;
+        let smaller = first.works.min(first.fails).to_f64();
+        run(keep, limits.error * smaller, Some(limits.states / 16.0))
+            .or_else(|| run(keep, limits.coarse * smaller, Some(limits.states)))
+            .or_else(|| run(keep.min(BOUNDS), limits.coarse * smaller, None))
     });
     let Some(mass) = mass else {
         return Interval { low: Chance::HOPELESS, high: Chance::PERFECT, error: 0.0 };
     };
     let smaller = mass.works.min(mass.fails);
     let rounding = mass.operations * UNIT;
-    if mass.dropped <= smaller * Real::from(limits.error) {
+    if mass.dropped <= smaller * Real::from(limits.coarse.max(limits.error)) {
         let part = if mass.dropped.is_zero() { 0.0 } else { (mass.dropped / smaller).to_f64() };
         let chance = Chance::new(mass.works, mass.fails);
         return Interval { low: chance, high: chance, error: rounding + part };
@@ -127,8 +139,9 @@ struct Run<'a, T, C> {
     keep: usize,
     /// How much mass may be dropped where it need not be.
     budget: f64,
-    /// Give up at [`WHOLE`] states.
-    whole: bool,
+    /// The most states over all layers; it gives up at this limit and at
+    /// `keep`. If there is none it drops what is over `keep`.
+    most: Option<f64>,
 }
 
 impl<T: Sweep, C: Fn(u32) -> Chance> Run<'_, T, C> {
@@ -139,7 +152,7 @@ impl<T: Sweep, C: Fn(u32) -> Chance> Run<'_, T, C> {
         let layers = self.sweep.layers();
         let mut cuts = Cuts::default();
         for layer in 0..layers {
-            if self.whole && now.len() > WHOLE {
+            if self.most.is_some_and(|most| now.len() > self.keep || mass.operations > 2.0 * most) {
                 return None;
             }
             let allowance = (self.budget - mass.dropped.to_f64()) / (layers - layer) as f64;

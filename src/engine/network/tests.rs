@@ -374,3 +374,44 @@ fn wrong_networks_are_no_panic() {
     let need = Network { need: 2, ..only };
     assert_eq!(need.chance(&chances, &Limits::default()).value(), Some(Chance::HOPELESS));
 }
+
+#[test]
+fn every_word_for_the_labels_gives_the_same() {
+    use super::classes::Classes;
+    use super::course::Course;
+    use super::labels::Bytes;
+    use super::mass::interval;
+    for seed in 0..200 {
+        let mut dice = Dice::new(seed);
+        let stops = 8 + dice.below(14);
+        let mut network = random(&mut dice, stops, 2 * stops, Ways::Two, 1, 4);
+        network.stops[network.ends[0] as usize] = None;
+        let chances: Vec<Chance> = (1..stops).map(|_| dice.chance()).collect();
+        let Some(course) = Course::new(&network) else { continue };
+        let of = |thing: u32| chances[thing as usize];
+        let limits = Limits::default();
+        let long = interval(&Classes::<Bytes<128>>::new(&course).unwrap(), of, &limits);
+        let middle = interval(&Classes::<u128>::new(&course).unwrap(), of, &limits);
+        // The sums run in the order of the tables, which differ.
+        same(middle, long.value().unwrap(), 1e-24);
+        if let Some(short) = Classes::<u64>::new(&course) {
+            same(interval(&short, of, &limits), long.value().unwrap(), 1e-24);
+        }
+    }
+}
+
+#[test]
+fn a_limit_on_time_gives_fewer_digits_and_then_bounds() {
+    let grid = grid(9);
+    let chances = tenths(144, 1);
+    let exact = grid.chance(&chances, &Limits::default()).value().unwrap();
+    let run = |states| grid.chance(&chances, &Limits { states, coarse: 1e-5, ..Limits::default() });
+    let fewer = run(1e6);
+    let off = (fewer.value().unwrap().fails() - exact.fails()).abs() / exact.fails();
+    assert!(!off.is_zero() && off.to_f64() <= fewer.error && fewer.error < 1e-4, "{fewer:?}");
+    // So few that the least likely states are left out whether or not they matter.
+    let bounds = grid.chance(&chances, &Limits { states: 1e5, bytes: 200_000, ..Limits::default() });
+    assert_eq!(bounds.value(), None);
+    assert!(bounds.low.fails() >= exact.fails() && bounds.high.fails() <= exact.fails());
+    assert!(bounds.middle().fails() > exact.fails() * Real::from(0.9) && bounds.off() < 0.5, "{bounds:?}");
+}

@@ -49,10 +49,7 @@ fn classes<J: Job>(course: &Course, job: J) -> Option<J::Out> {
     if let Some(sweep) = Classes::<u64>::new(course) {
         return Some(job.run(&sweep));
     }
-    if let Some(sweep) = Classes::<Bytes<16>>::new(course) {
-        return Some(job.run(&sweep));
-    }
-    if let Some(sweep) = Classes::<Bytes<32>>::new(course) {
+    if let Some(sweep) = Classes::<u128>::new(course) {
         return Some(job.run(&sweep));
     }
     Classes::<Bytes<128>>::new(course).map(|sweep| job.run(&sweep))
