@@ -3,16 +3,21 @@
 mod desk;
 mod display;
 mod figure;
+mod filled;
 mod importance;
 mod lists;
 mod reply;
 mod require;
+mod round;
 
 pub use desk::{Desk, Prepared, Valued};
 pub use display::written;
 pub use figure::Number;
+pub use filled::{Asked, Filled};
 pub use lists::assumptions;
 pub use reply::Reply;
 pub use require::{Verdict, require};
+pub use round::StepsForm;
+pub(crate) use round::{Answered, Inquiry, Outcome, Own, Round, misfit, show_readings};
 
 pub(crate) use crate::steps::plain;
