@@ -78,9 +78,8 @@ impl Work<'_> {
             Place::Fence(fence) => self.in_fence(fence, mark, reply, broken, model),
             Place::Pair(pair) => self.in_pair(pair, reply, broken, model),
             Place::Table(table) => {
-                let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
-                    return;
-                };
+                let Ok(at) = read.cells.binary_search_by_key(&index, |(s, ..)| *s) else { return };
+                let (_, block, row, column) = read.cells[at];
                 self.in_table(table, (block, row, column), reply, model)
             }
         };
