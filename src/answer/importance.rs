@@ -1,13 +1,33 @@
 //! Importance of one thing in a system: Birnbaum and the measures that rest on it.
 
-use super::desk::Desk;
+use super::desk::{Desk, Named};
 use super::figure::{Number, Subject};
 use crate::engine::importance::Importance;
 use crate::engine::plan::BlockId;
 use crate::language::{Expr, ExprId, List, Sym, words};
 use crate::number::{Chance, Real};
 use crate::source::{Code, Problem};
-use crate::system::{Dim, Fault, Model, NodeId, Out, Quantity, STEP};
+use crate::system::{Dim, Fault, Model, Out, Quantity, STEP};
+
+/// Where a named thing stands in a system.
+enum Place {
+    Block(BlockId),
+    Perfect,
+    /// Not in it: no mistake of a table's row, which asks as every other row does.
+    Elsewhere,
+}
+
+impl Place {
+    fn of(block: Option<BlockId>) -> Place {
+        block.map_or(Place::Perfect, Place::Block)
+    }
+}
+
+/// Whether a table's row is the thing of a question: its name stands outside the question.
+fn asked_by_a_row(model: &Model<'_>, call: ExprId, thing: ExprId) -> bool {
+    let (call, thing) = (model.tree.span(call), model.tree.span(thing));
+    thing.start < call.start || call.end < thing.end
+}
 
 impl Desk {
     pub(super) fn importance(
@@ -30,10 +50,12 @@ impl Desk {
             ));
         }
         let subject = self.subject(model, call, args, 2)?;
-        let block = self.find_block(model, &subject, list[1])?;
-        let Some(block) = block else {
-            // Perfect: it stands in no cut, and nothing changes with it.
-            return Ok(measure_of_perfect(word, subject.valued.chance));
+        let by_row = asked_by_a_row(model, call, list[1]);
+        let block = match self.find_block(model, &subject, list[1], by_row)? {
+            Place::Block(block) => block,
+            // It stands in no cut, and nothing changes with it.
+            Place::Perfect => return Ok(measure_of_perfect(word, subject.valued.chance)),
+            Place::Elsewhere => return Ok(Number::None(format!("not in {}", model.text_of(subject.thing)))),
         };
         let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given);
         let Some(found) = ranked.get(block.0 as usize).copied().flatten() else {
@@ -42,8 +64,14 @@ impl Desk {
         Ok(measure(word, &found, subject.valued.chance, subject.valued.bound))
     }
 
-    /// The block of a named thing within a system; `None` for a perfect one.
-    fn find_block(&mut self, model: &mut Model<'_>, subject: &Subject, name: ExprId) -> Out<Option<BlockId>> {
+    /// The block of a named thing within a system.
+    fn find_block(
+        &mut self,
+        model: &mut Model<'_>,
+        subject: &Subject,
+        name: ExprId,
+        by_row: bool,
+    ) -> Out<Place> {
         if let Some(fault) = model.faulty(name) {
             return Err(fault);
         }
@@ -51,41 +79,25 @@ impl Desk {
             Expr::Name(sym) => model.tree.names.text(sym).to_string(),
             _ => model.text_of(name),
         };
-        let system = &subject.prepared.system;
-        let plan = &subject.prepared.plan;
-        let mut ends: Vec<(String, Option<BlockId>)> = Vec::new();
-        for (number, leaf) in system.leaves.iter().enumerate() {
-            let own = model.leaf_name(leaf);
-            let block = plan.of_leaf(number as u32);
-            if own == wanted {
-                return Ok(block);
-            }
-            if own.ends_with(&format!(".{wanted}")) {
-                ends.push((own, block));
-            }
+        let index = subject.prepared.names(model);
+        let known = index.get(wanted.as_str());
+        match known.and_then(|known| known.exact) {
+            Some(Named::Thing(block)) => return Ok(Place::of(block)),
+            Some(Named::Structure(Some(block))) => return Ok(Place::Block(block)),
+            Some(Named::Structure(None)) => return Err(self.shares_with_the_rest(model, &wanted, name)),
+            None => {}
         }
-        for node in (0..system.structure.len() as u32).map(NodeId) {
-            let Some(own) = model.node_name(system, node) else { continue };
-            if own == wanted {
-                return match plan.of_node(node) {
-                    Some(block) => Ok(Some(block)),
-                    None => Err(self.shares_with_the_rest(model, &wanted, name)),
-                };
-            }
-            if own.ends_with(&format!(".{wanted}")) && system.structure.members(node).len() > 1 {
-                ends.push((own, plan.of_node(node)));
-            }
-        }
+        let mut ends: Vec<(String, Option<BlockId>)> = known.map_or_else(Vec::new, |k| k.ends.clone());
         ends.sort();
         ends.dedup();
         if let [(_, block)] = ends.as_slice() {
-            return Ok(*block);
+            return Ok(Place::of(*block));
         }
         if let Expr::Name(sym) = model.tree.expr(model.tree.inside_groups(name))
             && ends.is_empty()
         {
             // Another name for a thing, or a perfect one, is found by building it.
-            return self.find_by_building(model, subject, name, sym);
+            return self.find_by_building(model, subject, name, sym, by_row);
         }
         Err(self.not_in_system(model, subject, name, &wanted, &ends))
     }
@@ -96,20 +108,24 @@ impl Desk {
         subject: &Subject,
         name: ExprId,
         sym: Sym,
-    ) -> Out<Option<BlockId>> {
+        by_row: bool,
+    ) -> Out<Place> {
         if model.lookup(sym).is_some() {
             let asked = model.build(name)?;
-            if let Some((own, item)) = model.things_under(asked).first().cloned()
-                && model.things_under(asked).len() == 1
-                && model.things_under(subject.prepared.asked).iter().any(|(n, _)| *n == own)
+            if let [(own, item)] = model.things_under(asked).as_slice()
+                && subject.prepared.things(model).contains(own)
             {
-                if model.item(item).perfect {
-                    return Ok(None);
+                if model.item(*item).perfect {
+                    return Ok(Place::Perfect);
                 }
-                let found = subject.prepared.system.leaves.iter().position(|l| model.leaf_name(l) == own);
-                if let Some(number) = found {
-                    return Ok(subject.prepared.plan.of_leaf(number as u32));
+                if let Some(Named::Thing(block)) =
+                    subject.prepared.names(model).get(own).and_then(|known| known.exact)
+                {
+                    return Ok(Place::of(block));
                 }
+            }
+            if by_row {
+                return Ok(Place::Elsewhere);
             }
         }
         let wanted = model.tree.names.text(sym).to_string();
