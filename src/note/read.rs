@@ -10,7 +10,7 @@ pub(super) struct Read {
     pub(super) found: Found,
     pub(super) tree: Tree,
     pub(super) problems: Vec<Problem>,
-    /// Cells that ask: statement, place, row, column.
+    /// Cells that ask: statement, place, row, column; in the order of the statements.
     pub(super) cells: Vec<(usize, usize, usize, usize)>,
 }
 
@@ -47,26 +47,24 @@ pub(super) fn read(text: &str, base: u32, found: Found, mut ahead: Ahead) -> Rea
     let mut cells = Vec::new();
     // Tables come last: their headers may name attributes that a later block declares,
     // and their rows may ask about things that stand elsewhere.
-    let grids: Vec<(usize, language::Grid<'_>)> = found
+    let grids: Vec<language::Grid<'_>> = found
         .places
         .iter()
         .enumerate()
         .filter_map(|(block, place)| match place {
-            Place::Table(table) => Some((block, grid_of(table, &slice))),
+            Place::Table(table) => Some(grid_of(block as u32, table, &slice)),
             _ => None,
         })
         .collect();
-    for (block, grid) in &grids {
-        language::read_grid(grid, *block as u32, &mut tree, &mut problems);
+    language::read_grids(&grids, &mut tree, &mut problems);
+    for ask in language::ask_grids(&grids, &mut tree, &mut problems) {
+        cells.push((ask.statement, grids[ask.grid].block as usize, ask.row, ask.column));
     }
-    for (block, grid) in &grids {
-        let asks = language::ask_grid(grid, *block as u32, &mut tree, &mut problems);
-        cells.extend(asks.into_iter().map(|(s, row, column)| (s, *block, row, column)));
-    }
+    drop(grids);
     Read { found, tree, problems, cells }
 }
 
-fn grid_of<'a>(table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid<'a> {
+fn grid_of<'a>(block: u32, table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid<'a> {
     let row = |row: &crate::document::markdown::Row| {
         row.cells.iter().map(|c| Source { text: slice(c.text), at: c.text.start }).collect::<Vec<_>>()
     };
@@ -74,7 +72,9 @@ fn grid_of<'a>(table: &Table, slice: &dyn Fn(Span) -> &'a str) -> language::Grid
     language::Grid {
         opener: table.opener,
         header: row(&table.header),
-        rows: table.rows.iter().map(row).collect(),
+        cells: Box::new(table.rows.iter().map(row).collect::<Vec<_>>()),
         broken,
+        form: language::GridForm::Markdown,
+        block,
     }
 }

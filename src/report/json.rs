@@ -40,7 +40,7 @@
 //! Later versions may add keys; those that are here keep their meaning.
 
 use super::lines::Lines;
-use crate::note::Filled;
+use crate::answer::Filled;
 use crate::source::{Level, Problem, Sources, Span};
 use serde::Serialize;
 use serde_json::value::RawValue;

@@ -13,7 +13,7 @@ const BOUND: f64 = 1e-25;
 pub struct Shown {
     /// The thing.
     pub thing: String,
-    /// `line 12`, or empty.
+    /// `line 12`, `Power!C7`, or empty.
     pub place: String,
     /// Rule and source.
     pub rule: &'static str,
@@ -72,8 +72,7 @@ fn show(list: &StepList, step: &Step, sources: &Sources, digits: u8) -> Shown {
             (step.thing.clone(), result, String::new())
         }
     };
-    let place =
-        step.place.and_then(|p| sources.line(p)).map_or(String::new(), |(_, line)| format!("line {line}"));
+    let place = step.place.filter(|p| sources.find(*p).is_some()).map_or(String::new(), |p| sources.words(p));
     Shown {
         thing: step.thing.clone(),
         place,
