@@ -8,8 +8,7 @@ use crate::number::{Chance, Real};
 use crate::source::{Code, Problem, Span};
 use crate::system::{Base, Exposure, Fault, Model, NodeId, Out, System};
 use rustc_hash::{FxHashMap, FxHashSet};
-use std::cell::OnceCell;
-use std::rc::Rc;
+use std::sync::{Arc, OnceLock};
 
 /// The most diagram nodes spent on Fussell–Vesely within one group.
 const CUT_NODES: usize = 200_000;
@@ -30,9 +29,9 @@ pub struct Prepared {
     /// Names of things that stand in several places.
     pub repeated: Vec<String>,
     /// Its things by their names, once one is asked for.
-    names: OnceCell<FxHashMap<String, Known>>,
+    names: OnceLock<FxHashMap<String, Known>>,
     /// The names of all things under it, perfect ones too, once they are asked for.
-    things: OnceCell<FxHashSet<String>>,
+    things: OnceLock<FxHashSet<String>>,
 }
 
 /// What a name stands for in a system.
@@ -100,18 +99,18 @@ pub struct Valued {
 }
 
 /// The importance of each block, by number.
-type Ranked = Rc<Vec<Option<Importance>>>;
+type Ranked = Arc<Vec<Option<Importance>>>;
 
 /// Keeps what has been worked out for one set of notes.
 #[derive(Default)]
 pub struct Desk {
-    prepared: FxHashMap<ExprKey, Out<Rc<Prepared>>>,
-    valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Rc<Valued>>>,
+    prepared: FxHashMap<ExprKey, Out<Arc<Prepared>>>,
+    valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Arc<Valued>>>,
     ranked: FxHashMap<(ExprKey, Vec<ExprId>), Ranked>,
     /// Questions within questions.
     pub(super) depth: u32,
     /// What the answer at hand rests on; each becomes one folded remark.
-    pub(super) leant_on: Vec<Rc<Prepared>>,
+    pub(super) leant_on: Vec<Arc<Prepared>>,
     /// Fixed probabilities that an asked exposure left as they are.
     pub(super) unscaled: Vec<String>,
     /// Lists that a limit cut short which no question set.
@@ -127,7 +126,7 @@ enum ExprKey {
 
 impl Desk {
     /// The systems that the answer at hand rests on; the list starts anew.
-    pub fn take_leant_on(&mut self) -> Vec<Rc<Prepared>> {
+    pub fn take_leant_on(&mut self) -> Vec<Arc<Prepared>> {
         std::mem::take(&mut self.leant_on)
     }
 
@@ -152,7 +151,7 @@ impl Desk {
     ///
     /// # Errors
     /// What is wrong with it, or that it is too large.
-    pub fn prepare(&mut self, model: &mut Model<'_>, thing: ExprId) -> Out<Rc<Prepared>> {
+    pub fn prepare(&mut self, model: &mut Model<'_>, thing: ExprId) -> Out<Arc<Prepared>> {
         let key = Self::key(model, thing);
         let known = self.prepared.get(&key).cloned();
         let out = match known {
@@ -174,7 +173,7 @@ impl Desk {
         out
     }
 
-    fn prepare_new(model: &mut Model<'_>, thing: ExprId) -> Out<Rc<Prepared>> {
+    fn prepare_new(model: &mut Model<'_>, thing: ExprId) -> Out<Arc<Prepared>> {
         let asked = model.build(thing)?;
         let system = model.system(asked)?;
         let plan = match Plan::new(&system.structure, system.root) {
@@ -182,13 +181,13 @@ impl Desk {
             Err(large) => return Err(too_large(model, thing, large.limit)),
         };
         let repeated = repeated_names(model, &system);
-        Ok(Rc::new(Prepared {
+        Ok(Arc::new(Prepared {
             asked,
             system,
             plan,
             repeated,
-            names: OnceCell::new(),
-            things: OnceCell::new(),
+            names: OnceLock::new(),
+            things: OnceLock::new(),
         }))
     }
 
@@ -224,7 +223,7 @@ impl Desk {
         prepared: &Prepared,
         given: &[ExprId],
         place: Span,
-    ) -> Out<Rc<Valued>> {
+    ) -> Out<Arc<Valued>> {
         let key = (Self::key(model, thing), given.to_vec());
         if let Some(known) = self.valued.get(&key).cloned() {
             // The fault of an exposure that is not given points at the question that missed it.
@@ -250,7 +249,7 @@ impl Desk {
             let chance = told_from_zero(&prepared.plan, &chances, chance);
             // Two operations more than the plan counts, for each datum.
             let bound = bound(&prepared.plan) + crate::system::STEP * 16.0;
-            Ok(Rc::new(Valued { chances, values, chance, bound }))
+            Ok(Arc::new(Valued { chances, values, chance, bound }))
         });
         if out.is_ok() {
             self.note_unscaled(model, prepared, given);
@@ -285,7 +284,7 @@ impl Desk {
     ) -> Ranked {
         let key = (Self::key(model, thing), given.to_vec());
         let entry = self.ranked.entry(key);
-        entry.or_insert_with(|| Rc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
+        entry.or_insert_with(|| Arc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
     }
 }
 

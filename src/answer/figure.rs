@@ -9,7 +9,7 @@ use crate::number::Chance;
 use crate::source::{Code, Problem, Span};
 use crate::steps::Side;
 use crate::system::{Ctx, Dim, Fault, Model, Oracle, Out, Quantity, STEP};
-use std::rc::Rc;
+use std::sync::Arc;
 
 /// Diagram nodes allowed while minimal sets are made.
 pub(super) const SET_NODES: usize = 4_000_000;
@@ -80,8 +80,8 @@ impl Oracle for Desk {
 pub(super) struct Subject {
     pub(super) thing: ExprId,
     pub(super) given: Vec<ExprId>,
-    pub(super) prepared: Rc<Prepared>,
-    pub(super) valued: Rc<Valued>,
+    pub(super) prepared: Arc<Prepared>,
+    pub(super) valued: Arc<Valued>,
 }
 
 impl Desk {

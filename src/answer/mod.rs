@@ -18,6 +18,7 @@ pub use lists::assumptions;
 pub use reply::Reply;
 pub use require::{Verdict, require};
 pub use round::StepsForm;
-pub(crate) use round::{Answered, Inquiry, Outcome, Own, Round, misfit, show_readings};
+#[allow(unused_imports)] // the face of sheets uses them all
+pub(crate) use round::{Answered, Inquiry, MANY, Outcome, Own, answer_all, misfit, show_readings, told_once};
 
 pub(crate) use crate::steps::plain;

@@ -14,8 +14,9 @@ use crate::document::patch::Rewrite;
 use crate::language::{self, Display, ExprId, Line, Mark, Source, Tree};
 use crate::source::{Code, Level, Problem, Sources, Span};
 use crate::steps::json as steps_json;
-use crate::system::{Fault, Model, Out};
+use crate::system::{DefId, Fault, Model, Out};
 use std::collections::BTreeMap;
+use std::ops::Range;
 
 /// How steps are written.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -61,152 +62,192 @@ pub(crate) fn misfit(model: &mut Model<'_>, mut problem: Problem, asked: ExprId)
     model.fault(problem)
 }
 
+/// How an outcome looks in its document: see [`answer_all`].
+type Write<'w, T> = &'w (dyn Fn(&mut Model<'_>, Outcome, usize, &mut Vec<Problem>) -> Out<T> + Sync);
+
+/// From so many statements on, a note is answered in two halves at once.
+pub(crate) const MANY: usize = 2000;
+
 /// A statement's reply, before it has a place in its document.
 pub(crate) struct Answered<T> {
     pub(crate) statement: usize,
-    pub(crate) mark: Mark,
+    /// None for a requirement that does not ask.
+    pub(crate) mark: Option<Mark>,
     pub(crate) reply: Out<T>,
     pub(crate) unmet: bool,
-    pub(crate) remarks: Vec<String>,
+    /// What its reader should know of it.
+    pub(crate) found: Vec<Problem>,
 }
 
-/// What is gathered on the way.
-#[derive(Default)]
-pub(crate) struct Round {
-    /// Requirements that are not met or undecided.
-    pub(crate) unmet: usize,
-    /// Remarks on answers, and requirements that are not met.
-    pub(crate) problems: Vec<Problem>,
-    /// Remarks made so far: where among the problems, and how many more answers they belong to.
-    told: BTreeMap<(Code, String), (usize, usize)>,
-}
-
-impl Round {
-    /// Answers every statement that asks; `write` says how an outcome looks in the document.
-    pub(crate) fn answer_all<T>(
-        &mut self,
-        model: &mut Model<'_>,
-        desk: &mut Desk,
-        write: &mut dyn FnMut(&mut Model<'_>, Outcome, usize) -> Out<T>,
-    ) -> Vec<Answered<T>> {
-        let count = model.tree.statements.len();
-        let replies =
-            (0..count).filter_map(|index| self.statement(index, model, desk, write)).collect::<Vec<_>>();
-        self.finish_remarks();
-        for def in 0..model.defs.len() as u32 {
-            model.try_definition(crate::system::DefId(def));
-        }
-        replies
+impl<T> Answered<T> {
+    /// What its reader should know of it, in words.
+    pub(crate) fn remarks(&self) -> Vec<String> {
+        let found = self.found.iter().filter(|p| p.code != Code::NotMet);
+        found.map(|p| p.message.clone()).collect()
     }
+}
 
-    fn statement<T>(
-        &mut self,
-        index: usize,
-        model: &mut Model<'_>,
-        desk: &mut Desk,
-        write: &mut dyn FnMut(&mut Model<'_>, Outcome, usize) -> Out<T>,
-    ) -> Option<Answered<T>> {
-        let tree = model.tree;
-        let statement = &tree.statements[index];
-        let asks = statement.mark.is_some();
-        let value = match &statement.line {
-            Line::Ask { value, display } => Some((*value, *display)),
-            Line::Define { value, display, .. } if asks => Some((*value, *display)),
-            Line::Require { left, limit, right } => {
-                let out = require(desk, model, *left, *limit, *right);
-                let (reply, unmet) = match out {
-                    Ok((verdict, text)) => (Ok(Reply::Line(text)), verdict != Verdict::Met),
-                    Err(fault) => (Err(fault), false),
-                };
+/// Answers all that is asked or required, and builds what nobody asks for, so
+/// that what is wrong with it is found as well.
+///
+/// `write` says how an outcome looks in the document; it is given the number of
+/// the statement, and may add remarks.
+pub(crate) fn answer_all<T: Send>(model: &mut Model<'_>, write: Write<'_, T>) -> (Vec<Answered<T>>, Desk) {
+    let count = model.tree.statements.len();
+    if count >= MANY
+        && let Some(answered) = in_halves(model, count, write)
+    {
+        return answered;
+    }
+    let mut desk = Desk::default();
+    let answered = answer_some(model, &mut desk, write, 0..count);
+    build_rest(model, 0..model.defs.len());
+    (answered, desk)
+}
+
+/// Answers both halves at once, each with a model of its own. Nothing where
+/// either finds something wrong: what is said of an error depends on all that
+/// rests on it, so the note is then answered in one go.
+fn in_halves<T: Send>(
+    model: &mut Model<'_>,
+    count: usize,
+    write: Write<'_, T>,
+) -> Option<(Vec<Answered<T>>, Desk)> {
+    let before = model.problems.len();
+    let (half, defs) = (count / 2, model.defs.len());
+    let cut = model.defs.partition_point(|d| (d.statement as usize) < half);
+    let work = |model: &mut Model<'_>, statements: Range<usize>, defs: Range<usize>| {
+        let mut desk = Desk::default();
+        let answered = answer_some(model, &mut desk, write, statements);
+        build_rest(model, defs);
+        (answered, desk)
+    };
+    let mut other = model.clone();
+    let ((mut answered, desk), more) = rayon::join(
+        || work(model, 0..half, 0..cut),
+        || {
+            let (more, _) = work(&mut other, half..count, cut..defs);
+            let clean = other.problems.len() == before && more.iter().all(|a| a.reply.is_ok());
+            clean.then_some(more)
+        },
+    );
+    let clean = model.problems.len() == before && answered.iter().all(|a| a.reply.is_ok());
+    match more {
+        Some(more) if clean => answered.extend(more),
+        _ => {
+            *model = Model::new(model.tree, model.sources);
+            return None;
+        }
+    }
+    Some((answered, desk))
+}
+
+fn answer_some<T>(
+    model: &mut Model<'_>,
+    desk: &mut Desk,
+    write: Write<'_, T>,
+    statements: Range<usize>,
+) -> Vec<Answered<T>> {
+    statements.filter_map(|index| statement(index, model, desk, write)).collect()
+}
+
+fn build_rest(model: &mut Model<'_>, defs: Range<usize>) {
+    for def in defs {
+        model.try_definition(DefId(def as u32));
+    }
+}
+
+fn statement<T>(
+    index: usize,
+    model: &mut Model<'_>,
+    desk: &mut Desk,
+    write: Write<'_, T>,
+) -> Option<Answered<T>> {
+    let statement = &model.tree.statements[index];
+    let asks = statement.mark.is_some();
+    let mut found = Vec::new();
+    let (outcome, unmet) = match &statement.line {
+        Line::Ask { value, display } => (outcome_of(*value, *display, model, desk), false),
+        Line::Define { value, display, .. } if asks => (outcome_of(*value, *display, model, desk), false),
+        Line::Require { left, limit, right } => match require(desk, model, *left, *limit, *right) {
+            Ok((verdict, text)) => {
+                let unmet = verdict != Verdict::Met;
                 if unmet {
-                    self.unmet += 1;
-                    if let Ok(Reply::Line(text)) = &reply {
-                        self.problems.push(Problem::remark(
-                            Code::NotMet,
-                            statement.span,
-                            format!("requirement {text}"),
-                        ));
-                    }
+                    let message = format!("requirement {text}");
+                    found.push(Problem::remark(Code::NotMet, statement.span, message));
                 }
-                let remarks = self.remarks(statement.span, desk);
-                let mark = statement.mark?;
-                let reply = reply.and_then(|reply| write(model, Outcome::Reply(reply), index));
-                return Some(Answered { statement: index, mark, reply, unmet, remarks });
+                (Ok(Outcome::Reply(Reply::Line(text))), unmet)
             }
-            Line::Broken(_) if asks => None,
-            _ => return None,
+            Err(fault) => (Err(fault), false),
+        },
+        Line::Broken(_) if asks => (Err(Fault(u32::MAX)), false),
+        _ => return None,
+    };
+    remarks(statement.span, desk, &mut found);
+    let reply = outcome.and_then(|outcome| write(model, outcome, index, &mut found));
+    Some(Answered { statement: index, mark: statement.mark, reply, unmet, found })
+}
+
+/// What an answer rests on that its reader should know: one folded remark for
+/// things in several places, one for probabilities that an asked exposure left
+/// alone, one for a list cut short.
+fn remarks(place: Span, desk: &mut Desk, found: &mut Vec<Problem>) {
+    let mut names: Vec<String> = Vec::new();
+    for prepared in desk.take_leant_on() {
+        for name in &prepared.repeated {
+            if !names.contains(name) {
+                names.push(name.clone());
+            }
+        }
+    }
+    if !names.is_empty() {
+        let (verb, count) = if names.len() == 1 {
+            ("stands", "counts as one thing")
+        } else {
+            ("stand", "count as one thing each")
         };
-        let mark = statement.mark?;
-        let reply = match value {
-            None => Err(Fault(u32::MAX)),
-            Some((value, display)) => {
-                outcome_of(value, display, model, desk).and_then(|found| write(model, found, index))
-            }
-        };
-        let remarks = self.remarks(statement.span, desk);
-        Some(Answered { statement: index, mark, reply, unmet: false, remarks })
+        let list = crate::steps::listed(&names);
+        let message = format!("{list} {verb} in several places and {count}");
+        found.push(Problem::remark(Code::UsedTwice, place, message));
     }
+    for text in desk.take_cut_short() {
+        let mend =
+            "ask for a number of your own, `first 200`, for low orders, `order 3`, or for their `count(…)`";
+        found.push(Problem::remark(Code::CutShort, place, text).mend(mend));
+    }
+    let unscaled = desk.take_unscaled();
+    if !unscaled.is_empty() {
+        let list = crate::steps::listed(&unscaled);
+        let message = format!("the exposure asked for does not change the fixed probability of {list}");
+        let mend = "give a rate, or the exposure that the probability is for: `0.98 over 1000 h`";
+        found.push(Problem::remark(Code::FixedProbability, place, message).mend(mend));
+    }
+}
 
-    /// What an answer rests on that its reader should know: one folded remark for
-    /// things in several places, one for probabilities that an asked exposure left
-    /// alone, one for a list cut short. Returned for the answer; as a problem each
-    /// stands once, at the first answer it belongs to.
-    fn remarks(&mut self, place: Span, desk: &mut Desk) -> Vec<String> {
-        let mut found: Vec<Problem> = Vec::new();
-        let mut names: Vec<String> = Vec::new();
-        for prepared in desk.take_leant_on() {
-            for name in &prepared.repeated {
-                if !names.contains(name) {
-                    names.push(name.clone());
-                }
-            }
+/// The remarks of all answers, each once, at the first answer it belongs to,
+/// with how many more it belongs to.
+pub(crate) fn told_once<T>(answered: &[Answered<T>]) -> Vec<Problem> {
+    let mut problems: Vec<Problem> = Vec::new();
+    let mut told: BTreeMap<(Code, &str), (usize, usize)> = BTreeMap::new();
+    for problem in answered.iter().flat_map(|a| &a.found) {
+        if problem.code == Code::NotMet {
+            problems.push(problem.clone());
+            continue;
         }
-        if !names.is_empty() {
-            let (verb, count) = if names.len() == 1 {
-                ("stands", "counts as one thing")
-            } else {
-                ("stand", "count as one thing each")
-            };
-            let list = crate::steps::listed(&names);
-            let message = format!("{list} {verb} in several places and {count}");
-            found.push(Problem::remark(Code::UsedTwice, place, message));
-        }
-        for text in desk.take_cut_short() {
-            let mend = "ask for a number of your own, `first 200`, for low orders, `order 3`, or for their `count(…)`";
-            found.push(Problem::remark(Code::CutShort, place, text).mend(mend));
-        }
-        let unscaled = desk.take_unscaled();
-        if !unscaled.is_empty() {
-            let list = crate::steps::listed(&unscaled);
-            let message = format!("the exposure asked for does not change the fixed probability of {list}");
-            let mend = "give a rate, or the exposure that the probability is for: `0.98 over 1000 h`";
-            found.push(Problem::remark(Code::FixedProbability, place, message).mend(mend));
-        }
-        let texts = found.iter().map(|p| p.message.clone()).collect();
-        found.into_iter().for_each(|problem| self.remark(problem));
-        texts
+        told.entry((problem.code, problem.message.as_str()))
+            .and_modify(|(_, more)| *more += 1)
+            .or_insert_with(|| {
+                problems.push(problem.clone());
+                (problems.len() - 1, 0)
+            });
     }
-
-    /// Adds a remark, or counts it where the same has been made.
-    pub(crate) fn remark(&mut self, problem: Problem) {
-        match self.told.get_mut(&(problem.code, problem.message.clone())) {
-            Some((_, more)) => *more += 1,
-            None => {
-                self.told.insert((problem.code, problem.message.clone()), (self.problems.len(), 0));
-                self.problems.push(problem);
-            }
+    for (at, more) in told.into_values() {
+        if more > 0 {
+            let answers = if more == 1 { "answer" } else { "answers" };
+            problems[at].mark = format!("and {more} more {answers}");
         }
     }
-
-    /// Says of each remark how many more answers it belongs to.
-    fn finish_remarks(&mut self) {
-        for (at, more) in self.told.values() {
-            if *more > 0 {
-                let answers = if *more == 1 { "answer" } else { "answers" };
-                self.problems[*at].mark = format!("and {more} more {answers}");
-            }
-        }
-    }
+    problems
 }
 
 fn outcome_of(
@@ -375,8 +416,9 @@ impl Inquiry<'_> {
                 }),
             _ => Err(Fault(u32::MAX)),
         };
-        let mut round = Round::default();
-        let remarks = round.remarks(statement.span, &mut desk);
+        let mut found = Vec::new();
+        remarks(statement.span, &mut desk, &mut found);
+        let told = found.iter().map(|p| p.message.clone()).collect();
         show_readings(&mut model, &mut desk);
         let (new, error) = match out {
             Ok(text) => (text, false),
@@ -390,11 +432,11 @@ impl Inquiry<'_> {
             stale: false,
             error,
             unmet: unmet > 0,
-            remarks,
+            remarks: told,
         };
         let mut problems = read;
         problems.append(&mut model.take_problems());
-        problems.append(&mut round.problems);
+        problems.append(&mut found);
         problems.sort_by_key(|p| (p.place.start, p.place.end));
         problems.dedup();
         Filled { asked: vec![asked], problems, unmet, rewrite: Rewrite::Unchanged, sources: sources.clone() }
@@ -416,4 +458,54 @@ fn message_of_one(fault: Fault, span: Span, read: &[Problem], model: &Model<'_>)
         elsewhere: &|place| model.sources.words(place),
     }
     .message(fault, model)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use crate::note::syntax;
+
+    /// So many blocks, with a thing that all of them share.
+    fn note(blocks: usize, extra: &str) -> String {
+        let mut text = "```tieback\nexposure start\nmission 3 start\nbus = 0.9999\n".to_string();
+        for i in 0..blocks {
+            text += &format!(
+                "p{i} = fails 0.00{i} /start\nb{i} = a bus\nu{i} = (p{i} -> bus) // (p{i} -> b{i})\n"
+            );
+            text += &format!("R(u{i}) ?\nrequire F(u{i}) <= 0.0001 ?\ncuts(u{i}, first 1) ?\n");
+        }
+        format!("{text}{extra}```\n")
+    }
+
+    fn shown(answered: &[Answered<Reply>]) -> String {
+        let one = |a: &Answered<Reply>| {
+            format!("{} {:?} {:?} {} {:?}\n", a.statement, a.mark, a.reply, a.unmet, a.found)
+        };
+        answered.iter().map(one).collect()
+    }
+
+    fn write(model: &mut Model<'_>, outcome: Outcome, _: usize, _: &mut Vec<Problem>) -> Out<Reply> {
+        outcome.reply(model)
+    }
+
+    #[test]
+    fn halves_answer_as_the_whole() {
+        let wrong = ["z = rate 2 /parsec\n", "R(u3, 2 h) ?\n", "q = rate 1 /h\n(q -> u1) ?\n"];
+        for extra in ["", "x = 1 -> y\n", "R(u3, 2 start) ?\n"].into_iter().chain(wrong) {
+            let (sources, tree, _) = syntax("note.md", &note(20, extra));
+            let count = tree.statements.len();
+            let mut whole = Model::new(&tree, &sources);
+            let fresh = whole.problems.clone();
+            let serial = answer_some(&mut whole, &mut Desk::default(), &write, 0..count);
+            let defs = whole.defs.len();
+            build_rest(&mut whole, 0..defs);
+            let mut model = Model::new(&tree, &sources);
+            match in_halves(&mut model, count, &write) {
+                Some((halves, _)) => assert_eq!(shown(&halves), shown(&serial), "{extra}"),
+                None => assert_eq!(model.problems, fresh, "{extra}"),
+            }
+            let clean = serial.iter().all(|a| a.reply.is_ok()) && whole.problems == fresh;
+            assert_eq!(clean, !wrong.contains(&extra), "{extra}");
+        }
+    }
 }

@@ -337,7 +337,8 @@ impl<'a> GridReader<'_, 'a> {
                     assembly = Some(self.name_in(cell));
                 }
                 Column::Clause { word: ClauseWord::Perfect, name, span, .. } => {
-                    if self.yes(cell)? {
+                    let says_so = self.yes(cell)?;
+                    if says_so {
                         clauses.push(clause(ClauseWord::Perfect, *name, *span, cell, None));
                     }
                 }

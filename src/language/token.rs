@@ -84,6 +84,13 @@ fn quoted(input: &str) -> IResult<&str, &str> {
 
 /// `feed.pump[1]`, `"Main pump".rate`
 fn path(input: &str) -> IResult<&str, &str> {
+    // Most names are of plain letters and digits, and end there.
+    let end = input.bytes().take_while(|b| b.is_ascii_alphanumeric() || *b == b'_').count();
+    if input.starts_with(|c: char| c.is_ascii_alphabetic() || c == '_')
+        && input.as_bytes().get(end).is_none_or(|b| b.is_ascii() && !b".-[\"".contains(b))
+    {
+        return Ok((&input[end..], &input[..end]));
+    }
     recognize((
         alt((plain, quoted)),
         many0_count(alt((
@@ -95,6 +102,17 @@ fn path(input: &str) -> IResult<&str, &str> {
 }
 
 fn number(input: &str) -> IResult<&str, &str> {
+    // The same for numbers without an exponent.
+    let bytes = input.as_bytes();
+    let digits = |from: usize| bytes[from..].iter().take_while(|b| b.is_ascii_digit()).count();
+    let mut end = digits(0);
+    if end > 0 && bytes.get(end) == Some(&b'.') {
+        let decimals = digits(end + 1);
+        end += if decimals > 0 { decimals + 1 } else { 0 };
+    }
+    if end > 0 && !matches!(bytes.get(end), Some(b'e' | b'E')) {
+        return Ok((&input[end..], &input[..end]));
+    }
     recognize((digit1, opt((char('.'), digit1)), opt((one_of("eE"), opt(one_of("+-")), digit1)))).parse(input)
 }
 
@@ -131,6 +149,10 @@ fn symbol(input: &str) -> IResult<&str, Tok> {
 }
 
 fn blanks(input: &str) -> IResult<&str, &str> {
+    let end = input.bytes().take_while(|b| *b == b' ').count();
+    if input.as_bytes().get(end).is_none_or(u8::is_ascii_graphic) {
+        return Ok((&input[end..], &input[..end]));
+    }
     take_while(|c: char| c.is_whitespace() || c == '\u{feff}').parse(input)
 }
 

@@ -1,17 +1,17 @@
 //! One note from end to end: places, language, model, answers, edits.
 
+mod ahead;
 mod place;
 mod read;
 
 pub use crate::answer::{Asked, Filled, StepsForm};
-use crate::answer::{Desk, Inquiry, Round, show_readings};
-use crate::document::markdown::find;
+use crate::answer::{Inquiry, answer_all, show_readings, told_once};
 pub use crate::document::patch::Rewrite;
 use crate::document::patch::{Edit, apply};
 use crate::language::Tree;
 use crate::source::{Code, Problem, Sources, Span};
 use crate::system::Model;
-use read::{Read, read};
+use read::{Read, find_and_read};
 use std::sync::Arc;
 
 /// Fills a note: finds its questions and answers them.
@@ -24,9 +24,9 @@ pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text.clone()) else { return Filled::too_much_text(sources) };
     let text: &str = &text;
-    let found = find(text, base);
-    if found.places.is_empty() {
-        let mut problems = found.problems;
+    let read = find_and_read(text, base);
+    if read.found.places.is_empty() {
+        let mut problems = read.found.problems;
         if problems.is_empty() {
             let place = Span { start: base, end: base };
             problems.push(
@@ -37,7 +37,6 @@ pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
         }
         return Filled::nothing(sources, problems);
     }
-    let read = read(text, base, found);
     let (problems, asked, unmet, rewrite) = answer_note(&read, &sources, text, base);
     Filled { sources, problems, asked, unmet, rewrite }
 }
@@ -46,7 +45,7 @@ pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
 pub fn syntax(name: &str, text: &str) -> (Sources, Tree, Vec<Problem>) {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return (sources, Tree::default(), Vec::new()) };
-    let read = read(text, base, find(text, base));
+    let read = find_and_read(text, base);
     (sources, read.tree, read.problems)
 }
 
@@ -54,25 +53,15 @@ type Outcome = (Vec<Problem>, Vec<Asked>, usize, Rewrite);
 
 fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome {
     let mut model = Model::new(&read.tree, sources);
-    let mut desk = Desk::default();
-    let mut round = Round::default();
-    let replies = round.answer_all(&mut model, &mut desk, &mut |model, found, _| found.reply(model));
-    let mut work = Work {
-        read,
-        text,
-        base,
-        edits: Vec::new(),
-        asked: Vec::new(),
-        problems: Vec::new(),
-        cells: Vec::new(),
-        shifts: Vec::new(),
-    };
-    work.place_all(&replies, &model);
+    let (answered, mut desk) = answer_all(&mut model, &|model, found, _, _| found.reply(model));
+    let unmet = answered.iter().filter(|a| a.unmet).count();
+    let mut work = Work::new(read, text, base);
+    work.problems = told_once(&answered);
+    work.place_all(&answered, &model);
     let mut problems = read.found.problems.clone();
     problems.extend(read.problems.iter().cloned());
     show_readings(&mut model, &mut desk);
     problems.append(&mut model.take_problems());
-    problems.append(&mut round.problems);
     problems.append(&mut work.problems);
     problems.sort_by_key(|p| (p.place.start, p.place.end));
     problems.dedup();
@@ -93,7 +82,7 @@ fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome
         }
     };
     work.asked.sort_by_key(|a| a.place.start);
-    (problems, work.asked, round.unmet, rewrite)
+    (problems, work.asked, unmet, rewrite)
 }
 
 struct Work<'a> {
@@ -107,6 +96,21 @@ struct Work<'a> {
     cells: Vec<(usize, usize, usize, String)>,
     /// Where answers add or take lines, and how many: by place, summed up.
     shifts: Vec<(usize, i64)>,
+}
+
+impl<'a> Work<'a> {
+    fn new(read: &'a Read, text: &'a str, base: u32) -> Work<'a> {
+        Work {
+            read,
+            text,
+            base,
+            edits: Vec::new(),
+            asked: Vec::new(),
+            problems: Vec::new(),
+            cells: Vec::new(),
+            shifts: Vec::new(),
+        }
+    }
 }
 
 /// One question against the definitions of a note and further lines.
@@ -133,7 +137,7 @@ fn inquiry<'a>(
 ) -> Result<Inquiry<'a>, Box<Filled>> {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return Err(Box::new(Filled::too_much_text(sources))) };
-    let Read { found, tree, problems: read, .. } = read(text, base, find(text, base));
+    let Read { found, tree, problems: read, .. } = find_and_read(text, base);
     let mut problems = found.problems;
     problems.extend(read);
     Ok(Inquiry { sources, tree, problems, given, question })

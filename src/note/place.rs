@@ -2,7 +2,7 @@
 //! the user wrote there stays.
 
 use super::{Asked, Work};
-use crate::answer::{Answered, Own, Reply};
+use crate::answer::{Answered, MANY, Own, Reply};
 use crate::document::answer_place::{
     FenceAnswer, block_edit, bytes_of_lines, fence_edits, inline_edit, old_answer_lines, row_edits,
 };
@@ -20,7 +20,7 @@ impl Work<'_> {
         let problems = self.problems.len();
         self.place_once(replies, model);
         self.shifts = self.line_shifts();
-        let names_lines = replies.iter().any(|r| r.reply.is_err());
+        let names_lines = replies.iter().any(|r| r.mark.is_some() && r.reply.is_err());
         if names_lines && !self.shifts.is_empty() {
             self.problems.truncate(problems);
             self.edits.clear();
@@ -29,7 +29,28 @@ impl Work<'_> {
         }
     }
 
+    /// Places all replies; of many, both halves at once.
     fn place_once(&mut self, replies: &[Answered<Reply>], model: &Model<'_>) {
+        // The cells of one row are written together.
+        let block = |a: &Answered<Reply>| self.read.tree.statements[a.statement].block;
+        let mut half = if replies.len() < MANY { replies.len() } else { replies.len() / 2 };
+        while half > 0 && half < replies.len() && block(&replies[half]) == block(&replies[half - 1]) {
+            half += 1;
+        }
+        let (first, second) = replies.split_at(half);
+        if second.is_empty() {
+            return self.place_some(first, model);
+        }
+        let mut other = Work::new(self.read, self.text, self.base);
+        other.shifts.clone_from(&self.shifts);
+        rayon::join(|| self.place_some(first, model), || other.place_some(second, model));
+        self.edits.append(&mut other.edits);
+        self.edits.sort_by_key(|e| (e.span.start, e.span.end));
+        self.asked.append(&mut other.asked);
+        self.problems.append(&mut other.problems);
+    }
+
+    fn place_some(&mut self, replies: &[Answered<Reply>], model: &Model<'_>) {
         for answered in replies {
             self.place(answered, model);
         }
@@ -59,7 +80,7 @@ impl Work<'_> {
     }
 
     fn place(&mut self, answered: &Answered<Reply>, model: &Model<'_>) {
-        let Answered { statement: index, mark, unmet, .. } = *answered;
+        let Answered { statement: index, mark: Some(mark), unmet, .. } = *answered else { return };
         let read = self.read;
         let statement = &read.tree.statements[index];
         let message;
@@ -92,7 +113,7 @@ impl Work<'_> {
             stale,
             error,
             unmet,
-            remarks: answered.remarks.clone(),
+            remarks: answered.remarks(),
         });
     }
 

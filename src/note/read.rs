@@ -1,6 +1,7 @@
 //! Places of a note to syntax: fences, comment pairs, then tables.
 
-use crate::document::markdown::{Found, Place, Table};
+use super::ahead::{Ahead, LARGE};
+use crate::document::markdown::{Found, Place, Table, find};
 use crate::language::{self, Source, Tree};
 use crate::source::{Problem, Span};
 
@@ -13,24 +14,37 @@ pub(super) struct Read {
     pub(super) cells: Vec<(usize, usize, usize, usize)>,
 }
 
-pub(super) fn read(text: &str, base: u32, found: Found) -> Read {
-    let mut tree = Tree::default();
-    let mut problems = Vec::new();
-    let mut cells = Vec::new();
+/// Finds the places of a note and reads them; of a large one both at once.
+pub(super) fn find_and_read(text: &str, base: u32) -> Read {
+    if text.len() < LARGE {
+        return read(text, base, find(text, base), Ahead::default());
+    }
+    let (found, ahead) = rayon::join(|| find(text, base), || Ahead::read(text, base));
+    read(text, base, found, ahead)
+}
+
+pub(super) fn read(text: &str, base: u32, found: Found, mut ahead: Ahead) -> Read {
     let slice = |span: Span| text.get((span.start - base) as usize..(span.end - base) as usize).unwrap_or("");
+    let fences = found.places.iter().enumerate().filter_map(|(block, place)| match place {
+        Place::Fence(fence) => Some((block as u32, fence)),
+        _ => None,
+    });
+    let mut unread = Vec::new();
+    let mut problems = ahead.keep(fences, |block, fence| unread.push((block, fence)));
+    let mut tree = ahead.tree;
+    for (block, fence) in unread {
+        let lines = fence.lines.iter().map(|l| Source { text: slice(l.text), at: l.text.start });
+        language::read_block(lines, block, &mut tree, &mut problems);
+    }
     for (block, place) in found.places.iter().enumerate() {
-        match place {
-            Place::Fence(fence) => {
-                let lines = fence.lines.iter().map(|l| Source { text: slice(l.text), at: l.text.start });
-                language::read_block(lines, block as u32, &mut tree, &mut problems);
-            }
-            Place::Pair(pair) => {
-                let source = Source { text: slice(pair.question), at: pair.question.start };
-                language::read_question(source, block as u32, &mut tree, &mut problems);
-            }
-            Place::Table(_) => {}
+        if let Place::Pair(pair) = place {
+            let source = Source { text: slice(pair.question), at: pair.question.start };
+            language::read_question(source, block as u32, &mut tree, &mut problems);
         }
     }
+    // The first of two definitions is the one that stands first.
+    tree.statements.sort_by_key(|s| s.block);
+    let mut cells = Vec::new();
     // Tables come last: their headers may name attributes that a later block declares,
     // and their rows may ask about things that stand elsewhere.
     let grids: Vec<language::Grid<'_>> = found

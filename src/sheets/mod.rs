@@ -14,7 +14,7 @@ mod read;
 mod rows;
 mod text;
 
-use crate::answer::{Desk, Filled, Inquiry, Round, StepsForm, show_readings};
+use crate::answer::{Filled, Inquiry, StepsForm, answer_all, show_readings, told_once};
 use crate::document::workbook::{BookTrouble, Limits};
 use crate::language::Tree;
 use crate::source::{CellAt, CellMap, Code, Level, Problem, Sources, Span};
@@ -22,6 +22,7 @@ use crate::system::Model;
 use place::Placing;
 use read::{Read, open, read};
 use std::collections::BTreeMap;
+use std::sync::atomic::{AtomicUsize, Ordering};
 
 /// What sort of file it is; a workbook's own kind is told from its bytes.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -110,22 +111,23 @@ pub fn fill(name: &str, form: SheetForm, bytes: Vec<u8>, options: &Options<'_>) 
     };
     let total = read.tree.statements.len();
     let mut model = Model::new(&read.tree, &sources);
-    let mut desk = Desk::default();
-    let mut round = Round::default();
     let mut placing = Placing::new(&opened, &read);
-    let replies = round.answer_all(&mut model, &mut desk, &mut |model, found, statement| {
-        if statement % 1024 == 0 {
-            options.tell(Stage::Answering(statement, total));
+    let done = AtomicUsize::new(0);
+    let (replies, mut desk) = answer_all(&mut model, &|model, found, statement, remarks| {
+        let done = done.fetch_add(1, Ordering::Relaxed);
+        if done % 1024 == 0 {
+            options.tell(Stage::Answering(done, total));
         }
-        placing.write(model, found, statement)
+        placing.write(model, found, statement, remarks)
     });
+    let unmet = replies.iter().filter(|a| a.unmet).count();
+    let mut told = told_once(&replies);
     placing.place_all(replies, &model);
     let mut problems = read.problems.clone();
     show_readings(&mut model, &mut desk);
     problems.append(&mut model.take_problems());
-    problems.append(&mut round.problems);
-    let unmet = round.unmet;
-    drop((model, desk, round));
+    problems.append(&mut told);
+    drop((model, desk));
     let place::Placed { asked, answers, problems: mut placed } = placing.finish();
     problems.append(&mut placed);
     let base = read.base;

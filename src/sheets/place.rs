@@ -11,7 +11,6 @@ use crate::document::workbook::{Answer, AnswerValue, Book};
 use crate::language::{CellAsk, Line, is_answer_cell};
 use crate::source::{CellAt, CellMap, Code, Level, Problem, Sources, Span, cell_name};
 use crate::system::{Model, Out};
-use rustc_hash::FxHashMap;
 
 /// Puts replies into the cells of their questions.
 pub(super) struct Placing<'a> {
@@ -20,10 +19,6 @@ pub(super) struct Placing<'a> {
     asked: Vec<Asked>,
     answers: Vec<CellAnswer>,
     problems: Vec<Problem>,
-    /// Remarks on columns: of what sort, where among the problems, on how many more answers.
-    told: FxHashMap<(usize, String), (usize, usize)>,
-    /// What is to be known of the answers to statements.
-    notes: FxHashMap<usize, CellNote>,
     /// Errors that were found while reading, by where they are or point.
     errors: Vec<(u32, u32)>,
 }
@@ -56,16 +51,7 @@ impl<'a> Placing<'a> {
             }
         }
         errors.sort_unstable();
-        Placing {
-            opened,
-            read,
-            asked: Vec::new(),
-            answers: Vec::new(),
-            problems: Vec::new(),
-            told: FxHashMap::default(),
-            notes: FxHashMap::default(),
-            errors,
-        }
+        Placing { opened, read, asked: Vec::new(), answers: Vec::new(), problems: Vec::new(), errors }
     }
 
     fn ask(&self, statement: usize) -> Option<CellAsk> {
@@ -82,34 +68,32 @@ impl<'a> Placing<'a> {
         self.read.tables.get(ask.grid).and_then(|t| t.entry(ask.row, ask.column)).unwrap_or(0)
     }
 
-    /// An outcome as its cell holds it.
+    /// An outcome as its cell holds it, and what is to be known of it.
     pub(super) fn write(
-        &mut self,
+        &self,
         model: &mut Model<'_>,
         found: Outcome,
         statement: usize,
+        remarks: &mut Vec<Problem>,
     ) -> Out<CellReply> {
-        match found {
-            Outcome::Reply(reply) => Ok(CellReply::of_reply(&reply)),
-            Outcome::Number(number, display, asked) => {
-                let percent = match (self.opened, self.ask(statement)) {
-                    (Opened::Book(book), Some(ask)) => {
-                        let (sheet, row, column) = self.cell(self.entry(ask));
-                        book.sheets().get(sheet).is_some_and(|s| s.at(row, column).percent)
-                    }
-                    _ => false,
-                };
-                match cell_number(model, &number, display, percent) {
-                    Ok((reply, note)) => {
-                        if let Some(note) = note {
-                            self.notes.insert(statement, note);
-                        }
-                        Ok(reply)
-                    }
-                    Err(problem) => Err(misfit(model, *problem, asked)),
-                }
+        let (number, display, asked) = match found {
+            Outcome::Reply(reply) => return Ok(CellReply::of_reply(&reply)),
+            Outcome::Number(number, display, asked) => (number, display, asked),
+        };
+        let ask = self.ask(statement);
+        let percent = match (self.opened, ask) {
+            (Opened::Book(book), Some(ask)) => {
+                let (sheet, row, column) = self.cell(self.entry(ask));
+                book.sheets().get(sheet).is_some_and(|s| s.at(row, column).percent)
             }
+            _ => false,
+        };
+        let (reply, note) = cell_number(model, &number, display, percent)
+            .map_err(|problem| misfit(model, *problem, asked))?;
+        if let (Some(note), Some(ask)) = (note, ask) {
+            remarks.push(self.note(&note, ask));
         }
+        Ok(reply)
     }
 
     pub(super) fn place_all(&mut self, replies: Vec<Answered<CellReply>>, model: &Model<'_>) {
@@ -121,16 +105,14 @@ impl<'a> Placing<'a> {
     }
 
     fn place(&mut self, answered: Answered<CellReply>, ask: CellAsk, model: &Model<'_>) {
-        let Answered { statement, reply, unmet, mut remarks, .. } = answered;
+        let remarks = answered.remarks();
+        let Answered { statement, reply, unmet, .. } = answered;
         let entry = self.entry(ask);
         let place = self.read.based().span(entry);
         let reply = match reply {
             Ok(reply) => reply,
             Err(fault) => CellReply::Error(self.message(fault, ask, model)),
         };
-        if let Some(note) = self.notes.remove(&statement) {
-            remarks.push(self.note(&note, ask, place));
-        }
         let old = self.content(entry);
         let error = matches!(reply, CellReply::Error(_));
         let shown = self.text_of(&old);
@@ -220,41 +202,21 @@ impl<'a> Placing<'a> {
         true
     }
 
-    /// Says what is to be known of an answer, once for each column.
-    fn note(&mut self, note: &CellNote, ask: CellAsk, place: Span) -> String {
-        let (text, mend) = match note {
-            CellNote::Rounded => (
-                "the nines of this answer go beyond the 15 digits of a cell, and it is rounded towards failure".to_string(),
-                "ask `F ?` beside it: its digits fit".to_string(),
-            ),
-            CellNote::Unit(unit) => (
-                format!("the numbers under this header are in {unit}"),
-                "write `in` and a unit before the `?` for another".to_string(),
-            ),
-        };
-        let header = self.read.tables.get(ask.grid).map_or(0, |t| t.header_entry(ask.column));
-        match self.told.get_mut(&(header, text.clone())) {
-            Some((at, more)) => {
-                *more += 1;
-                if let Some(problem) = self.problems.get_mut(*at) {
-                    let answers = if *more == 1 { "answer" } else { "answers" };
-                    problem.mark = format!("and {more} more {answers}");
-                }
+    /// What is to be known of an answer.
+    fn note(&self, note: &CellNote, ask: CellAsk) -> Problem {
+        match note {
+            CellNote::Rounded => {
+                let message = "the nines of this answer go beyond the 15 digits of a cell, and it is rounded towards failure";
+                let place = self.read.based().span(self.entry(ask));
+                Problem::remark(Code::CutShort, place, message).mend("ask `F ?` beside it: its digits fit")
             }
-            None => {
-                self.told.insert((header, text.clone()), (self.problems.len(), 0));
-                let code = match note {
-                    CellNote::Rounded => Code::CutShort,
-                    CellNote::Unit(_) => Code::TableHeader,
-                };
-                let place = match note {
-                    CellNote::Rounded => place,
-                    CellNote::Unit(_) => self.read.based().span(header),
-                };
-                self.problems.push(Problem::remark(code, place, text.clone()).mend(mend));
+            CellNote::Unit(unit) => {
+                let header = self.read.tables.get(ask.grid).map_or(0, |t| t.header_entry(ask.column));
+                let message = format!("the numbers under this header are in {unit}");
+                Problem::remark(Code::TableHeader, self.read.based().span(header), message)
+                    .mend("write `in` and a unit before the `?` for another")
             }
         }
-        text
     }
 
     /// The message of an answer that is none.

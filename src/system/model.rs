@@ -39,6 +39,7 @@ pub struct Def {
 }
 
 /// Everything that the notes say, with names bound.
+#[derive(Clone)]
 pub struct Model<'a> {
     /// The syntax.
     pub tree: &'a Tree,
@@ -72,6 +73,8 @@ pub struct Model<'a> {
 }
 
 const NONE: u32 = u32::MAX;
+/// From so many definitions on, names are compared while they are bound.
+const MANY: usize = 5000;
 
 impl<'a> Model<'a> {
     /// Binds the names of `tree`. What is wrong is in [`Model::problems`].
@@ -97,11 +100,23 @@ impl<'a> Model<'a> {
         };
         model.define_all();
         model.declare();
-        model.check_names();
-        model.settle_year_and_digits();
-        model.settle_mission();
-        model.check_look_alikes();
+        let look_alikes = if model.defs.len() < MANY {
+            model.bind();
+            look_alikes(tree, &model.defs)
+        } else {
+            let defs = model.defs.clone();
+            rayon::join(|| model.bind(), || look_alikes(tree, &defs)).1
+        };
+        for problem in look_alikes {
+            model.fault(problem);
+        }
         model
+    }
+
+    fn bind(&mut self) {
+        self.check_names();
+        self.settle_year_and_digits();
+        self.settle_mission();
     }
 
     /// Notes a problem; the same one twice is one.
@@ -387,41 +402,6 @@ impl<'a> Model<'a> {
         }
     }
 
-    /// Names that a reader would take for each other get a remark.
-    fn check_look_alikes(&mut self) {
-        // By hash: the keys themselves took 100 bytes a name.
-        let mut seen: FxHashMap<u64, DefId> = FxHashMap::default();
-        seen.reserve(2 * self.defs.len());
-        let (mut keys, mut other_keys) = ([String::new(), String::new()], [String::new(), String::new()]);
-        let tree = self.tree;
-        for index in 0..self.defs.len() {
-            let def = DefId(index as u32);
-            let name = tree.names.text(self.def(def).name);
-            super::scope::look_alike_keys(name, &mut keys);
-            for key in &keys {
-                let first = *seen.entry(rustc_hash::FxBuildHasher.hash_one(key)).or_insert(def);
-                if first == def {
-                    continue;
-                }
-                let other = self.def(first);
-                let (other_name, other_span) = (tree.names.text(other.name), other.span);
-                super::scope::look_alike_keys(other_name, &mut other_keys);
-                if !other_keys.contains(key) {
-                    continue; // equal by hash alone
-                }
-                let message =
-                    format!("`{name}` and `{other_name}` differ only by case or by letters that look alike");
-                let span = self.def(def).span;
-                self.fault(
-                    Problem::remark(Code::LookAlikeNames, span, message)
-                        .label(other_span, "the other one")
-                        .mend("rename one of them, unless both are meant"),
-                );
-                break;
-            }
-        }
-    }
-
     /// The fault that a definition's right side rests on, as an error to carry.
     pub(super) fn usable(&mut self, def: DefId) -> Out<ExprId> {
         let found = self.def(def);
@@ -449,4 +429,38 @@ impl<'a> Model<'a> {
             )),
         }
     }
+}
+
+/// Remarks on names that a reader would take for each other.
+fn look_alikes(tree: &Tree, defs: &[Def]) -> Vec<Problem> {
+    // By hash: the keys themselves took 100 bytes a name.
+    let mut seen: FxHashMap<u64, u32> = FxHashMap::default();
+    seen.reserve(2 * defs.len());
+    let (mut keys, mut other_keys) = ([String::new(), String::new()], [String::new(), String::new()]);
+    let mut found = Vec::new();
+    for (index, def) in defs.iter().enumerate() {
+        let name = tree.names.text(def.name);
+        super::scope::look_alike_keys(name, &mut keys);
+        for key in &keys {
+            let first = *seen.entry(rustc_hash::FxBuildHasher.hash_one(key)).or_insert(index as u32);
+            if first == index as u32 {
+                continue;
+            }
+            let other = &defs[first as usize];
+            let other_name = tree.names.text(other.name);
+            super::scope::look_alike_keys(other_name, &mut other_keys);
+            if !other_keys.contains(key) {
+                continue; // equal by hash alone
+            }
+            let message =
+                format!("`{name}` and `{other_name}` differ only by case or by letters that look alike");
+            found.push(
+                Problem::remark(Code::LookAlikeNames, def.span, message)
+                    .label(other.span, "the other one")
+                    .mend("rename one of them, unless both are meant"),
+            );
+            break;
+        }
+    }
+    found
 }

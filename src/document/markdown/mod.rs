@@ -4,6 +4,7 @@
 //! this module walks over its events once and keeps spans only. Text that is
 //! not touched is never copied.
 
+mod halves;
 mod html;
 mod pairs;
 mod place;

@@ -1,5 +1,6 @@
 //! One walk over the events of a note.
 
+use super::halves;
 use super::rows::Rows;
 use super::{CLOSER, Fence, Found, INFO_WORD, Line, OPENER, Place, Row, Table};
 use crate::source::{Code, Problem, Span};
@@ -17,6 +18,20 @@ pub fn find(text: &str, base: u32) -> Found {
     // A byte-order mark would hide what begins the first line.
     let mark = if text.starts_with('\u{feff}') { '\u{feff}'.len_utf8() } else { 0 };
     let first = mark + front_matter(&text[mark..]);
+    if text.len() >= LARGE
+        && let Some(found) = halves::find(text, base, mark, first)
+    {
+        return found;
+    }
+    walk(text, base, mark, first..text.len()).0
+}
+
+/// From so many bytes on a note is looked through in two halves at once.
+const LARGE: usize = 1 << 20;
+
+/// Finds the places in a part of a note; and whether the last of its blocks may
+/// be one that goes on until its own end comes.
+pub(super) fn walk(text: &str, base: u32, mark: usize, part: Range<usize>) -> (Found, bool) {
     let mut walk = Walk {
         text,
         base: base as usize,
@@ -30,16 +45,18 @@ pub fn find(text: &str, base: u32) -> Found {
         open: None,
         waiting: Vec::new(),
         rows: None,
+        raw: false,
     };
     let options = Options::ENABLE_TABLES
         | Options::ENABLE_FOOTNOTES
         | Options::ENABLE_STRIKETHROUGH
         | Options::ENABLE_TASKLISTS;
-    for (event, range) in Parser::new_ext(&text[first..], options).into_offset_iter() {
+    let first = part.start;
+    for (event, range) in Parser::new_ext(&text[part], options).into_offset_iter() {
         walk.event(event, range.start + first..range.end + first);
     }
     walk.forget(0, true);
-    walk.found
+    (walk.found, walk.raw)
 }
 
 /// Length of the YAML or TOML block that a note may begin with.
@@ -112,6 +129,8 @@ pub(super) struct Walk<'a> {
     pub(super) waiting: Vec<Waiting>,
     /// The table under way, if it takes part.
     rows: Option<(Table, Rows<'a>)>,
+    /// The last block at the top is of code or of HTML.
+    raw: bool,
 }
 
 impl<'a> Walk<'a> {
@@ -159,6 +178,9 @@ impl<'a> Walk<'a> {
             return;
         }
         self.boundary();
+        if self.depth == 0 {
+            self.raw = matches!(tag, Tag::HtmlBlock | Tag::CodeBlock(_));
+        }
         match tag {
             Tag::HtmlBlock => {
                 self.code = true;

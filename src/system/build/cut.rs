@@ -23,7 +23,7 @@ pub struct System {
 }
 
 /// Tables that each system takes over from the one before.
-#[derive(Debug, Default)]
+#[derive(Clone, Debug, Default)]
 pub(super) struct Room {
     order: Vec<NodeId>,
     stack: Vec<(NodeId, usize)>,

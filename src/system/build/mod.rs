@@ -112,7 +112,7 @@ pub struct Leaf {
 }
 
 /// Everything built so far.
-#[derive(Debug)]
+#[derive(Clone, Debug)]
 pub struct Built {
     structure: Structure,
     origin: Vec<ExprId>,
@@ -182,7 +182,7 @@ fn listed(words: &[&str]) -> String {
     words.iter().map(|w| format!("`{w}`")).collect::<Vec<_>>().join(", ")
 }
 
-#[derive(Debug)]
+#[derive(Clone, Copy, Debug)]
 enum Task {
     Visit(Visit),
     Copy(Visit),
