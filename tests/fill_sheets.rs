@@ -30,8 +30,8 @@ use tieback::answer::Filled;
 use tieback::document::patch::Rewrite;
 use tieback::document::workbook::{Limits, Value, a1, number_text, open};
 use tieback::report::render::{Paint, problems};
-use tieback::sheets::{Options, SheetForm, Writing, fill};
-use workbook_tools::{cell_text, entry, replaced, same_but_cells, same_entries};
+use tieback::sheets::{Options, SheetForm, fill};
+use workbook_tools::{cell_text, entry, replaced};
 
 /// The result of a formula that loses it before the test begins.
 const LOST: &str = "424242";

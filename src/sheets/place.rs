@@ -386,15 +386,15 @@ fn resting(name: &str, book: &Book, changed: &[(usize, u32, u32)], sources: &mut
         names.extend(map.place(0).map(|place| place.short()));
     }
     map.cells[0] = at((sheet, row, column));
-    if formulas.len() > SHOWN {
-        names.push(format!("{} more", formulas.len() - SHOWN));
-    }
+    let list = match formulas.len().checked_sub(SHOWN).filter(|more| *more > 0) {
+        Some(more) => format!("{} and {more} more", names.join(", ")),
+        None => names.join(", "),
+    };
     let place =
         sources.add_cells(name, "=", map).map_or(Span::default(), |at| Span { start: at, end: at + 1 });
     let (rest, they) = if formulas.len() == 1 { ("rests", "shows its") } else { ("rest", "show their") };
     let message = format!(
-        "{} {rest} on answers that have changed, and {they} old value until the workbook is opened",
-        crate::steps::listed(&names)
+        "{list} {rest} on answers that have changed, and {they} old value until the workbook is opened"
     );
     let mend = "open it in a spreadsheet program, which computes it anew, and save it";
     Some(Problem::remark(Code::OutOfDateFormula, place, message).mend(mend))
