@@ -1,14 +1,15 @@
 //! Where questions are worked on: systems cut out, planned and valued, each once.
 
+use super::find::Index;
 use crate::engine::evaluate::{bound, evaluate};
 use crate::engine::importance::{Importance, importance};
-use crate::engine::plan::{BlockId, Plan};
+use crate::engine::plan::Plan;
 use crate::language::{Expr, ExprId, Phase};
 use crate::number::{Chance, Real};
 use crate::source::{Code, Problem, Span};
 use crate::system::{Base, Exposure, Fault, Model, NodeId, Out, System};
-use rustc_hash::{FxHashMap, FxHashSet};
-use std::sync::{Arc, OnceLock};
+use rustc_hash::FxHashMap;
+use std::sync::Arc;
 
 /// The most diagram nodes spent on Fussell–Vesely within one group.
 const CUT_NODES: usize = 200_000;
@@ -28,61 +29,6 @@ pub struct Prepared {
     pub plan: Plan,
     /// Names of things that stand in several places.
     pub repeated: Vec<String>,
-    /// Its things by their names, once one is asked for.
-    names: OnceLock<FxHashMap<String, Known>>,
-    /// The names of all things under it, perfect ones too, once they are asked for.
-    things: OnceLock<FxHashSet<String>>,
-}
-
-/// What a name stands for in a system.
-#[derive(Clone, Copy, Debug)]
-pub(super) enum Named {
-    /// A thing, with its block; a perfect one has none.
-    Thing(Option<BlockId>),
-    /// A structure; one that shares parts with the rest has no block.
-    Structure(Option<BlockId>),
-}
-
-/// What is known of a name, or of the end of one after a point.
-#[derive(Clone, Debug, Default)]
-pub(super) struct Known {
-    /// What has this very name.
-    pub(super) exact: Option<Named>,
-    /// What has a name that ends so.
-    pub(super) ends: Vec<(String, Option<BlockId>)>,
-}
-
-impl Prepared {
-    /// The system's things and structures by their names and by the ends of their names.
-    pub(super) fn names(&self, model: &Model<'_>) -> &FxHashMap<String, Known> {
-        self.names.get_or_init(|| {
-            let mut known: FxHashMap<String, Known> = FxHashMap::default();
-            let mut add = |own: String, named: Named, block: Option<BlockId>, by_end: bool| {
-                for (at, _) in own.match_indices('.').filter(|_| by_end) {
-                    let end = known.entry(own[at + 1..].to_string()).or_default();
-                    end.ends.push((own.clone(), block));
-                }
-                known.entry(own).or_default().exact.get_or_insert(named);
-            };
-            for (number, leaf) in (0..).zip(&self.system.leaves) {
-                let block = self.plan.of_leaf(number);
-                add(model.leaf_name(leaf), Named::Thing(block), block, true);
-            }
-            let structure = &self.system.structure;
-            for node in (0..structure.len() as u32).map(NodeId) {
-                if let Some(own) = model.node_name(&self.system, node) {
-                    let block = self.plan.of_node(node);
-                    add(own, Named::Structure(block), block, structure.members(node).len() > 1);
-                }
-            }
-            known
-        })
-    }
-
-    /// The names of all things under it, perfect ones too.
-    pub(super) fn things(&self, model: &Model<'_>) -> &FxHashSet<String> {
-        self.things.get_or_init(|| model.things_under(self.asked).into_iter().map(|(name, _)| name).collect())
-    }
 }
 
 /// A system's chances under one exposure.
@@ -107,6 +53,8 @@ pub struct Desk {
     prepared: FxHashMap<ExprKey, Out<Arc<Prepared>>>,
     valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Arc<Valued>>>,
     ranked: FxHashMap<(ExprKey, Vec<ExprId>), Ranked>,
+    /// The names in the system that was asked last by name.
+    pub(super) index: Option<(Arc<Prepared>, Arc<Index>)>,
     /// Questions within questions.
     pub(super) depth: u32,
     /// What the answer at hand rests on; each becomes one folded remark.
@@ -181,14 +129,7 @@ impl Desk {
             Err(large) => return Err(too_large(model, thing, large.limit)),
         };
         let repeated = repeated_names(model, &system);
-        Ok(Arc::new(Prepared {
-            asked,
-            system,
-            plan,
-            repeated,
-            names: OnceLock::new(),
-            things: OnceLock::new(),
-        }))
+        Ok(Arc::new(Prepared { asked, system, plan, repeated }))
     }
 
     /// The exposure of a question: its own, or the mission.

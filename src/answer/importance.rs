@@ -1,33 +1,13 @@
 //! Importance of one thing in a system: Birnbaum and the measures that rest on it.
 
-use super::desk::{Desk, Named};
-use super::figure::{Number, Subject};
+use super::desk::Desk;
+use super::figure::Number;
+use super::find::Found;
 use crate::engine::importance::Importance;
-use crate::engine::plan::BlockId;
-use crate::language::{Expr, ExprId, List, Sym, words};
+use crate::language::{ExprId, List};
 use crate::number::{Chance, Real};
 use crate::source::{Code, Problem};
-use crate::system::{Dim, Fault, Model, Out, Quantity, STEP};
-
-/// Where a named thing stands in a system.
-enum Place {
-    Block(BlockId),
-    Perfect,
-    /// Not in it: no mistake of a table's row, which asks as every other row does.
-    Elsewhere,
-}
-
-impl Place {
-    fn of(block: Option<BlockId>) -> Place {
-        block.map_or(Place::Perfect, Place::Block)
-    }
-}
-
-/// Whether a table's row is the thing of a question: its name stands outside the question.
-fn asked_by_a_row(model: &Model<'_>, call: ExprId, thing: ExprId) -> bool {
-    let (call, thing) = (model.tree.span(call), model.tree.span(thing));
-    thing.start < call.start || call.end < thing.end
-}
+use crate::system::{Dim, Model, Out, Quantity, STEP};
 
 impl Desk {
     pub(super) fn importance(
@@ -50,129 +30,19 @@ impl Desk {
             ));
         }
         let subject = self.subject(model, call, args, 2)?;
-        let by_row = asked_by_a_row(model, call, list[1]);
-        let block = match self.find_block(model, &subject, list[1], by_row)? {
-            Place::Block(block) => block,
+        let block = match self.find(model, &subject, list[1])? {
+            Found::Block(block) => block,
             // It stands in no cut, and nothing changes with it.
-            Place::Perfect => return Ok(measure_of_perfect(word, subject.valued.chance)),
-            Place::Elsewhere => return Ok(Number::None(format!("not in {}", model.text_of(subject.thing)))),
+            Found::Perfect => return Ok(measure_of_perfect(word, subject.valued.chance)),
+            Found::Elsewhere => {
+                return Ok(Number::None(format!("not in {}", model.text_of(subject.thing))));
+            }
         };
         let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given);
         let Some(found) = ranked.get(block.0 as usize).copied().flatten() else {
             return Ok(Number::None("it has no importance of its own here".to_string()));
         };
         Ok(measure(word, &found, subject.valued.chance, subject.valued.bound))
-    }
-
-    /// The block of a named thing within a system.
-    fn find_block(
-        &mut self,
-        model: &mut Model<'_>,
-        subject: &Subject,
-        name: ExprId,
-        by_row: bool,
-    ) -> Out<Place> {
-        if let Some(fault) = model.faulty(name) {
-            return Err(fault);
-        }
-        let wanted = match model.tree.expr(model.tree.inside_groups(name)) {
-            Expr::Name(sym) => model.tree.names.text(sym).to_string(),
-            _ => model.text_of(name),
-        };
-        let index = subject.prepared.names(model);
-        let known = index.get(wanted.as_str());
-        match known.and_then(|known| known.exact) {
-            Some(Named::Thing(block)) => return Ok(Place::of(block)),
-            Some(Named::Structure(Some(block))) => return Ok(Place::Block(block)),
-            Some(Named::Structure(None)) => return Err(self.shares_with_the_rest(model, &wanted, name)),
-            None => {}
-        }
-        let mut ends: Vec<(String, Option<BlockId>)> = known.map_or_else(Vec::new, |k| k.ends.clone());
-        ends.sort();
-        ends.dedup();
-        if let [(_, block)] = ends.as_slice() {
-            return Ok(Place::of(*block));
-        }
-        if let Expr::Name(sym) = model.tree.expr(model.tree.inside_groups(name))
-            && ends.is_empty()
-        {
-            // Another name for a thing, or a perfect one, is found by building it.
-            return self.find_by_building(model, subject, name, sym, by_row);
-        }
-        Err(self.not_in_system(model, subject, name, &wanted, &ends))
-    }
-
-    fn find_by_building(
-        &mut self,
-        model: &mut Model<'_>,
-        subject: &Subject,
-        name: ExprId,
-        sym: Sym,
-        by_row: bool,
-    ) -> Out<Place> {
-        if model.lookup(sym).is_some() {
-            let asked = model.build(name)?;
-            if let [(own, item)] = model.things_under(asked).as_slice()
-                && subject.prepared.things(model).contains(own)
-            {
-                if model.item(*item).perfect {
-                    return Ok(Place::Perfect);
-                }
-                if let Some(Named::Thing(block)) =
-                    subject.prepared.names(model).get(own).and_then(|known| known.exact)
-                {
-                    return Ok(Place::of(block));
-                }
-            }
-            if by_row {
-                return Ok(Place::Elsewhere);
-            }
-        }
-        let wanted = model.tree.names.text(sym).to_string();
-        Err(self.not_in_system(model, subject, name, &wanted, &[]))
-    }
-
-    fn shares_with_the_rest(&mut self, model: &mut Model<'_>, wanted: &str, name: ExprId) -> Fault {
-        let place = model.tree.span(name);
-        model.fault(
-            Problem::error(
-                Code::NoValue,
-                place,
-                format!(
-                    "`{wanted}` shares parts with the rest of the system and has no importance as a whole"
-                ),
-            )
-            .mend("ask for its parts one by one"),
-        )
-    }
-
-    fn not_in_system(
-        &mut self,
-        model: &mut Model<'_>,
-        subject: &Subject,
-        name: ExprId,
-        wanted: &str,
-        ends: &[(String, Option<BlockId>)],
-    ) -> Fault {
-        let place = model.tree.span(name);
-        let system = model.text_of(subject.thing);
-        let known: Vec<String> = subject.prepared.system.leaves.iter().map(|l| model.leaf_name(l)).collect();
-        let problem = if ends.len() > 1 {
-            let some: Vec<&str> = ends.iter().take(3).map(|(n, _)| n.as_str()).collect();
-            Problem::error(Code::AmbiguousName, place, format!("\"{wanted}\" may be {}", some.join(" or ")))
-                .mend("write its name in full, owner first")
-        } else {
-            let problem =
-                Problem::error(Code::UnknownName, place, format!("\"{wanted}\" is no thing in {system}"));
-            match words::nearest(wanted, known.iter().map(String::as_str)) {
-                Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
-                None => {
-                    let some: Vec<&str> = known.iter().take(5).map(String::as_str).collect();
-                    problem.mend(format!("its things are {}", some.join(", ")))
-                }
-            }
-        };
-        model.fault(problem)
     }
 }
 

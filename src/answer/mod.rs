@@ -4,11 +4,13 @@ mod desk;
 mod display;
 mod figure;
 mod filled;
+mod find;
 mod importance;
 mod lists;
 mod reply;
 mod require;
 mod round;
+mod steps;
 
 pub use desk::{Desk, Prepared, Valued};
 pub use display::written;

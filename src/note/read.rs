@@ -1,7 +1,7 @@
 //! Places of a note to syntax: fences, comment pairs, then tables.
 
 use super::ahead::{Ahead, LARGE};
-use crate::document::markdown::{Found, Place, Table, find};
+use crate::document::markdown::{Found, PairForm, Place, Table, find};
 use crate::language::{self, Source, Tree};
 use crate::source::{Problem, Span};
 
@@ -39,7 +39,12 @@ pub(super) fn read(text: &str, base: u32, found: Found, mut ahead: Ahead) -> Rea
     for (block, place) in found.places.iter().enumerate() {
         if let Place::Pair(pair) = place {
             let source = Source { text: slice(pair.question), at: pair.question.start };
-            language::read_question(source, block as u32, &mut tree, &mut problems);
+            match pair.form {
+                PairForm::Inline { in_cell: true, .. } => {
+                    language::read_cell_question(source, block as u32, &mut tree, &mut problems)
+                }
+                _ => language::read_question(source, block as u32, &mut tree, &mut problems),
+            };
         }
     }
     // The first of two definitions is the one that stands first.

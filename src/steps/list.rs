@@ -3,6 +3,8 @@
 use super::formula::{Formula, Side};
 use crate::number::{Chance, Real};
 use crate::source::Span;
+use crate::system::Part;
+use rustc_hash::{FxHashMap, FxHashSet};
 
 /// How a step computes, with its published source.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -29,6 +31,8 @@ pub enum Rule {
     DiagramNode,
     /// Arithmetic that the note asks for.
     Arithmetic,
+    /// A measure of importance.
+    Importance,
 }
 
 impl Rule {
@@ -46,6 +50,7 @@ impl Rule {
             Rule::TotalProbability => "total probability",
             Rule::DiagramNode => "diagram node",
             Rule::Arithmetic => "arithmetic",
+            Rule::Importance => "importance",
         }
     }
 
@@ -62,6 +67,7 @@ impl Rule {
             Rule::TotalProbability => {
                 "Barlow and Proschan, Statistical Theory of Reliability (1975), pivotal decomposition"
             }
+            Rule::Importance => "Birnbaum (1969); Rausand and Hoyland, System Reliability Theory, ch. 5",
             Rule::DiagramNode => "Bryant, IEEE Trans. Computers C-35 (1986); Rauzy (1993)",
         }
     }
@@ -116,6 +122,22 @@ pub struct StepList {
     pub assumptions: Vec<String>,
     /// What the reader should know of the list itself.
     pub remarks: Vec<String>,
+    pub(super) ledger: Ledger,
+}
+
+/// What has been written, so that several systems in one list state what they
+/// have in common once.
+#[derive(Clone, PartialEq, Debug, Default)]
+pub(super) struct Ledger {
+    /// The step that computes something, by what it computes.
+    pub(super) known: FxHashMap<String, usize>,
+    /// The names of the things that a step is about.
+    pub(super) names: Vec<Vec<String>>,
+    pub(super) named: FxHashSet<(usize, String)>,
+    /// The exposures so far: data under different ones are different.
+    pub(super) exposures: Vec<Vec<Part>>,
+    /// How many systems have been written.
+    pub(super) systems: usize,
 }
 
 impl StepList {

@@ -121,7 +121,12 @@ impl Renderer<'_> {
             }
             Formula::Step(step, side) => (self.step(*step, *side), self.step_binding(*step, *side)),
             Formula::Whole(n) => (n.to_string(), POWER + 1),
-            Formula::Sum(terms) => (self.joined(terms, " + ", SUM, TERMS), SUM),
+            Formula::Sum(terms) => match terms.as_slice() {
+                [a, Formula::Negate(b)] => {
+                    (format!("{} - {}", self.text(a, SUM), self.text(b, PRODUCT)), SUM)
+                }
+                _ => (self.joined(terms, " + ", SUM, TERMS), SUM),
+            },
             Formula::Product(factors) => (self.joined(factors, " · ", PRODUCT, FACTORS), PRODUCT),
             Formula::Quotient(a, b) => {
                 (format!("{} / {}", self.text(a, PRODUCT), self.text(b, POWER)), PRODUCT)
@@ -138,11 +143,8 @@ impl Renderer<'_> {
             }
             Formula::AtLeast(need, members, side) => (self.at_least(*need, members, *side), POWER + 1),
         };
-        if own < around || (own == around && own == SUM && text.starts_with("1 - ")) {
-            format!("({text})")
-        } else {
-            text
-        }
+        let less = matches!(formula, Formula::OneMinus(_)) || text.starts_with("1 - ");
+        if own < around || (own == around && own == SUM && less) { format!("({text})") } else { text }
     }
 
     /// The parts, those in the middle of more than `most` left out and counted.
