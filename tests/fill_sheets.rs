@@ -192,3 +192,114 @@ fn every_case_is_filled_and_told_as_it_says() {
     }
     assert!(bless || wrong.is_empty(), "{}", wrong.join("\n"));
 }
+
+/// Words that cells are made of, known and unknown, sound and not.
+const WORDS: &[&str] = &[
+    "name",
+    "Name",
+    "is",
+    "qty",
+    "need",
+    "in",
+    "rate (FIT)",
+    "fails",
+    "perfect",
+    "cost (EUR)",
+    "require",
+    "R ?",
+    "F in chances ?",
+    "R(500 h) ?",
+    "Birnbaum(gate) ?",
+    "met ?",
+    "steps ?",
+    "cuts ?",
+    "rank ?",
+    "count(cuts) ?",
+    "total(cost) ?",
+    "enough ?",
+    "R(?",
+    "gate",
+    "A",
+    "B",
+    "C",
+    "0.1",
+    "1 in 50",
+    "2",
+    "3",
+    "0",
+    "-1",
+    "1e5",
+    "yes",
+    "A // B",
+    "A -> B",
+    "2 of (A, B, C)",
+    "1 of 2 A",
+    "gate -> A",
+    "R >= 0.9",
+    "F <= 1e-3",
+    "mission",
+    "Mission:",
+    "4000 h",
+    "4000",
+    "h",
+    "attribute",
+    "power W",
+    "power (W)",
+    "total",
+    "Subtotal",
+    "! no",
+    "0.98",
+    "none: why",
+    "?",
+    "\"",
+    "ö\u{301}",
+    "'",
+    "=1+1",
+    "a\nb",
+    "1. x",
+    "",
+    "",
+    "",
+    "",
+    "",
+];
+
+#[test]
+fn any_cells_are_filled_or_told() {
+    let mut seed = 0x2545_f491_4f6c_dd1d_u64;
+    let mut random = |n: usize| {
+        seed ^= seed << 13;
+        seed ^= seed >> 7;
+        seed ^= seed << 17;
+        (seed >> 11) as usize % n
+    };
+    let cases = std::env::var("TIEBACK_CASES").ok().and_then(|n| n.parse().ok()).unwrap_or(3000);
+    for case in 0..cases {
+        let (rows, columns) = (1 + random(7), 1 + random(6));
+        let mut lines: Vec<Vec<&str>> =
+            (0..rows).map(|_| (0..columns).map(|_| WORDS[random(WORDS.len())]).collect()).collect();
+        if case % 2 == 0 {
+            // Half of them certainly have a table.
+            let at = random(rows.min(2));
+            lines[at][0] = "name";
+            lines[at].push(["R ?", "fails", "is", "steps ?"][random(4)]);
+        }
+        if case % 16 == 0 {
+            let lines: Vec<String> = lines.iter().map(|l| l.join(" | ").replace(['\n', '"'], "")).collect();
+            run(&lines.iter().map(String::as_str).collect::<Vec<_>>());
+            continue;
+        }
+        let quoted = |cell: &&str| format!("\"{}\"", cell.replace('"', "\"\""));
+        let text: String =
+            lines.iter().map(|l| l.iter().map(quoted).collect::<Vec<_>>().join(",") + "\n").collect();
+        let csv =
+            |text: &str| fill("parts.csv", SheetForm::Csv, text.as_bytes().to_vec(), &Options::default());
+        let done = csv(&text);
+        problems(&done.sources, &done.problems, Paint::Plain);
+        tieback::report::json::FileReport::new("parts.csv", &done, false);
+        if let Rewrite::Patched(new) = done.rewrite {
+            let new = String::from_utf8(new).unwrap();
+            assert_eq!(csv(&new).rewrite, Rewrite::Unchanged, "{text}\n{new}");
+        }
+    }
+}

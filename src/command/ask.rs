@@ -56,7 +56,7 @@ pub(super) fn answer(
     let none = input.is_none();
     // Without a file all lines are given, and a name is only needed for messages.
     let input = input.unwrap_or(Input::Stdin);
-    each(std::slice::from_ref(&input), voice, |input| {
+    each(std::slice::from_ref(&input), voice, |input, _| {
         let (name, document) = match none {
             true => ("given".to_string(), Document::Note("".into())),
             false => match Document::read(input) {

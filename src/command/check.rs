@@ -4,6 +4,7 @@ use super::Voice;
 use super::document::{Document, Room};
 use super::each::{Outcome, counted, each};
 use super::input::{Input, expand};
+use super::progress::Watch;
 use super::verdict::Verdict;
 use crate::answer::{Asked, Filled};
 use crate::document::patch::Rewrite;
@@ -26,13 +27,13 @@ pub(super) struct Check {
 
 impl Check {
     pub(super) fn run(&self, voice: Voice) -> Verdict {
-        each(&expand(&self.files), voice, |input| one(input, self.room))
+        each(&expand(&self.files), voice, |input, watch| one(input, self.room, watch))
     }
 }
 
-fn one(input: &Input, room: Room) -> Outcome {
+fn one(input: &Input, room: Room, watch: &Watch) -> Outcome {
     match Document::read(input) {
-        Ok(document) => judge(input, document.fill(input, Writing::Compare, room)),
+        Ok(document) => judge(input, document.fill(input, Writing::Compare, room, watch)),
         Err(unread) => Outcome::new(input, unread.filled),
     }
 }

@@ -1,6 +1,7 @@
 //! What was read, and what can be done with it: a note or a file of sheets.
 
 use super::input::{Input, Unread};
+use super::progress::Watch;
 use crate::answer::{Filled, StepsForm};
 use crate::document::workbook::{Limits, lock_file};
 use crate::note;
@@ -56,13 +57,14 @@ impl Document {
     }
 
     /// The document with its answers.
-    pub(super) fn fill(&self, input: &Input, writing: Writing, room: Room) -> Filled {
+    pub(super) fn fill(&self, input: &Input, writing: Writing, room: Room, watch: &Watch) -> Filled {
         let name = input.name();
         match self {
             Document::Note(text) => note::fill_shared(&name, text.clone()),
             Document::Sheets(form, bytes) => {
+                let tell = |stage| watch.tell(stage);
                 let options =
-                    Options { limits: room.limits(), named: input.named(), writing, progress: None };
+                    Options { limits: room.limits(), named: input.named(), writing, progress: Some(&tell) };
                 let mut filled = sheets::fill(&name, *form, bytes.clone(), &options);
                 if let Some(lock) = input.path().filter(|_| writing == Writing::InPlace).and_then(lock_file) {
                     let lock = lock.file_name().unwrap_or_default().to_string_lossy().into_owned();

@@ -2,6 +2,7 @@
 
 use super::Voice;
 use super::input::Input;
+use super::progress::{Progress, Watch};
 use super::verdict::Verdict;
 use crate::answer::{Asked, Filled};
 use crate::report::json::{FileReport, Run};
@@ -9,6 +10,7 @@ use crate::report::render;
 use crate::source::{Code, Problem};
 use rayon::prelude::*;
 use serde::Serialize;
+use std::sync::Arc;
 
 /// What came of one note, ready to be reported.
 #[derive(Debug)]
@@ -74,20 +76,28 @@ fn unmet(asked: &Asked, filled: &Filled) -> Option<Problem> {
 const AT_ONCE: usize = 256;
 
 /// Works on each input and reports in their order.
-pub(super) fn each(inputs: &[Input], voice: Voice, work: impl Fn(&Input) -> Outcome + Sync) -> Verdict {
+pub(super) fn each(
+    inputs: &[Input],
+    voice: Voice,
+    work: impl Fn(&Input, &Watch) -> Outcome + Sync,
+) -> Verdict {
+    let watch = Arc::new(Watch::default());
     let mut verdict = Verdict::default();
     let mut reports = Vec::new();
     let done = |input: &Input| {
-        let mut outcome = work(input);
+        let mut outcome = work(input, &watch);
         outcome.quieten(input);
+        watch.file_done();
         outcome
     };
     for some in inputs.chunks(AT_ONCE) {
+        let progress = Progress::start(&watch, some.len(), voice);
         // Threads take longer to start than one note takes to fill.
         let outcomes: Vec<Outcome> = match some {
             [one] => vec![done(one)],
             _ => some.par_iter().map(done).collect(),
         };
+        drop(progress);
         for outcome in outcomes {
             verdict = verdict.and(outcome.verdict);
             if voice.json {

@@ -3,6 +3,7 @@
 use super::document::{Document, Room};
 use super::each::{Outcome, counted, each};
 use super::input::{Input, expand};
+use super::progress::Watch;
 use super::verdict::Verdict;
 use super::{Cli, Voice, files};
 use crate::answer::Filled;
@@ -36,10 +37,10 @@ impl Fill {
             let message = format!("-o takes one note, and {} are given", inputs.len());
             return Err(Cli::command().error(ErrorKind::ArgumentConflict, message));
         }
-        Ok(each(&inputs, voice, |input| self.one(input)))
+        Ok(each(&inputs, voice, |input, watch| self.one(input, watch)))
     }
 
-    fn one(&self, input: &Input) -> Outcome {
+    fn one(&self, input: &Input, watch: &Watch) -> Outcome {
         let target = match (&self.output, input) {
             (Some(path), _) if path.as_os_str() == "-" => Target::Output,
             (Some(path), _) => Target::Elsewhere(path),
@@ -64,7 +65,7 @@ impl Fill {
             Target::InPlace(_) => Writing::InPlace,
             _ => Writing::NewFile,
         };
-        let mut outcome = Outcome::new(input, document.fill(input, writing, self.room));
+        let mut outcome = Outcome::new(input, document.fill(input, writing, self.room, watch));
         let unread = document.is_sheets() && outcome.verdict.access;
         let patched = match std::mem::replace(&mut outcome.filled.rewrite, Rewrite::Unchanged) {
             Rewrite::Patched(bytes) => Some(bytes),

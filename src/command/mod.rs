@@ -11,6 +11,7 @@ mod explain;
 mod files;
 mod fill;
 mod input;
+mod progress;
 mod steps;
 mod terminal;
 mod verdict;
