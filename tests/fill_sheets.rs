@@ -303,3 +303,61 @@ fn any_cells_are_filled_or_told() {
         }
     }
 }
+
+#[test]
+fn a_note_takes_definitions_and_nothing_else() {
+    use tieback::language::{Line, Tree};
+    use tieback::source::Sources;
+    let bytes = book(&[
+        "## Power",
+        "mission | 10 h",
+        "exposure | start",
+        "attribute | power W, area",
+        "require | R(gate) >= 0.5",
+        "name | rate (/start) | power (W) | require | R ? | in",
+        "A | 0.1 | 5 | R >= 0.9 | 0.5 | gate",
+        "B | 0.2 | 6 | | | gate",
+        "## Pumps",
+        "name | fails",
+        "pump | strainr",
+    ]);
+    let (mut sources, mut tree, mut problems) = (Sources::default(), Tree::default(), Vec::new());
+    let note = "exposure start\nattribute power W\n";
+    let at = sources.add("note.md", note).unwrap();
+    let lines = note.lines().map(|text| {
+        let start = at + (text.as_ptr() as usize - note.as_ptr() as usize) as u32;
+        tieback::language::Source { text, at: start }
+    });
+    tieback::language::read_block(lines, 0, &mut tree, &mut problems);
+    let (form, limits) = (SheetForm::Workbook, Limits::default());
+    let mut take = |only, tree: &mut Tree, problems: &mut Vec<_>| {
+        tieback::sheets::definitions(
+            "p.xlsx",
+            form,
+            bytes.clone(),
+            &limits,
+            only,
+            7,
+            &mut sources,
+            tree,
+            problems,
+        )
+    };
+    assert!(take(Some("Power"), &mut tree, &mut problems));
+    assert_eq!(problems, []);
+    let names = |tree: &Tree| -> Vec<String> {
+        let of = |line: &Line| match line {
+            Line::Define { names, .. } => tree.names.text(names[0].0).to_string(),
+            Line::Exposure(words) => format!("exposures {}", words.len()),
+            Line::Attribute(words) => format!("attributes {}", words.len()),
+            other => format!("{other:?}"),
+        };
+        tree.statements[2..].iter().map(|s| of(&s.line)).collect()
+    };
+    assert_eq!(names(&tree), ["exposures 0", "attributes 1", "A", "B", "gate"]);
+    assert!(tree.statements[2..].iter().all(|s| s.block == 7 && s.mark.is_none()));
+    assert!(!take(Some("Pwer"), &mut tree, &mut problems));
+    assert_eq!(problems[0].message, "\"p.xlsx\" has no sheet \"Pwer\"");
+    assert!(take(None, &mut tree, &mut problems));
+    assert_eq!(sources.words(tree.statements.last().unwrap().span), "Pumps!A2");
+}

@@ -111,7 +111,7 @@ impl Delimited {
     /// What a field says: without its quotes, and a decimal comma as a point.
     pub fn value<'t>(&self, text: &'t str, field: &Field) -> Cow<'t, str> {
         let plain = self.as_written(text, field);
-        if !self.form.decimal_comma || !is_comma_number(plain.trim()) {
+        if !self.form.decimal_comma || !is_comma_value(plain.trim()) {
             return plain;
         }
         Cow::Owned(plain.trim().replace(',', "."))
@@ -212,6 +212,16 @@ fn after_quotes(bytes: &[u8], mut at: usize) -> usize {
     at
 }
 
+/// A decimal comma between digits at the start of a value: `0,98`, `12,5%`, `1,2e-6 /h`.
+fn is_comma_value(text: &str) -> bool {
+    let number = text.trim_end_matches(|c: char| !c.is_ascii_digit());
+    let rest = &text[number.len()..];
+    is_comma_number(number) && (rest.is_empty() || rest.trim_start().starts_with('%'))
+        || text.split_once([' ', '/']).is_some_and(|(number, unit)| {
+            is_comma_number(number) && !unit.contains([',', ' ']) && !unit.trim().is_empty()
+        })
+}
+
 /// `0,98`, `-12,5`, `1,2e-6`
 fn is_comma_number(text: &str) -> bool {
     text.matches(',').count() == 1
@@ -300,6 +310,18 @@ mod tests {
         assert_eq!(filled(text, 1, 1, "0.9"), text.replace("0.5", "0.9"));
         assert_eq!(filled(text, 2, 1, "0.9"), text.replace("P2\n", "P2,0.9\n"));
         assert_eq!(filled(text, 3, 1, "a,b"), text.replace("P3,,x", "P3,\"a,b\",x"));
+    }
+
+    #[test]
+    fn commas_may_stand_before_a_unit() {
+        for yes in ["0,98", "12,5%", "12,5 %", "-1,2e-6", "18,5 /Mh", "2,5/h", "3,5 kg"] {
+            assert!(is_comma_value(yes), "{yes}");
+        }
+        for no in
+            ["0.98", "1,2,3", "2 of (A, B)", "fails 0,1", "A,B", "1,5 of 2 A", "0,1, cost 3", "12,5 x y"]
+        {
+            assert!(!is_comma_value(no), "{no}");
+        }
     }
 
     #[test]

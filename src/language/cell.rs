@@ -7,6 +7,18 @@ use super::read::{Source, read_expression};
 use super::tree::*;
 use crate::source::{Code, Problem, Span};
 
+/// A number with a decimal comma, as it is written with a point: `0,25 %`.
+fn with_decimal_comma(text: &str) -> Option<String> {
+    let (whole, part) = text.split_once(',')?;
+    let digits = |text: &str| !text.is_empty() && text.bytes().all(|b| b.is_ascii_digit());
+    let end = part.find(|c: char| !c.is_ascii_digit()).unwrap_or(part.len());
+    let rest = part[end..].trim_start();
+    let unit =
+        rest.is_empty() || rest.starts_with(['%', '/', 'e', 'E']) || rest.chars().all(char::is_alphabetic);
+    (digits(whole.strip_prefix('-').unwrap_or(whole)) && digits(&part[..end]) && unit)
+        .then(|| format!("{whole}.{part}"))
+}
+
 impl<'a> GridReader<'_, 'a> {
     /// The value in a cell.
     pub(super) fn value(&mut self, row: usize, column: usize) -> Read<ExprId> {
@@ -96,8 +108,19 @@ impl<'a> GridReader<'_, 'a> {
 
     /// The value of a clause cell.
     pub(super) fn clause_value(&mut self, row: usize, column: usize, unit: Option<Unit>) -> Read<ExprId> {
-        let value = self.value(row, column)?;
         let span = span_of(self.cell(row, column));
+        if let Some(point) = with_decimal_comma(self.cell(row, column).text) {
+            return Err(Box::new(
+                Problem::error(
+                    Code::MalformedNumber,
+                    span,
+                    "a number is written with a point, not with a comma",
+                )
+                .mend(format!("write `{point}`"))
+                .mend("in a spreadsheet, format the cell as a number and type it again"),
+            ));
+        }
+        let value = self.value(row, column)?;
         if let Expr::Item(_) | Expr::Changed(..) = self.tree.expr(value) {
             return Err(Box::new(
                 Problem::error(Code::TableCell, span, "this cell holds more than a value")

@@ -29,6 +29,15 @@ impl Column {
         matches!(self, Column::Is | Column::Clause { .. } | Column::Ask | Column::Met | Column::Require)
     }
 
+    /// Whether a second column says what this one says.
+    fn says_the_same(&self, other: &Column) -> bool {
+        match (self, other) {
+            (Column::Clause { name: a, .. }, Column::Clause { name: b, .. }) => a == b,
+            (Column::Ask | Column::Foreign | Column::Clause { .. }, _) => false,
+            (a, b) => std::mem::discriminant(a) == std::mem::discriminant(b),
+        }
+    }
+
     /// Whether it says what a name is.
     pub(super) fn defines(&self) -> bool {
         matches!(self, Column::Is | Column::Clause { .. } | Column::Qty | Column::Need | Column::In)
@@ -169,7 +178,20 @@ pub(super) fn columns(
 ) -> Vec<Column> {
     let mut found: Vec<Column> = Vec::with_capacity(grid.header.len());
     for cell in &grid.header {
-        found.push(column(*cell, grid.form, declared, tree, problems));
+        let column = column(*cell, grid.form, declared, tree, problems);
+        // Two columns of data would both count, or one of them would not.
+        match found.iter().position(|before| before.says_the_same(&column)) {
+            Some(first) => {
+                let (place, first) = (span_of(*cell), span_of(grid.header[first]));
+                problems.push(
+                    Problem::error(Code::TableHeader, place, "two columns of this table say the same")
+                        .label(first, "the first of them")
+                        .mend("give one of the two another header: a column that is yours has any other"),
+                );
+                found.push(Column::Foreign);
+            }
+            None => found.push(column),
+        }
     }
     let requires = found.iter().any(|c| matches!(c, Column::Require));
     for (column, cell) in found.iter().zip(&grid.header) {

@@ -115,7 +115,7 @@ pub fn fill(name: &str, form: SheetForm, bytes: Vec<u8>, options: &Options<'_>) 
     let done = AtomicUsize::new(0);
     let (replies, mut desk) = answer_all(&mut model, &|model, found, statement, remarks| {
         let done = done.fetch_add(1, Ordering::Relaxed);
-        if done % 1024 == 0 {
+        if done.is_multiple_of(1024) {
             options.tell(Stage::Answering(done, total));
         }
         placing.write(model, found, statement, remarks)

@@ -124,10 +124,36 @@ pub(super) fn definitions(
     for (entry, setting) in &settings {
         if matches!(setting.word, "exposure" | "attribute") {
             self::setting(read.based().source(*entry as usize), setting, block, tree, problems);
+            drop_declared(tree);
         }
     }
     language::read_grids(&grids(&read, block), tree, problems);
     true
+}
+
+/// Takes from the last line what a line before it declares alike: a note and
+/// the parts list that it uses may both say `exposure start`.
+fn drop_declared(tree: &mut Tree) {
+    let Some(mut last) = tree.statements.pop() else { return };
+    match &mut last.line {
+        Line::Exposure(words) => words.retain(|(word, _)| {
+            !tree.statements.iter().any(|s| match &s.line {
+                Line::Exposure(known) => known.iter().any(|(k, _)| k == word),
+                _ => false,
+            })
+        }),
+        Line::Attribute(words) => words.retain(|(word, _, unit)| {
+            !tree.statements.iter().any(|s| match &s.line {
+                Line::Attribute(known) => {
+                    let unit = unit.map(|u| (u.form, u.word));
+                    known.iter().any(|(k, _, u)| k == word && u.map(|u| (u.form, u.word)) == unit)
+                }
+                _ => false,
+            })
+        }),
+        _ => {}
+    }
+    tree.statements.push(last);
 }
 
 type Settings = Vec<(u32, Setting)>;
