@@ -4,13 +4,14 @@
 //! their places. All grids of a document are read together, since an assembly
 //! may have its rows in several of them.
 
+use super::assembly::{Assemblies, left_out};
 use super::expr::Read;
 use super::header::{Column, columns, declared};
 use super::read::Source;
 use super::tree::*;
 use super::words::ClauseWord;
 use crate::source::{Code, Problem, Span};
-use rustc_hash::{FxHashMap, FxHashSet};
+use rustc_hash::FxHashSet;
 
 /// What stands in a cell, as far as the language cares.
 #[derive(Clone, Copy, PartialEq, Eq, Debug, Default)]
@@ -118,8 +119,14 @@ pub fn read_grids(grids: &[Grid<'_>], tree: &mut Tree, problems: &mut Vec<Proble
     for ((grid, columns), rows) in grids.iter().zip(&heads).zip(rows) {
         let Some(columns) = columns else { continue };
         let mut reader = GridReader { grid, columns, tree, problems };
-        rows.into_iter().for_each(|row| reader.row_statement(row, &all));
+        for row in rows {
+            if row.value.is_some() && all.members.contains_key(&row.name.0) {
+                all.structured.push(row.name.0);
+            }
+            reader.row_statement(row, &all);
+        }
     }
+    left_out(&all, tree, problems);
     let known = defined(tree);
     for (sym, span, block) in all.order {
         if !known.contains(&sym)
@@ -129,26 +136,6 @@ pub fn read_grids(grids: &[Grid<'_>], tree: &mut Tree, problems: &mut Vec<Proble
             let value = tree.add(Expr::AtLeast(Need::All, list), span);
             push_definition(tree, (sym, span), value, block);
         }
-    }
-}
-
-/// Who belongs to which assembly, over all grids.
-#[derive(Default)]
-struct Assemblies {
-    /// Every name that an `in` cell holds.
-    mentioned: FxHashSet<Sym>,
-    /// The assemblies in the order they are first met, with the place and its block.
-    order: Vec<(Sym, Span, u32)>,
-    members: FxHashMap<Sym, Vec<ExprId>>,
-}
-
-impl Assemblies {
-    fn join(&mut self, assembly: (Sym, Span), block: u32, member: ExprId) {
-        let list = self.members.entry(assembly.0).or_insert_with(|| {
-            self.order.push((assembly.0, assembly.1, block));
-            Vec::new()
-        });
-        list.push(member);
     }
 }
 
@@ -196,7 +183,7 @@ impl<'a> GridReader<'_, 'a> {
         self.cell(row, column).text.is_empty() && self.grid.cells.kind(row, column) == CellKind::Text
     }
 
-    fn position(&self, wanted: impl Fn(&Column) -> bool) -> Option<usize> {
+    pub(super) fn position(&self, wanted: impl Fn(&Column) -> bool) -> Option<usize> {
         self.columns.iter().position(wanted)
     }
 
@@ -373,75 +360,6 @@ impl<'a> GridReader<'_, 'a> {
             }
         }
         Ok(Some((parts, assembly)))
-    }
-
-    /// Data of a row that other rows belong to. What a formula sums up for it is
-    /// left aside; data of failure that were typed contradict its members.
-    fn beside_members(
-        &mut self,
-        row: usize,
-        name: (Sym, Span),
-        is: Option<ExprId>,
-        clauses: &mut Vec<Clause>,
-    ) -> Read<()> {
-        let structure = is.map(|value| self.tree.expr(self.tree.inside_groups(value)));
-        let item = matches!(structure, Some(Expr::Item(_) | Expr::Literal(_)));
-        if structure.is_some() && !item {
-            return Ok(());
-        }
-        let text = self.tree.names.text(name.0).to_string();
-        let typed: Vec<usize> = (0..self.columns.len())
-            .filter(|at| matches!(self.columns[*at], Column::Clause { .. }))
-            .filter(|at| !self.blank(row, *at) && !self.grid.cells.formula(row, *at))
-            .collect();
-        let of_failure = |at: &usize| match &self.columns[*at] {
-            Column::Clause { word, .. } => !matches!(word, ClauseWord::Attribute | ClauseWord::Source),
-            _ => false,
-        };
-        let is_cell = self.position(|c| matches!(c, Column::Is)).filter(|_| item);
-        if let Some(at) = is_cell.or_else(|| typed.iter().copied().find(of_failure)) {
-            let place = span_of(self.cell(row, at));
-            let message = format!("\"{text}\" has data of failure here, and other rows say they are in it");
-            return Err(Box::new(
-                Problem::error(Code::ContradictoryData, place, message)
-                    .mend("clear this cell: an assembly is the series of its rows")
-                    .mend("or clear `in` of those rows, if the data here stand for all of them"),
-            ));
-        }
-        for at in typed {
-            let Column::Clause { word: ClauseWord::Attribute, name, .. } = &self.columns[at] else {
-                continue;
-            };
-            let word = self.tree.names.text(*name);
-            let message =
-                format!("the {word} of an assembly is that of its rows, and this one is not counted");
-            let place = span_of(self.cell(row, at));
-            self.problems.push(
-                Problem::remark(Code::TableCell, place, message)
-                    .mend("give it to a row of its own that is `perfect`, if it comes on top"),
-            );
-        }
-        clauses.clear();
-        Ok(())
-    }
-
-    /// Whether a row is a sum of others: it is called so, and nothing was typed
-    /// into it but a name.
-    fn sums_up(&self, row: usize, name: Sym) -> bool {
-        const CALLED: &[&str] = &["total", "subtotal", "sub-total", "grand total", "sum"];
-        let GridForm::Sheet { formulas } = self.grid.form else { return false };
-        let text = self.tree.names.text(name).trim_end_matches(':').to_lowercase();
-        let called = |word: &&str| {
-            text.strip_prefix(*word).is_some_and(|rest| rest.is_empty() || rest.starts_with(' '))
-        };
-        let typed = |at: usize| match &self.columns[at] {
-            Column::Is | Column::In | Column::Require => !self.blank(row, at),
-            column if column.defines() => {
-                formulas && !self.blank(row, at) && !self.grid.cells.formula(row, at)
-            }
-            _ => false,
-        };
-        CALLED.iter().any(called) && !(0..self.columns.len()).any(typed)
     }
 
     fn no_data(&self, name: (Sym, Span)) -> Problem {

@@ -4,6 +4,7 @@
 //! a [`Tree`] of them, `print` writes a tree back as text, and `shape` knows
 //! what an answer looks like. Nothing here knows what a name means.
 
+mod assembly;
 mod cell;
 mod chain;
 mod clause;

@@ -325,6 +325,11 @@ impl Tree {
         List { start, end: self.list.len() as u32 }
     }
 
+    /// How many nodes there are.
+    pub(super) fn count(&self) -> u32 {
+        self.exprs.len() as u32
+    }
+
     /// The node.
     pub fn expr(&self, id: ExprId) -> Expr {
         self.exprs[id.0 as usize]
