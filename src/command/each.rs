@@ -3,7 +3,7 @@
 use super::Voice;
 use super::input::Input;
 use super::verdict::Verdict;
-use crate::note::{Asked, Filled};
+use crate::answer::{Asked, Filled};
 use crate::report::json::{FileReport, Run};
 use crate::report::render;
 use crate::source::{Code, Problem};
@@ -55,14 +55,19 @@ impl Outcome {
 
 /// The error for a requirement that is not met, unless it has been made already.
 fn unmet(asked: &Asked, filled: &Filled) -> Option<Problem> {
+    if !asked.unmet {
+        return None;
+    }
     let overlaps = |p: &Problem| p.place.start <= asked.place.end && asked.place.start <= p.place.end;
-    let said = filled.problems.iter().any(|p| p.code == Code::NotMet && overlaps(p));
+    // In a sheet the requirement and its answer are cells of one row.
+    let is_it = |p: &Problem| p.message.strip_prefix("requirement ") == Some(asked.new.as_str());
+    let said = filled.problems.iter().any(|p| p.code == Code::NotMet && (overlaps(p) || is_it(p)));
     let message = if asked.new.starts_with("UNDECIDED") {
         "a requirement is undecided"
     } else {
         "a requirement is not met"
     };
-    (asked.unmet && !said).then(|| Problem::error(Code::NotMet, asked.place, message).mark(&asked.new))
+    (!said).then(|| Problem::error(Code::NotMet, asked.place, message).mark(&asked.new))
 }
 
 /// So many notes are held in memory at once.

@@ -5,6 +5,7 @@
 
 mod ask;
 mod check;
+mod document;
 mod each;
 mod explain;
 mod files;
@@ -32,7 +33,7 @@ Exit codes:
 tieback is an aid to calculation. It is no substitute for the codes and
 standards in force and the judgement of a licensed engineer.";
 
-/// Fill reliability answers into Markdown notes, and change no other byte
+/// Fill reliability answers into Markdown notes and parts lists, and change no other byte
 #[derive(Parser, Debug)]
 #[command(name = "tieback", version, after_long_help = CAUTION, max_term_width = 100)]
 struct Cli {

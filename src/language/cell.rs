@@ -14,7 +14,7 @@ impl<'a> GridReader<'_, 'a> {
         if let Some(problem) = self.no_value(row, column) {
             return Err(Box::new(problem));
         }
-        read_expression(cell, self.grid.form != GridForm::Sheet, self.tree)
+        read_expression(cell, self.grid.form == GridForm::Markdown, self.tree)
     }
 
     /// What is wrong where a value should be and the spreadsheet shows something else.

@@ -65,7 +65,10 @@ pub enum GridForm {
     /// In a note: names may stand in backticks, `|` is `\|`.
     Markdown,
     /// In a sheet: a cell is its text, and may hold many lines.
-    Sheet,
+    Sheet {
+        /// Whether the file tells which cells formulas compute.
+        formulas: bool,
+    },
 }
 
 /// The cells of one table.
@@ -200,7 +203,7 @@ impl<'a> GridReader<'_, 'a> {
     /// The text of a cell that holds a name.
     fn name_in(&mut self, cell: Source<'a>) -> (Sym, Span) {
         let span = span_of(cell);
-        if self.grid.form == GridForm::Sheet {
+        if self.grid.form != GridForm::Markdown {
             return (self.tree.names.intern(cell.text), span);
         }
         let text = cell.text.replace("\\|", "|");
@@ -284,7 +287,8 @@ impl<'a> GridReader<'_, 'a> {
             };
             told && !self.blank(row, *at) && !self.grid.cells.formula(row, *at)
         });
-        let Some(at) = lost else { return };
+        let belongs = self.position(|c| matches!(c, Column::In)).filter(|at| !self.blank(row, *at));
+        let Some(at) = belongs.or(lost) else { return };
         let place = span_of(self.cell(row, at));
         if matches!(self.columns[at], Column::In) {
             let message = "this row belongs to an assembly, and has no name";
@@ -310,7 +314,7 @@ impl<'a> GridReader<'_, 'a> {
         name: (Sym, Span),
         all: &Assemblies,
     ) -> Read<Option<(RowParts, Option<(Sym, Span)>)>> {
-        if !self.name_kept(row)? {
+        if self.sums_up(row, name.0) || !self.name_kept(row)? {
             return Ok(None);
         }
         let mut parts = RowParts { name, value: None, qty: None, need: None, one: false };
@@ -419,6 +423,25 @@ impl<'a> GridReader<'_, 'a> {
         }
         clauses.clear();
         Ok(())
+    }
+
+    /// Whether a row is a sum of others: it is called so, and nothing was typed
+    /// into it but a name.
+    fn sums_up(&self, row: usize, name: Sym) -> bool {
+        const CALLED: &[&str] = &["total", "subtotal", "sub-total", "grand total", "sum"];
+        let GridForm::Sheet { formulas } = self.grid.form else { return false };
+        let text = self.tree.names.text(name).trim_end_matches(':').to_lowercase();
+        let called = |word: &&str| {
+            text.strip_prefix(*word).is_some_and(|rest| rest.is_empty() || rest.starts_with(' '))
+        };
+        let typed = |at: usize| match &self.columns[at] {
+            Column::Is | Column::In | Column::Require => !self.blank(row, at),
+            column if column.defines() => {
+                formulas && !self.blank(row, at) && !self.grid.cells.formula(row, at)
+            }
+            _ => false,
+        };
+        CALLED.iter().any(called) && !(0..self.columns.len()).any(typed)
     }
 
     fn no_data(&self, name: (Sym, Span)) -> Problem {

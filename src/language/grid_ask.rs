@@ -1,7 +1,7 @@
 //! Questions of a table: each row asks what its header asks, and what it requires.
 
 use super::expr::{Read, Reader};
-use super::grid::{Grid, GridReader, defined, span_of};
+use super::grid::{Grid, GridForm, GridReader, defined, span_of};
 use super::header::{Column, columns, declared};
 use super::read::Source;
 use super::token::{self, Token};
@@ -56,13 +56,27 @@ struct Question {
     display: Option<Display>,
 }
 
+/// A column's question, `None` where its header is in error, and whether it
+/// asks of the row within another system.
+struct Asking(Option<Question>, bool);
+
+impl Asking {
+    fn within(&self) -> bool {
+        self.1
+    }
+}
+
 impl<'a> GridReader<'_, 'a> {
     fn ask(&mut self, grid: usize, known: &FxHashSet<Sym>, asks: &mut Vec<CellAsk>) {
         // A header in error is told once; its cells are answered with the message.
-        let mut questions: Vec<Option<Option<Question>>> = Vec::new();
+        let mut questions: Vec<Option<Asking>> = Vec::new();
         for (at, column) in self.columns.iter().enumerate() {
             let asked = matches!(column, Column::Ask).then(|| self.question(self.grid.header[at]));
-            questions.push(asked.map(|asked| asked.map_err(|problem| self.problems.push(*problem)).ok()));
+            let asked = asked.map(|asked| asked.map_err(|problem| self.problems.push(*problem)).ok());
+            questions.push(asked.map(|question| {
+                let within = |q: &Question| WITHIN.contains(&self.tree.names.text(q.word));
+                Asking(question.clone(), question.as_ref().is_some_and(within))
+            }));
         }
         let requires = self.columns.iter().position(|c| matches!(c, Column::Require));
         let met = self.columns.iter().position(|c| matches!(c, Column::Met));
@@ -90,22 +104,46 @@ impl<'a> GridReader<'_, 'a> {
                 }
             }
             for (column, question) in questions.iter().enumerate() {
-                if let (Some(question), Some(cell)) = (question, self.grid.cells.text(row, column)) {
-                    let line = match question {
-                        Some(question) => self.of_row(question, name),
-                        None => Line::Broken(Vec::new()),
-                    };
-                    let header = span_of(self.grid.header[column]);
-                    let statement = self.push_line(Ok(line), header, Some(mark_of(cell)));
-                    asks.push(CellAsk { statement, grid, row, column });
+                if let Some(question) = question.as_ref().filter(|question| !question.within()) {
+                    self.ask_of_row(question, (grid, row, column), name, asks);
+                }
+            }
+        }
+        // All rows ask these of one system, which is worked out once if they stand together.
+        for (column, question) in questions.iter().enumerate() {
+            let Some(question) = question.as_ref().filter(|question| question.within()) else { continue };
+            for row in 0..self.grid.cells.rows() {
+                if let Some(name) = self.row_name(row).filter(|name| known.contains(&name.0)) {
+                    self.ask_of_row(question, (grid, row, column), name, asks);
                 }
             }
         }
     }
 
+    fn ask_of_row(
+        &mut self,
+        question: &Asking,
+        (grid, row, column): (usize, usize, usize),
+        name: (Sym, Span),
+        asks: &mut Vec<CellAsk>,
+    ) {
+        let Some(cell) = self.grid.cells.text(row, column) else { return };
+        let line = match &question.0 {
+            Some(question) => self.of_row(question, name),
+            None => Line::Broken(Vec::new()),
+        };
+        // In a note a table's cell has no text of its own to point at before it is answered.
+        let span = match self.grid.form {
+            GridForm::Markdown => span_of(self.grid.header[column]),
+            GridForm::Sheet { .. } => span_of(cell),
+        };
+        let statement = self.push_line(Ok(line), span, Some(mark_of(cell)));
+        asks.push(CellAsk { statement, grid, row, column });
+    }
+
     /// In a table that only asks, a name that nothing defines is a slip.
     fn unknown_row(&mut self, name: (Sym, Span), known: &FxHashSet<Sym>, count: usize) {
-        if count > TOLD || self.grid.form == super::grid::GridForm::Markdown {
+        if count > TOLD || self.grid.form == GridForm::Markdown {
             return;
         }
         let text = self.tree.names.text(name.0);

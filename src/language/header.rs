@@ -130,7 +130,7 @@ impl Head {
         let own = [word, lower.as_str()].into_iter().find(|w| declared(w)).map(str::to_string);
         match own {
             Some(word) => Head::Clause { word, meaning: ClauseWord::Attribute, unit },
-            None => Head::Foreign { word: lower, unit },
+            None => Head::Foreign { word: word.to_string(), unit },
         }
     }
 
@@ -152,7 +152,7 @@ impl Head {
 }
 
 /// The attributes that lines declare.
-pub(super) fn declared(tree: &Tree) -> FxHashSet<String> {
+pub fn declared(tree: &Tree) -> FxHashSet<String> {
     let words = tree.statements.iter().filter_map(|s| match &s.line {
         Line::Attribute(found) => Some(found),
         _ => None,
@@ -195,10 +195,11 @@ fn column(
     match Head::of(cell.text, &|word| declared.contains(word)) {
         Head::Plain(column) => return column,
         Head::Ask => return Column::Ask,
-        Head::Lines(_) if form == GridForm::Sheet => return Column::Ask,
+        Head::Lines(_) if form != GridForm::Markdown => return Column::Ask,
         Head::Clause { word, meaning, unit } => {
             let name = tree.names.intern(&word);
-            let unit = unit.and_then(|u| header_unit(&u, span, tree));
+            // A currency is a note to the reader: costs are plain numbers.
+            let unit = unit.filter(|_| word != "cost").and_then(|u| header_unit(&u, span, tree));
             return Column::Clause { word: meaning, name, span, unit };
         }
         Head::LaterClause(word) => problems.push(later(span, &format!("the clause `{word}`"))),
@@ -232,7 +233,8 @@ fn column(
 /// A remark on a header that looks like a known one and is not.
 fn near_header(word: &str, unit: Option<&str>, span: Span) -> Option<Problem> {
     let known = ["name", "require", "need"].into_iter().chain(words::CLAUSES.iter().map(|(w, _)| *w));
-    let near = words::nearest(word, known).filter(|_| unit.is_some() || word.chars().count() > 3);
+    let lower = word.to_lowercase();
+    let near = words::nearest(&lower, known).filter(|_| unit.is_some() || word.chars().count() > 3);
     let meant = match near {
         Some(near) => near.to_string(),
         None => with_stray_unit(word, unit)?,
@@ -243,8 +245,10 @@ fn near_header(word: &str, unit: Option<&str>, span: Span) -> Option<Problem> {
 
 /// `rate FIT`, `rate [FIT]` and `failure rate (FIT)` are nearly `rate (FIT)`.
 fn with_stray_unit(word: &str, unit: Option<&str>) -> Option<String> {
-    let clause =
-        |w: &str| words::clause(w).is_some_and(|c| !matches!(c, ClauseWord::Source | ClauseWord::Perfect));
+    let clause = |w: &str| {
+        let meaning = words::clause(&w.to_lowercase());
+        meaning.is_some_and(|c| !matches!(c, ClauseWord::Source | ClauseWord::Perfect))
+    };
     let parts: Vec<&str> = word.split_whitespace().collect();
     if let Some(unit) = unit {
         return parts.iter().find(|w| clause(w)).map(|w| format!("{w} ({unit})"));
@@ -304,7 +308,7 @@ mod tests {
     fn near_headers_get_their_mend() {
         let meant = |word, unit| near_header(word, unit, Span::default()).map(|p| p.mends[0].clone());
         let did = |text: &str| Some(format!("did you mean \"{text}\"?"));
-        assert_eq!(meant("rate fit", None), did("rate (fit)"));
+        assert_eq!(meant("Rate FIT", None), did("Rate (FIT)"));
         assert_eq!(meant("mttf [kh]", None), did("mttf (kh)"));
         assert_eq!(meant("rate /mh", None), did("rate (/mh)"));
         assert_eq!(meant("failure rate", Some("FIT")), did("rate (FIT)"));

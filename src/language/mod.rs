@@ -22,10 +22,10 @@ pub mod words;
 
 pub use grid::{CellKind, Cells, Grid, GridForm, read_grids};
 pub use grid_ask::{CellAsk, ask_grids};
-pub use header::HeaderKind;
+pub use header::{HeaderKind, declared as declared_attributes};
 pub use print::{print, print_start};
 pub use read::{Source, read_block, read_cell_question, read_expression, read_question};
-pub use shape::{is_answer, is_answer_block, is_answer_line};
+pub use shape::{is_answer, is_answer_block, is_answer_cell, is_answer_line};
 pub use tree::written as written_name;
 pub use tree::*;
 

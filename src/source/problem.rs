@@ -219,6 +219,10 @@ codes! {
     CutShort = "cut-short",
     /// A requirement that is not met.
     NotMet = "not-met",
+    /// Formulas of a workbook whose stored values rest on answers that have changed.
+    OutOfDateFormula = "out-of-date-formula",
+    /// A workbook that is open in a spreadsheet program.
+    OpenElsewhere = "open-elsewhere",
     /// An answer that no longer is what tieback would write.
     Stale = "stale",
 }

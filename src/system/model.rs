@@ -223,11 +223,13 @@ impl<'a> Model<'a> {
         if slot != NONE {
             let first = self.defs[slot as usize].span;
             let text = self.written(name);
-            let fault = self.fault(
-                Problem::error(Code::DefinedTwice, span, format!("`{text}` is defined twice"))
-                    .label(first, "first here")
-                    .mend("one name is one thing: give the second another name, or delete one of the two"),
-            );
+            let problem = Problem::error(Code::DefinedTwice, span, format!("`{text}` is defined twice"))
+                .label(first, "first here")
+                .mend("one name is one thing: give the second another name, or delete one of the two");
+            let fault = self.fault(match self.sources.cell(span) {
+                Some(_) => problem.mend("several of one sort are one row with their number under `qty`"),
+                None => problem,
+            });
             self.defs[slot as usize].broken = Some(fault);
             return;
         }

@@ -92,6 +92,8 @@ pub fn of(code: Code) -> Explanation {
         Code::TooLarge => data::TOO_LARGE,
         Code::CutShort => data::CUT_SHORT,
         Code::NotMet => data::NOT_MET,
+        Code::OutOfDateFormula => places::OUT_OF_DATE_FORMULA,
+        Code::OpenElsewhere => places::OPEN_ELSEWHERE,
         Code::Stale => data::STALE,
     }
 }

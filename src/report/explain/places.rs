@@ -147,6 +147,22 @@ pub(super) const FILE_ACCESS: Explanation = Explanation {
     mended: lines!("tieback fill flood-gate.md"),
 };
 
+pub(super) const OUT_OF_DATE_FORMULA: Explanation = Explanation {
+    what: "A formula of the workbook rests on an answer that has just changed. tieback writes answers and never the stored value \
+           of a formula. The workbook asks for all formulas to be computed when it is opened next; a program that \
+           only reads stored values would take the old ones until then. Open the workbook and save it.",
+    wrong: lines!("tieback fill parts.xlsx", "# where a sum in parts.xlsx takes in a column of answers"),
+    mended: lines!("tieback fill parts.xlsx", "# then open parts.xlsx in a spreadsheet program and save it"),
+};
+
+pub(super) const OPEN_ELSEWHERE: Explanation = Explanation {
+    what: "The workbook seems to be open in a spreadsheet program. A lock file of such a program lies beside it. The answers are written \
+           all the same; what is saved from the open window later replaces them. Close the workbook there, or \
+           open it anew after filling. A lock file that a crash left behind may be deleted.",
+    wrong: lines!("tieback fill parts.xlsx", "# while parts.xlsx is open"),
+    mended: lines!("tieback fill parts.xlsx", "# after parts.xlsx was closed"),
+};
+
 pub(super) const NOTHING_TO_DO: Explanation = Explanation {
     what: "A file holds nothing for tieback. It has neither a block whose info word is exactly `tieback`, nor a question in a \
            comment, nor a table that is announced. A misspelt info word is the usual cause. Files found in a \
