@@ -168,7 +168,7 @@ fn statement<T>(
     let mut found = Vec::new();
     let (outcome, unmet) = match &statement.line {
         Line::Ask { value, display } => (outcome_of(*value, *display, model, desk), false),
-        Line::Define { value, display, .. } if asks => (outcome_of(*value, *display, model, desk), false),
+        Line::Define { value, display, .. } if asks => (defined(*value, *display, model, desk), false),
         Line::Require { left, limit, right } => match require(desk, model, *left, *limit, *right) {
             Ok((verdict, text)) => {
                 let unmet = verdict != Verdict::Met;
@@ -250,6 +250,21 @@ pub(crate) fn told_once<T>(answered: &[Answered<T>]) -> Vec<Problem> {
     problems
 }
 
+/// What a line that defines and asks comes to: a name can stand for a number only.
+fn defined(value: ExprId, display: Option<Display>, model: &mut Model<'_>, desk: &mut Desk) -> Out<Outcome> {
+    match outcome_of(value, display, model, desk)? {
+        Outcome::Reply(_) => {
+            let place = model.tree.span(value);
+            Err(model.fault(
+                Problem::error(Code::WrongKind, place, "a list is no figure, and no name can stand for it")
+                    .mend("ask for it without a name before it")
+                    .mend("or give a name to how many there are: `n = count(cuts(feed)) ?`"),
+            ))
+        }
+        found => Ok(found),
+    }
+}
+
 fn outcome_of(
     value: ExprId,
     display: Option<Display>,
@@ -257,6 +272,13 @@ fn outcome_of(
     desk: &mut Desk,
 ) -> Out<Outcome> {
     match desk.list(model, value)? {
+        Some(_) if display.is_some() => {
+            let place = model.tree.span(value);
+            Err(model.fault(
+                Problem::error(Code::WrongUnit, place, "a list has no display of its own")
+                    .mend("take the `in …` away"),
+            ))
+        }
         Some(list) => Ok(Outcome::Reply(list)),
         None => Ok(Outcome::Number(desk.number(model, value)?, display, value)),
     }

@@ -151,6 +151,8 @@ codes! {
     TableCell = "table-cell",
     /// A block that is never closed.
     UnclosedFence = "unclosed-fence",
+    /// A block whose info word is nearly the one that is read.
+    NearlyABlock = "nearly-a-block",
     /// Bytes that are not UTF-8.
     NotUtf8 = "not-utf8",
     /// A file that could not be read or written.

@@ -59,6 +59,7 @@ pub fn of(code: Code) -> Explanation {
         Code::TableHeader => places::TABLE_HEADER,
         Code::TableCell => places::TABLE_CELL,
         Code::UnclosedFence => places::UNCLOSED_FENCE,
+        Code::NearlyABlock => places::NEARLY_A_BLOCK,
         Code::NotUtf8 => places::NOT_UTF8,
         Code::FileAccess => places::FILE_ACCESS,
         Code::NothingToDo => places::NOTHING_TO_DO,

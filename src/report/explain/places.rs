@@ -117,6 +117,13 @@ pub(super) const TABLE_CELL: Explanation = Explanation {
     ),
 };
 
+pub(super) const NEARLY_A_BLOCK: Explanation = Explanation {
+    what: "A block has nearly the info word that is read. It differs from `tieback` by case, by a sign or by one letter. Only \
+           exactly `tieback` is read, so that blocks of other languages are left alone; this one was most probably meant to be.",
+    wrong: lines!("```tieback", "pump = 0.98", "```", "", "```Tieback", "R(pump) ?", "```"),
+    mended: lines!("```tieback", "pump = 0.98", "```", "", "```tieback", "R(pump) ?", "```"),
+};
+
 pub(super) const UNCLOSED_FENCE: Explanation = Explanation {
     what: "A block is never closed. Markdown then takes everything up to the end of the note for its content, prose as well. Close \
            the block with as many backticks or tildes as open it, on a line of their own.",
