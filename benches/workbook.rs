@@ -9,13 +9,14 @@
 
 use std::io::{Cursor, Read, Write};
 use std::path::PathBuf;
+use std::sync::Mutex;
 use std::time::{Duration, Instant};
 
 use calamine::{Reader, Xlsx};
 use rust_xlsxwriter::Workbook;
 use tieback::answer::Filled;
 use tieback::document::patch::Rewrite;
-use tieback::sheets::{Options, SheetForm, fill};
+use tieback::sheets::{Options, SheetForm, Stage, fill};
 use zip::write::SimpleFileOptions;
 use zip::{ZipArchive, ZipWriter};
 
@@ -95,8 +96,24 @@ fn lines() -> Vec<u8> {
 
 fn filled(name: &str, form: SheetForm, bytes: &[u8]) -> (Duration, usize) {
     let start = Instant::now();
-    let Filled { problems, asked, rewrite, .. } = fill(name, form, bytes.to_vec(), &Options::default());
+    let stages: Mutex<Vec<(&str, Duration)>> = Mutex::new(Vec::new());
+    let tell = |stage| {
+        let word = match stage {
+            Stage::Reading => "reading",
+            Stage::Answering(..) => "answering",
+            Stage::Writing => "writing",
+        };
+        let mut stages = stages.lock().unwrap();
+        if stages.last().is_none_or(|(last, _)| *last != word) {
+            stages.push((word, start.elapsed()));
+        }
+    };
+    let options = Options { progress: Some(&tell), ..Options::default() };
+    let Filled { problems, asked, rewrite, .. } = fill(name, form, bytes.to_vec(), &options);
     let took = start.elapsed();
+    for (stage, at) in stages.into_inner().unwrap() {
+        print!("{stage} from {:.2} s, ", at.as_secs_f64());
+    }
     assert!(problems.is_empty(), "{problems:?}");
     assert!(asked.iter().all(|a| !a.error));
     let Rewrite::Patched(new) = rewrite else { panic!("nothing was filled") };

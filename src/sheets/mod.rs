@@ -127,15 +127,14 @@ pub fn fill(name: &str, form: SheetForm, bytes: Vec<u8>, options: &Options<'_>) 
     show_readings(&mut model, &mut desk);
     problems.append(&mut model.take_problems());
     problems.append(&mut told);
-    drop((model, desk));
     let place::Placed { asked, answers, problems: mut placed } = placing.finish();
     problems.append(&mut placed);
-    let base = read.base;
+    options.tell(Stage::Writing);
+    // A large model takes a while to be given back: the answers are written meanwhile.
+    let ((), (rewrite, late)) =
+        rayon::join(|| drop((model, desk)), || place::rewrite(&opened, &answers, read.base, options.writing));
     drop(read);
-    let rewrite = {
-        options.tell(Stage::Writing);
-        place::rewrite(name, &opened, &answers, base, options.writing, &mut sources, &mut problems)
-    };
+    problems.extend(late.told(name, &mut sources));
     problems.sort_by_key(|p| (p.place.start, p.place.end));
     problems.dedup();
     let problems = folded(problems);

@@ -7,10 +7,11 @@ use super::rows::{Content, Opened};
 use super::{Writing, export, trouble_in};
 use crate::answer::{Answered, Asked, Outcome, Own, misfit};
 use crate::document::patch::{Edit, Rewrite, apply};
-use crate::document::workbook::{Answer, AnswerValue, Book};
+use crate::document::workbook::{Answer, AnswerValue, Book, BookTrouble};
 use crate::language::{CellAsk, Line, is_answer_cell};
 use crate::source::{CellAt, CellMap, Code, Level, Problem, Sources, Span, cell_name};
 use crate::system::{Model, Out};
+use rayon::prelude::*;
 
 /// Puts replies into the cells of their questions.
 pub(super) struct Placing<'a> {
@@ -97,14 +98,27 @@ impl<'a> Placing<'a> {
     }
 
     pub(super) fn place_all(&mut self, replies: Vec<Answered<CellReply>>, model: &Model<'_>) {
-        for answered in replies {
-            if let Some(ask) = self.ask(answered.statement) {
-                self.place(answered, ask, model);
-            }
+        let placed = |answered: Answered<CellReply>| {
+            let ask = self.ask(answered.statement)?;
+            Some(self.place(answered, ask, model))
+        };
+        let all: Vec<_> = replies.into_par_iter().with_min_len(1000).filter_map(placed).collect();
+        self.asked.reserve(all.len());
+        self.answers.reserve(all.len());
+        for (asked, answer, problem) in all {
+            self.asked.push(asked);
+            self.answers.extend(answer);
+            self.problems.extend(problem);
         }
     }
 
-    fn place(&mut self, answered: Answered<CellReply>, ask: CellAsk, model: &Model<'_>) {
+    /// One answer: what is reported, what goes into the cell, and why nothing does.
+    fn place(
+        &self,
+        answered: Answered<CellReply>,
+        ask: CellAsk,
+        model: &Model<'_>,
+    ) -> (Asked, Option<CellAnswer>, Option<Problem>) {
         let remarks = answered.remarks();
         let Answered { statement, reply, unmet, .. } = answered;
         let entry = self.entry(ask);
@@ -117,12 +131,10 @@ impl<'a> Placing<'a> {
         let error = matches!(reply, CellReply::Error(_));
         let shown = self.text_of(&old);
         let kept = self.kept(entry, &old, &shown, place, model);
-        let stale = !kept && !same(&reply, &old, self.opened);
+        let stale = kept.is_none() && !same(&reply, &old, self.opened);
         let (sheet, row, column) = self.cell(entry);
         let new = reply.text();
-        if !kept {
-            self.answers.push(CellAnswer { sheet, row, column, reply, stale });
-        }
+        let answer = kept.is_none().then_some(CellAnswer { sheet, row, column, reply, stale });
         let question = match &model.tree.statements[statement].line {
             Line::Ask { value, .. } => model.text_of(*value),
             Line::Require { .. } => "met".to_string(),
@@ -131,7 +143,7 @@ impl<'a> Placing<'a> {
                 self.read.based().source(header).text.trim_end_matches('?').trim().to_string()
             }
         };
-        self.asked.push(Asked { place, question, old: shown, new, stale, error, unmet, remarks });
+        (Asked { place, question, old: shown, new, stale, error, unmet, remarks }, answer, kept)
     }
 
     fn content(&self, entry: usize) -> Content<'a> {
@@ -156,8 +168,15 @@ impl<'a> Placing<'a> {
         }
     }
 
-    /// Whether the cell is the user's and stays as it is, which is said.
-    fn kept(&mut self, entry: usize, old: &Content<'_>, shown: &str, place: Span, model: &Model<'_>) -> bool {
+    /// Why a cell is the user's and stays as it is, if it does.
+    fn kept(
+        &self,
+        entry: usize,
+        old: &Content<'_>,
+        shown: &str,
+        place: Span,
+        model: &Model<'_>,
+    ) -> Option<Problem> {
         let (sheet, row, column) = self.cell(entry);
         let cell = match self.opened {
             Opened::Book(book) => book.sheets().get(sheet).map(|s| s.at(row, column)),
@@ -186,7 +205,7 @@ impl<'a> Placing<'a> {
                 _ => false,
             };
             if ours {
-                return false;
+                return None;
             }
             let start: String = shown.lines().next().unwrap_or("").chars().take(40).collect();
             (
@@ -198,8 +217,7 @@ impl<'a> Placing<'a> {
             )
         };
         let problem = Problem::error(Code::NotAnAnswer, place, message);
-        self.problems.push(mends.iter().fold(problem, |problem, mend| problem.mend(*mend)));
-        true
+        Some(mends.iter().fold(problem, |problem, mend| problem.mend(*mend)))
     }
 
     /// What is to be known of an answer.
@@ -275,31 +293,57 @@ fn written(reply: &CellReply, cut: &crate::document::delimited::Delimited) -> St
     }
 }
 
+/// What is to be said of the writing; the place of a cell that is in no text
+/// yet comes with it.
+#[derive(Default)]
+pub(super) struct Late {
+    pub(super) problems: Vec<Problem>,
+    /// A trouble with the file itself.
+    pub(super) trouble: Option<BookTrouble>,
+    /// A remark on a cell.
+    pub(super) of_cell: Option<(Problem, CellMap)>,
+}
+
+impl Late {
+    /// Everything as problems, with places among the sources.
+    pub(super) fn told(self, name: &str, sources: &mut Sources) -> Vec<Problem> {
+        let mut problems = self.problems;
+        if let Some(trouble) = self.trouble {
+            problems.push(trouble_in(name, &trouble, sources).mend("nothing was written"));
+        }
+        if let Some((mut problem, map)) = self.of_cell {
+            if let Some(at) = sources.add_cells(name, "=", map) {
+                problem.place = Span { start: at, end: at + 1 };
+            }
+            problems.push(problem);
+        }
+        problems
+    }
+}
+
 /// Writes the answers, as far as they are to be written.
 pub(super) fn rewrite(
-    name: &str,
     opened: &Opened,
     answers: &[CellAnswer],
     base: u32,
     writing: Writing,
-    sources: &mut Sources,
-    problems: &mut Vec<Problem>,
-) -> Rewrite {
+) -> (Rewrite, Late) {
+    let mut late = Late::default();
     let done = match opened {
         Opened::Delimited(text, cut) => {
             let any = answers.iter().any(|a| a.stale) && writing != Writing::Compare;
             if any { delimited(text, cut, answers) } else { Ok(Rewrite::Unchanged) }
         }
-        Opened::Book(book) => book_with(name, book, answers, base, writing, sources, problems),
+        Opened::Book(book) => book_with(book, answers, base, writing, &mut late),
     };
-    done.unwrap_or_else(|trouble| {
-        let problem = trouble_in(name, &trouble, sources);
-        problems.push(problem.mend("nothing was written"));
+    let rewrite = done.unwrap_or_else(|trouble| {
+        late.trouble = Some(trouble);
         Rewrite::Unchanged
-    })
+    });
+    (rewrite, late)
 }
 
-type Done = Result<Rewrite, crate::document::workbook::BookTrouble>;
+type Done = Result<Rewrite, BookTrouble>;
 
 fn delimited(text: &str, cut: &crate::document::delimited::Delimited, answers: &[CellAnswer]) -> Done {
     let mut order: Vec<&CellAnswer> = answers.iter().filter(|a| a.stale).collect();
@@ -315,19 +359,11 @@ fn delimited(text: &str, cut: &crate::document::delimited::Delimited, answers: &
     Ok(apply(text.as_bytes(), &edits).unwrap_or(Rewrite::Unchanged))
 }
 
-fn book_with(
-    name: &str,
-    book: &Book,
-    answers: &[CellAnswer],
-    base: u32,
-    writing: Writing,
-    sources: &mut Sources,
-    problems: &mut Vec<Problem>,
-) -> Done {
+fn book_with(book: &Book, answers: &[CellAnswer], base: u32, writing: Writing, late: &mut Late) -> Done {
     let place = Span { start: base, end: base };
     if let Some(why) = book.read_only_because().filter(|_| writing == Writing::InPlace) {
         let message = format!("the answers are not written: {why}");
-        problems.push(
+        late.problems.push(
             Problem::error(Code::FileAccess, place, message)
                 .mend("write them to a new workbook: `-o answers.xlsx`")
                 .mend("or save this one as xlsx in a spreadsheet program, and fill that"),
@@ -352,7 +388,7 @@ fn book_with(
         })
         .collect();
     if book.read_only_because().is_some() {
-        problems.push(Problem::remark(
+        late.problems.push(Problem::remark(
             Code::FileAccess,
             place,
             "the new workbook holds values and answers only: formulas, styles, widths, charts, pictures, comments and \
@@ -363,12 +399,12 @@ fn book_with(
     let changed: Vec<(usize, u32, u32)> =
         answers.iter().filter(|a| a.stale).map(|a| (a.sheet, a.row, a.column)).collect();
     let bytes = book.write(&given)?;
-    problems.extend(resting(name, book, &changed, sources));
+    late.of_cell = resting(book, &changed);
     Ok(if bytes == book.bytes() { Rewrite::Unchanged } else { Rewrite::Patched(bytes) })
 }
 
 /// The remark on formulas whose stored values no longer hold, at the first of them.
-fn resting(name: &str, book: &Book, changed: &[(usize, u32, u32)], sources: &mut Sources) -> Option<Problem> {
+fn resting(book: &Book, changed: &[(usize, u32, u32)]) -> Option<(Problem, CellMap)> {
     const SHOWN: usize = 5;
     let formulas = book.formulas_depending_on(changed);
     let &(sheet, row, column) = formulas.first()?;
@@ -390,12 +426,10 @@ fn resting(name: &str, book: &Book, changed: &[(usize, u32, u32)], sources: &mut
         Some(more) => format!("{} and {more} more", names.join(", ")),
         None => names.join(", "),
     };
-    let place =
-        sources.add_cells(name, "=", map).map_or(Span::default(), |at| Span { start: at, end: at + 1 });
     let (rest, they) = if formulas.len() == 1 { ("rests", "shows its") } else { ("rest", "show their") };
     let message = format!(
         "{list} {rest} on answers that have changed, and {they} old value until the workbook is opened"
     );
     let mend = "open it in a spreadsheet program, which computes it anew, and save it";
-    Some(Problem::remark(Code::OutOfDateFormula, place, message).mend(mend))
+    Some((Problem::remark(Code::OutOfDateFormula, Span::default(), message).mend(mend), map))
 }
