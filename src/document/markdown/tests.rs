@@ -64,6 +64,7 @@ fn fences() {
     for near in ["tiebacks", "Tieback", "tieback,", "tibeack", "tieack", "{tieback}"] {
         finds(&format!("tieback\n~~~{near} x\nA\n~~~\n"), &[], &[Code::NearlyABlock]);
     }
+    finds("\n```tieback\u{feff}\\|\n", &[], &[Code::NearlyABlock]);
     finds("tieback\n```tie\n```\n```text\n```\n```back\n```\n", &[], &[]);
     finds("````md\n```tieback\nA\n```\n````\n", &[], &[]);
     finds("\u{feff}```tieback\nA\n```\n", &[r#"fence ["A"]"#], &[]);

@@ -316,10 +316,12 @@ impl<'a> Walk<'a> {
     /// A block whose info word was most probably meant to be tieback's.
     fn nearly(&mut self, at: usize, word: &str) {
         let line = self.text[at..].lines().next().unwrap_or("");
-        let start = at + line.find(word).unwrap_or(0);
+        // With a backslash in it the word stands otherwise in the text than it reads.
+        let (from, length) = line.find(word).map_or((0, line.len()), |from| (from, word.len()));
+        let start = at + from;
         let message = format!("a block with the info word `{word}` is not read");
         self.found.problems.push(
-            Problem::remark(Code::NearlyABlock, self.span(start..start + word.len()), message)
+            Problem::remark(Code::NearlyABlock, self.span(start..start + length), message)
                 .mend("write `tieback`, in small letters and alone, for a block that is"),
         );
     }
