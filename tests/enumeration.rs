@@ -25,6 +25,36 @@ enum Shape {
     AtLeast(usize, Vec<Shape>),
     /// Works unless this combination of failures is there.
     FailsWhen(Box<Shape>),
+    Routes(Box<Routes>),
+}
+
+/// Stops with one-way links between them, `in` and `out` first.
+#[derive(Clone, Debug)]
+struct Routes {
+    stops: Vec<Shape>,
+    links: Vec<(usize, usize)>,
+    ends: Vec<usize>,
+    need: usize,
+}
+
+impl Routes {
+    /// Follows all ways until none leads further.
+    fn holds(&self, state: u32) -> bool {
+        let up: Vec<bool> =
+            [true, true].into_iter().chain(self.stops.iter().map(|s| s.holds(state))).collect();
+        let mut reached = BTreeSet::from([0]);
+        loop {
+            let before = reached.len();
+            for (from, to) in &self.links {
+                if reached.contains(from) && up[*to] {
+                    reached.insert(*to);
+                }
+            }
+            if reached.len() == before {
+                return self.ends.iter().filter(|e| reached.contains(e)).count() >= self.need;
+            }
+        }
+    }
 }
 
 impl Shape {
@@ -34,6 +64,7 @@ impl Shape {
             Shape::Thing(i) => state >> i & 1 == 1,
             Shape::AtLeast(k, of) => of.iter().filter(|m| m.holds(state)).count() >= *k,
             Shape::FailsWhen(what) => !what.holds(!state),
+            Shape::Routes(routes) => routes.holds(state),
         }
     }
 }
@@ -61,6 +92,8 @@ struct Writer {
     lines: Vec<String>,
     /// Named structures that may be used again.
     open: Vec<(String, Shape)>,
+    /// Other names of things and structures that have one.
+    same: BTreeMap<String, String>,
     most: usize,
 }
 
@@ -117,12 +150,90 @@ impl Writer {
             8 if depth > 0 => {
                 let (text, shape) = self.part(depth - 1);
                 let name = format!("s{}", self.lines.len());
-                self.lines.push(format!("{name} = {}", text));
+                self.lines.push(format!("{name} = {text}"));
+                if !text.contains('(') {
+                    let first = self.same.get(&text).unwrap_or(&text).clone();
+                    self.same.insert(name.clone(), first);
+                }
                 self.open.push((name.clone(), shape.clone()));
                 (name, shape)
             }
+            9 if depth > 0 => self.routes(depth - 1),
             _ => self.group(depth.saturating_sub(1)),
         }
+    }
+
+    /// A network: one way that holds all together, and links at random.
+    fn routes(&mut self, depth: usize) -> (String, Shape) {
+        let mut known: Vec<String> = Vec::new();
+        let (mut texts, mut stops) = (vec!["in".to_string(), "out".to_string()], Vec::new());
+        for _ in 0..2 + self.random.below(5) {
+            let (mut text, shape) = self.part(depth);
+            // Among the ends stand names, and calls of names.
+            if text.starts_with('(') || text.matches('(').count() > 1 {
+                let name = format!("r{}", self.lines.len());
+                self.lines.push(format!("{name} = {text}"));
+                text = name;
+            }
+            // One name is one stop.
+            let key = self.same.get(&text).unwrap_or(&text).clone();
+            if !known.contains(&key) {
+                known.push(key);
+                texts.push(text);
+                stops.push(shape);
+            }
+        }
+        let n = stops.len();
+        let (mut ways, mut links) = (Vec::new(), Vec::new());
+        let some = self.random.below(n) + 2;
+        let several = self.random.below(3) == 0;
+        let ends: Vec<usize> =
+            if several { (2..texts.len()).filter(|_| self.random.below(2) == 0).collect() } else { vec![1] };
+        let (ends, several) = if ends.is_empty() { (vec![1], false) } else { (ends, several) };
+        let need = 1 + self.random.below(ends.len());
+        let mut linked = BTreeSet::new();
+        let mut link = |ways: &mut Vec<String>, from: usize, to: usize, both: bool| {
+            linked.extend([from, to]);
+            let arrow = if both { "<->" } else { "->" };
+            ways.push(format!("{} {arrow} {}", texts[from], texts[to]));
+            links.push((from, to));
+            if both {
+                links.push((to, from));
+            }
+        };
+        link(&mut ways, 0, some, false);
+        if several {
+            ends.iter().filter(|e| **e != some).for_each(|e| link(&mut ways, some, *e, false));
+        } else {
+            link(&mut ways, some, 1, false);
+        }
+        for _ in 0..n + self.random.below(2 * n) {
+            let (a, b) = (self.random.below(n + 2), self.random.below(n + 2));
+            let to_out = b == 1 && several;
+            // Straight from `in` to `out` nothing can fail.
+            if a != b && b != 0 && a != 1 && !to_out && (a, b) != (0, 1) {
+                let both = a != 0 && b != 1 && self.random.below(2) == 0;
+                link(&mut ways, a, b, both);
+            }
+        }
+        // The rest leads somewhere, and nothing leads there.
+        for stop in 2..texts.len() {
+            if !linked.contains(&stop) {
+                ways.push(format!("{} -> {}", texts[stop], texts[some]));
+                if stop != some {
+                    links.push((stop, some));
+                }
+            }
+        }
+        let with = match several {
+            true => {
+                let names: Vec<&str> = ends.iter().map(|e| texts[*e].as_str()).collect();
+                format!(" with ends {need} of ({})", names.join(", "))
+            }
+            false => String::new(),
+        };
+        let routes = Routes { stops, links, ends, need };
+        (format!("(routes({}){with})", ways.join(", ")), Shape::Routes(Box::new(routes)))
     }
 
     fn members(&mut self, depth: usize) -> (Vec<String>, Vec<Shape>) {
@@ -218,6 +329,7 @@ fn trial(seed: u64, most: usize) -> Trial {
         names: Vec::new(),
         lines: Vec::new(),
         open: Vec::new(),
+        same: BTreeMap::new(),
         most,
     };
     let (text, shape) = writer.group(4);
@@ -316,7 +428,8 @@ fn through_types(note: &str) -> (DBig, DBig) {
     let language::Expr::Call(_, args) = tree.expr(*value) else { panic!() };
     let thing = tree.list(args)[0];
     let mut desk = Desk::default();
-    let prepared = desk.prepare(&mut model, thing).unwrap();
+    let prepared = desk.prepare(&mut model, thing);
+    let prepared = prepared.unwrap_or_else(|f| panic!("{:?}\n{note}", model.problem(f)));
     let valued = desk.value(&mut model, thing, &prepared, &[], Default::default()).unwrap();
     (wide(valued.chance.works()), wide(valued.chance.fails()))
 }

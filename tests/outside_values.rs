@@ -533,4 +533,107 @@ const CASES: &[Case] = &[
             Ask("R(row)", "", "0.96309000000000000000", 0.0),
         ],
     },
+    Case {
+        id: "O21, as routes",
+        class: 'b',
+        source: "widely published (2p^2+2p^3-5p^4+2p^5), for instance in the terminal-pair literature",
+        note: "i1, i2, i3, i4, i5 = 0.9\n\
+            bridge = routes(in -> i1 -> i4 -> out, in -> i2 -> i5 -> out, i1 <-> i3 <-> i2, i4 <-> i3 <-> i5)",
+        asks: &[
+            Ask("R(bridge)", "0.97848", "0.97848000000000000000", 5.0e-6),
+            Ask("count(cuts(bridge))", "4", "4", 0.5),
+        ],
+    },
+    Case {
+        id: "O23, as routes",
+        class: 'c',
+        source: "pivotal decomposition on item 3",
+        note: "i1 = 0.95\n\
+            i2 = 0.90\n\
+            i3 = 0.70\n\
+            i4 = 0.85\n\
+            i5 = 0.80\n\
+            bridge = routes(in -> i1 -> i4 -> out, in -> i2 -> i5 -> out, i1 <-> i3 <-> i2, i4 <-> i3 <-> i5)",
+        asks: &[
+            Ask("R(bridge)", "", "0.95943500000000000000", 0.0),
+        ],
+    },
+    Case {
+        id: "O24, as routes",
+        class: 'c',
+        source: "exact rational 2q^2+2q^3-5q^4+2q^5",
+        note: "i1, i2, i3, i4, i5 = fails 1e-6\n\
+            bridge = routes(in -> i1 -> i4 -> out, in -> i2 -> i5 -> out, i1 <-> i3 <-> i2, i4 <-> i3 <-> i5)",
+        asks: &[
+            Ask("F(bridge)", "", "2.0000019999950000020e-12", 0.0),
+        ],
+    },
+    Case {
+        id: "O25",
+        class: 'c',
+        source: "frontier dynamic program in exact rationals, equal to brute force over 2^12",
+        note: "j0, j1, j2, j3, j4, j5, j6, j7, j8 = perfect\n\
+            e0_1, e1_2, e0_3, e1_4, e3_4, e2_5, e4_5, e3_6, e4_7, e6_7, e5_8, e7_8 = 0.9\n\
+            net = routes(in -> j0, j0 <-> e0_1 <-> j1, j1 <-> e1_2 <-> j2, j0 <-> e0_3 <-> j3, j1 <-> e1_4 <-> j4, j3 <-> e3_4 <-> j4, j2 <-> e2_5 <-> j5, j4 <-> e4_5 <-> j5, j3 <-> e3_6 <-> j6, j4 <-> e4_7 <-> j7, j6 <-> e6_7 <-> j7, j5 <-> e5_8 <-> j8, j7 <-> e7_8 <-> j8, j8 -> out)",
+        asks: &[
+            Ask("R(net)", "", "0.97250217140700000000", 0.0),
+        ],
+    },
+    Case {
+        id: "O26",
+        class: 'b',
+        source: "benchmark of the terminal-pair literature (dodecahedron, 20 nodes and 30 edges), value recalled",
+        note: "j0, j1, j2, j3, j4, j5, j6, j7, j8, j9, j10, j11, j12, j13, j14, j15, j16, j17, j18, j19 = perfect\n\
+            e0_1, e0_10, e0_19, e1_2, e1_8, e2_3, e2_6, e3_4, e3_19, e4_5, e4_17, e5_6, e5_15, e6_7, e7_8, e7_14, e8_9, e9_10, e9_13, e10_11, e11_12, e11_18, e12_13, e12_16, e13_14, e14_15, e15_16, e16_17, e17_18, e18_19 = 0.9\n\
+            net = routes(in -> j0, j0 <-> e0_1 <-> j1, j0 <-> e0_10 <-> j10, j0 <-> e0_19 <-> j19, j1 <-> e1_2 <-> j2, j1 <-> e1_8 <-> j8, j2 <-> e2_3 <-> j3, j2 <-> e2_6 <-> j6, j3 <-> e3_4 <-> j4, j3 <-> e3_19 <-> j19, j4 <-> e4_5 <-> j5, j4 <-> e4_17 <-> j17, j5 <-> e5_6 <-> j6, j5 <-> e5_15 <-> j15, j6 <-> e6_7 <-> j7, j7 <-> e7_8 <-> j8, j7 <-> e7_14 <-> j14, j8 <-> e8_9 <-> j9, j9 <-> e9_10 <-> j10, j9 <-> e9_13 <-> j13, j10 <-> e10_11 <-> j11, j11 <-> e11_12 <-> j12, j11 <-> e11_18 <-> j18, j12 <-> e12_13 <-> j13, j12 <-> e12_16 <-> j16, j13 <-> e13_14 <-> j14, j14 <-> e14_15 <-> j15, j15 <-> e15_16 <-> j16, j16 <-> e16_17 <-> j17, j17 <-> e17_18 <-> j18, j18 <-> e18_19 <-> j19, j15 -> out)",
+        asks: &[
+            Ask("R(net)", "0.997120", "0.99712039874660671948", 5.0e-7),
+        ],
+    },
+    Case {
+        id: "O27",
+        class: 'c',
+        source: "frontier dynamic program in exact rationals",
+        note: "j0, j1, j2, j3, j4, j5, j6, j7, j8, j9, j10, j11, j12, j13, j14, j15, j16, j17, j18, j19 = perfect\n\
+            e0_1, e2_3, e4_5, e6_7, e8_9, e10_11, e12_13, e14_15, e16_17, e18_19, e0_2, e1_3, e2_4, e3_5, e4_6, e5_7, e6_8, e7_9, e8_10, e9_11, e10_12, e11_13, e12_14, e13_15, e14_16, e15_17, e16_18, e17_19 = 0.95\n\
+            net = routes(in -> j0, j0 <-> e0_1 <-> j1, j2 <-> e2_3 <-> j3, j4 <-> e4_5 <-> j5, j6 <-> e6_7 <-> j7, j8 <-> e8_9 <-> j9, j10 <-> e10_11 <-> j11, j12 <-> e12_13 <-> j13, j14 <-> e14_15 <-> j15, j16 <-> e16_17 <-> j17, j18 <-> e18_19 <-> j19, j0 <-> e0_2 <-> j2, j1 <-> e1_3 <-> j3, j2 <-> e2_4 <-> j4, j3 <-> e3_5 <-> j5, j4 <-> e4_6 <-> j6, j5 <-> e5_7 <-> j7, j6 <-> e6_8 <-> j8, j7 <-> e7_9 <-> j9, j8 <-> e8_10 <-> j10, j9 <-> e9_11 <-> j11, j10 <-> e10_12 <-> j12, j11 <-> e11_13 <-> j13, j12 <-> e12_14 <-> j14, j13 <-> e13_15 <-> j15, j14 <-> e14_16 <-> j16, j15 <-> e15_17 <-> j17, j16 <-> e16_18 <-> j18, j17 <-> e17_19 <-> j19, j18 -> out)",
+        asks: &[
+            Ask("R(net)", "", "0.97103182598655023272", 0.0),
+        ],
+    },
+    Case {
+        id: "O28",
+        class: 'b',
+        source: "polynomial 16p^3-33p^4+24p^5-6p^6 (textbook, recalled) and enumeration",
+        note: "j0, j1, j2, j3 = perfect\n\
+            e0_1, e0_2, e1_2, e0_3, e1_3, e2_3 = 0.9\n\
+            net = routes(in -> j0, j0 <-> e0_1 <-> j1, j0 <-> e0_2 <-> j2, j1 <-> e1_2 <-> j2, j0 <-> e0_3 <-> j3, j1 <-> e1_3 <-> j3, j2 <-> e2_3 <-> j3) with ends all of (j1, j2, j3)",
+        asks: &[
+            Ask("R(net)", "", "0.99581400000000000000", 0.0),
+        ],
+    },
+    Case {
+        id: "O29",
+        class: 'b',
+        source: "Godsil and Royle, Algebraic Graph Theory p. 355, polynomial recalled, confirmed by dynamic program; paths are spanning trees",
+        note: "j0, j1, j2, j3, j4, j5, j6, j7, j8, j9 = perfect\n\
+            e0_1, e1_2, e2_3, e3_4, e4_0, e5_7, e6_8, e7_9, e8_5, e9_6, e0_5, e1_6, e2_7, e3_8, e4_9 = 0.9\n\
+            net = routes(in -> j0, j0 <-> e0_1 <-> j1, j1 <-> e1_2 <-> j2, j2 <-> e2_3 <-> j3, j3 <-> e3_4 <-> j4, j4 <-> e4_0 <-> j0, j5 <-> e5_7 <-> j7, j6 <-> e6_8 <-> j8, j7 <-> e7_9 <-> j9, j8 <-> e8_5 <-> j5, j9 <-> e9_6 <-> j6, j0 <-> e0_5 <-> j5, j1 <-> e1_6 <-> j6, j2 <-> e2_7 <-> j7, j3 <-> e3_8 <-> j8, j4 <-> e4_9 <-> j9) with ends all of (j1, j2, j3, j4, j5, j6, j7, j8, j9)",
+        asks: &[
+            Ask("R(net)", "", "0.98856691464369600000", 0.0),
+            Ask("count(paths(net))", "2000", "2000", 0.5),
+        ],
+    },
+    Case {
+        id: "O30",
+        class: 'b',
+        source: "count of connected labelled graphs (Gilbert 1959 recursion), recalled: 26704 of 2^15; paths are spanning trees, 6^4 by Cayley",
+        note: "j0, j1, j2, j3, j4, j5 = perfect\n\
+            e0_1, e0_2, e1_2, e0_3, e1_3, e2_3, e0_4, e1_4, e2_4, e3_4, e0_5, e1_5, e2_5, e3_5, e4_5 = 0.5\n\
+            net = routes(in -> j0, j0 <-> e0_1 <-> j1, j0 <-> e0_2 <-> j2, j1 <-> e1_2 <-> j2, j0 <-> e0_3 <-> j3, j1 <-> e1_3 <-> j3, j2 <-> e2_3 <-> j3, j0 <-> e0_4 <-> j4, j1 <-> e1_4 <-> j4, j2 <-> e2_4 <-> j4, j3 <-> e3_4 <-> j4, j0 <-> e0_5 <-> j5, j1 <-> e1_5 <-> j5, j2 <-> e2_5 <-> j5, j3 <-> e3_5 <-> j5, j4 <-> e4_5 <-> j5) with ends all of (j1, j2, j3, j4, j5)",
+        asks: &[
+            Ask("R(net)", "", "0.81494140625000000000", 0.0),
+            Ask("count(paths(net))", "1296", "1296", 0.5),
+        ],
+    },
 ];

@@ -3,6 +3,7 @@
 
 use dashu_float::FBig;
 use dashu_float::round::mode::HalfEven;
+use std::collections::BTreeSet;
 use tieback::answer::{Desk, Number};
 use tieback::language::{self, Expr, Line};
 use tieback::note::{fill, syntax};
@@ -10,6 +11,7 @@ use tieback::number::{Chance, Real};
 use tieback::source::Sources;
 use tieback::steps::{Formula, Outcome, Rule, Side, StepList, shown};
 use tieback::system::Model;
+use tieback::system::network::Network;
 
 type Wide = FBig<HalfEven, 2>;
 
@@ -48,6 +50,11 @@ fn value(formula: &Formula, results: &[(Wide, Wide)]) -> Wide {
             let works = at_least(*need as usize, &members);
             if *side == Side::Works { works } else { whole(1) - works }
         }
+        Formula::Network(network, members, side) => {
+            let members: Vec<Wide> = members.iter().map(|m| results[*m].0.clone()).collect();
+            let works = ways(network, &members);
+            if *side == Side::Works { works } else { whole(1) - works }
+        }
     }
 }
 
@@ -77,6 +84,27 @@ fn function(name: &str, args: &[Wide]) -> Wide {
         "max" => args.iter().skip(1).fold(first, |a, b| if *b > a { b.clone() } else { a }),
         _ => panic!("no function {name}"),
     }
+}
+
+/// All sets of working members in which the network works. Only what is not
+/// settled by what has been decided is split further.
+fn ways(network: &Network, works: &[Wide]) -> Wide {
+    let mut total = whole(0);
+    let mut open = vec![(0, Vec::<bool>::new(), whole(1))];
+    while let Some((at, known, mass)) = open.pop() {
+        let up = |rest: bool| network.works(|m| known.get(m as usize).copied().unwrap_or(rest));
+        if up(false) {
+            total += mass;
+        } else if up(true) {
+            for state in [true, false] {
+                let p = if state { works[at].clone() } else { whole(1) - &works[at] };
+                let mut known = known.clone();
+                known.push(state);
+                open.push((at + 1, known, &mass * p));
+            }
+        }
+    }
+    total
 }
 
 /// All counts, one member after another.
@@ -461,6 +489,41 @@ fn steps_can_be_computed_again() {
     each_step_list(&mesh.join("\n"), &["R(mesh)"], |question, list, answer, sources| {
         recompute(question, list, answer, sources, &mut rules);
     });
+    // Networks: by reductions and a few cases, by their states, and in one step.
+    let small = "a, b, c, d, e = fails 3%\n\
+        net = routes(in -> a -> c -> out, in -> b -> d -> out, a <-> e <-> b, c <-> e <-> d)\n\
+        line = routes(in -> a -> (b // c) -> out, a -> d -> e -> out)\n\
+        lines = routes(in -> a -> b, in -> c -> b, in -> c -> d, a -> d, b <-> e) with ends 2 of (b, d, e)\n\
+        nest = (net -> a) // (line -> e)";
+    each_step_list(
+        small,
+        &["R(net)", "F(line)", "R(lines)", "F(nest)"],
+        |question, list, answer, sources| {
+            recompute(question, list, answer, sources, &mut rules);
+        },
+    );
+    let square: Vec<(usize, usize)> = (0..16)
+        .flat_map(|i| [(i, i + 4), (i, i + 1)])
+        .filter(|(i, j)| *j < 16 && (j % 4 > 0 || j - i > 1))
+        .collect();
+    let ring: Vec<(usize, usize)> =
+        (0..15).flat_map(|i| [1, 3, 4].map(|step| (i, (i + step) % 15))).collect();
+    for (links, firsts, lasts, rule) in
+        [(square, [0, 0], [15, 15], Rule::NetworkState), (ring, [0, 1], [7, 9], Rule::Network)]
+    {
+        let names: BTreeSet<String> =
+            links.iter().flat_map(|(i, j)| [format!("g{i}"), format!("g{j}")]).collect();
+        let names: Vec<String> = names.into_iter().collect();
+        let mut ways: Vec<String> = firsts.iter().map(|i| format!("in -> g{i}")).collect();
+        ways.extend(lasts.iter().map(|i| format!("g{i} -> out")));
+        ways.extend(links.iter().map(|(i, j)| format!("g{i} <-> g{j}")));
+        let net = format!("{} = fails 5%\nnet = routes({})", names.join(", "), ways.join(", "));
+        let mut own = Vec::new();
+        each_step_list(&net, &["R(net)"], |question, list, answer, sources| {
+            recompute(question, list, answer, sources, &mut own);
+        });
+        assert!(own.contains(&rule), "{own:?}");
+    }
     for rule in [
         Rule::Given,
         Rule::Exposure,

@@ -5,6 +5,7 @@
 //! `cargo bench -- fill small` runs the groups named.
 #![allow(clippy::print_stdout)]
 
+mod networks;
 mod note;
 mod process;
 
@@ -33,6 +34,9 @@ fn main() {
     }
     if wanted("sizes") {
         sizes();
+    }
+    if wanted("networks") {
+        networks::networks();
     }
 }
 

@@ -1,8 +1,9 @@
 //! Where questions are worked on: systems cut out, planned and valued, each once.
 
 use super::find::Index;
-use crate::engine::evaluate::{bound, evaluate};
+use crate::engine::evaluate::{Assessed, assess, evaluate};
 use crate::engine::importance::{Importance, importance};
+use crate::engine::network::Interval;
 use crate::engine::plan::Plan;
 use crate::language::{Expr, ExprId, Phase};
 use crate::number::{Chance, Real};
@@ -185,11 +186,12 @@ impl Desk {
         };
         let out = exposure.and_then(|exposure| {
             let chances = leaf_chances(model, &prepared.system, &exposure, place)?;
-            let values = evaluate(&prepared.plan, &chances);
-            let chance = values.get(prepared.plan.root().0 as usize).copied().unwrap_or(Chance::PERFECT);
+            let assessed = assess(&prepared.plan, &chances);
+            let (chance, bound) = whole(&prepared.plan, &assessed);
             let chance = told_from_zero(&prepared.plan, &chances, chance);
             // Two operations more than the plan counts, for each datum.
-            let bound = bound(&prepared.plan) + crate::system::STEP * 16.0;
+            let bound = bound + crate::system::STEP * 16.0;
+            let values = assessed.values;
             Ok(Arc::new(Valued { chances, values, chance, bound }))
         });
         if out.is_ok() {
@@ -215,18 +217,38 @@ impl Desk {
     }
 
     /// The importance of every block of a system under an exposure.
+    ///
+    /// # Errors
+    /// A network of too many states: its value can be had without keeping
+    /// them, importance cannot.
     pub fn rank(
         &mut self,
-        model: &Model<'_>,
+        model: &mut Model<'_>,
         thing: ExprId,
         prepared: &Prepared,
         valued: &Valued,
         given: &[ExprId],
-    ) -> Ranked {
+    ) -> Out<Ranked> {
+        if let Err(large) = prepared.plan.diagrams() {
+            return Err(too_large(model, thing, large.limit));
+        }
         let key = (Self::key(model, thing), given.to_vec());
         let entry = self.ranked.entry(key);
-        entry.or_insert_with(|| Arc::new(importance(&prepared.plan, &valued.values, CUT_NODES))).clone()
+        let made = || Arc::new(importance(&prepared.plan, &valued.values, CUT_NODES));
+        Ok(entry.or_insert_with(made).clone())
     }
+}
+
+/// The chance of the whole and the bound on its error; where a limit was
+/// reached, the middle of what is possible and how far off it may be.
+fn whole(plan: &Plan, assessed: &Assessed) -> (Chance, f64) {
+    let root = plan.root().0 as usize;
+    let low = assessed.values.get(root).copied().unwrap_or(Chance::PERFECT);
+    let Some(high) = assessed.high.as_ref().and_then(|high| high.get(root)) else {
+        return (low, assessed.bound);
+    };
+    let interval = Interval { low, high: *high, error: assessed.bound };
+    (interval.middle(), interval.off())
 }
 
 /// A tail that underflowed, set to the least number there is, so that it is
@@ -263,7 +285,7 @@ pub(super) fn too_large(model: &mut Model<'_>, thing: ExprId, limit: usize) -> F
         Problem::error(
             Code::TooLarge,
             place,
-            format!("`{text}` shares its parts too widely: its decision diagram would pass {limit} nodes"),
+            format!("`{text}` is tangled too widely: its decision diagram would pass {limit} nodes"),
         )
         .mend("model a part of it as one item, or ask of its parts one by one"),
     )

@@ -14,7 +14,7 @@ use std::sync::Arc;
 pub(super) enum Found {
     /// A block of its plan.
     Block(BlockId),
-    /// A thing in it that cannot fail.
+    /// A thing in it that cannot fail, or that changes nothing.
     Perfect,
     /// A thing that the system does not hold: a row of a parts list, say, that
     /// belongs to another assembly.
@@ -46,6 +46,13 @@ impl Index {
         }
         index.things = model.things_under(prepared.asked).into_iter().map(|(name, _)| name).collect();
         index
+    }
+
+    /// Whether a thing stands under the asked one and yet nothing rests on it: a
+    /// stop of a network that lies on no way, which changes as little as a perfect one.
+    fn lies_on_no_way(&self, wanted: &str) -> bool {
+        let tail = format!(".{wanted}");
+        self.things.contains(wanted) || self.things.iter().filter(|name| name.ends_with(&tail)).count() == 1
     }
 
     fn add(&mut self, name: String, block: Option<BlockId>, by_end: bool) {
@@ -95,6 +102,9 @@ impl Desk {
         if let [(_, block)] = ends {
             return Ok(block.map_or(Found::Perfect, Found::Block));
         }
+        if ends.is_empty() && index.lies_on_no_way(&wanted) {
+            return Ok(Found::Perfect);
+        }
         if let (Expr::Name(sym), []) = (model.tree.expr(inner), ends)
             && model.lookup(sym).is_some()
         {
@@ -125,7 +135,8 @@ fn find_by_building(
     }
     match index.whole.get(own) {
         Some(Some(block)) => Ok(Found::Block(*block)),
-        _ => Err(not_in_system(model, subject, name, wanted, &[])),
+        // What lies on no way of a network is none of the leaves.
+        _ => Ok(Found::Perfect),
     }
 }
 

@@ -38,7 +38,7 @@ impl Desk {
                 return Ok(Number::None(format!("not in {}", model.text_of(subject.thing))));
             }
         };
-        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given);
+        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given)?;
         let Some(found) = ranked.get(block.0 as usize).copied().flatten() else {
             return Ok(Number::None("it has no importance of its own here".to_string()));
         };

@@ -168,7 +168,7 @@ impl Desk {
     fn rank_table(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
         const COLUMNS: [&str; 7] = ["Birnbaum", "criticality", "FV", "RAW", "RRW", "doubled", "made perfect"];
         let subject = self.subject(model, call, args, 1)?;
-        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given);
+        let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given)?;
         let system = &subject.prepared.system;
         let mut lines: Vec<(f64, ExprId, Vec<String>, Vec<String>)> = Vec::new();
         for (number, leaf) in system.leaves.iter().enumerate() {

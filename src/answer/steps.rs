@@ -159,7 +159,7 @@ impl Desk {
         if list.steps.len() > MOST_STEPS {
             return Err(too_many_steps(model, subject.thing, call));
         }
-        let cut = self.rank(model, subject.thing, &prepared, &subject.valued, &subject.given);
+        let cut = self.rank(model, subject.thing, &prepared, &subject.valued, &subject.given)?;
         let cut = cut.get(block.0 as usize).copied().flatten().and_then(|found| found.cut_failed);
         let parts = Parts { own, whole, failed, works, cut };
         let Some(formula) = parts.measure(&word, &thing) else { return Ok(false) };

@@ -40,7 +40,7 @@ impl<'a> Minimal<'a> {
         let mut sets = Minimal { plan, which, families: BTreeMap::new(), nodes, orders: Vec::new() };
         for id in plan.blocks() {
             if let Some(group) = plan.group(id) {
-                sets.families.insert(id, Family::minimal(&group.diagram, which, nodes)?);
+                sets.families.insert(id, Family::minimal(group.diagram()?, which, nodes)?);
             }
             let orders = sets.orders_of(id);
             sets.orders.push(orders);
@@ -208,12 +208,24 @@ pub fn single_points(plan: &Plan) -> Vec<u32> {
         if !single[id.0 as usize] {
             continue;
         }
-        if let Some(group) = plan.group(id) {
+        if let Some(group) = plan.group(id)
+            && let Some(network) = &group.network
+        {
+            for (at, part) in group.frontier.iter().enumerate() {
+                if !network.works(|thing| thing as usize != at) {
+                    single[part.0 as usize] = true;
+                }
+            }
+            continue;
+        }
+        if let Some(group) = plan.group(id)
+            && let Ok(diagram) = group.diagram()
+        {
             // Along the way on which all works: what fails at once there does
             // so whatever else works, since no system is hurt by a part that works.
-            let mut at = group.diagram.root();
+            let mut at = diagram.root();
             while at != FAILS && at != WORKS {
-                let b = group.diagram.nodes()[at as usize];
+                let b = diagram.nodes()[at as usize];
                 if b.fails == FAILS {
                     single[group.frontier[b.variable as usize].0 as usize] = true;
                 }

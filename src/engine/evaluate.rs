@@ -4,6 +4,7 @@
 //! so relative errors add up and never multiply; [`bound`] counts them.
 
 use super::at_least::{all, at_least};
+use super::network::{Interval, Limits};
 use super::plan::{Block, BlockId, Plan};
 use crate::number::Chance;
 
@@ -11,6 +12,35 @@ use crate::number::Chance;
 ///
 /// A thing without a chance counts as one that has failed.
 pub fn evaluate(plan: &Plan, chances: &[Chance]) -> Vec<Chance> {
+    run(plan, chances, &mut |interval, _| interval.low)
+}
+
+/// The chances of a plan's blocks, or the bounds that limits have left of them.
+#[derive(Clone, Debug)]
+pub struct Assessed {
+    /// By block. Where a limit was reached, at least as likely as this.
+    pub values: Vec<Chance>,
+    /// Where a limit was reached: by block, at most as likely as this.
+    pub high: Option<Vec<Chance>>,
+    /// Bound of the relative error of the root's smaller tail.
+    pub bound: f64,
+}
+
+/// The chances of all blocks with what is known of their errors. The system
+/// is no worse for a part that is better, so bounds of parts bound the whole.
+pub fn assess(plan: &Plan, chances: &[Chance]) -> Assessed {
+    let mut networks = Vec::new();
+    let mut limited = false;
+    let values = run(plan, chances, &mut |interval, block| {
+        networks.push((block, interval.error));
+        limited |= interval.value().is_none();
+        interval.low
+    });
+    let high = limited.then(|| run(plan, chances, &mut |interval, _| interval.high));
+    Assessed { values, high, bound: bound(plan, &networks) }
+}
+
+fn run(plan: &Plan, chances: &[Chance], pick: &mut dyn FnMut(Interval, BlockId) -> Chance) -> Vec<Chance> {
     let mut values: Vec<Chance> = Vec::with_capacity(plan.len());
     let mut inputs = Vec::new();
     for id in plan.blocks() {
@@ -32,11 +62,19 @@ pub fn evaluate(plan: &Plan, chances: &[Chance]) -> Vec<Chance> {
                 }
             }
             Block::Conditioned { on, works, failed } => of(on).choose(of(works), of(failed)),
-            Block::Diagram => match plan.group(id) {
-                Some(group) => {
+            Block::Diagram => match plan.group(id).and_then(|g| g.diagram().ok().map(|d| (g, d))) {
+                Some((group, diagram)) => {
                     inputs.clear();
                     inputs.extend(group.frontier.iter().map(|&b| of(b)));
-                    group.diagram.evaluate(&inputs)[group.diagram.root() as usize]
+                    diagram.evaluate(&inputs)[diagram.root() as usize]
+                }
+                None => Chance::HOPELESS,
+            },
+            Block::Network => match plan.group(id).and_then(|g| g.network.as_ref().map(|n| (g, n))) {
+                Some((group, network)) => {
+                    inputs.clear();
+                    inputs.extend(group.frontier.iter().map(|&b| of(b)));
+                    pick(network.frontier(&inputs, &Limits::default()), id)
                 }
                 None => Chance::HOPELESS,
             },
@@ -51,8 +89,8 @@ pub fn evaluate(plan: &Plan, chances: &[Chance]) -> Vec<Chance> {
 ///
 /// The chances of the things are taken to be good to 2^-100 themselves. It
 /// holds as long as nothing is so near 1e-300 that the low part of a number
-/// underflows.
-pub fn bound(plan: &Plan) -> f64 {
+/// underflows. `networks` are the errors that the frontier method has stated.
+fn bound(plan: &Plan, networks: &[(BlockId, f64)]) -> f64 {
     // One `and`, `or` or `choose` is at most a product, a sum and the reset of
     // the larger side; adding one member to a count is no more.
     const STEP: f64 = 4.0;
@@ -72,6 +110,10 @@ pub fn bound(plan: &Plan) -> f64 {
             }
             Block::Conditioned { on, works, failed } => of(on) + of(works).max(of(failed)) + STEP,
             Block::Diagram => plan.parts(id).iter().map(|&b| of(b) + STEP).sum(),
+            Block::Network => {
+                let own = networks.iter().find(|(block, _)| *block == id).map_or(0.0, |(_, error)| *error);
+                plan.parts(id).iter().map(|&b| of(b)).sum::<f64>() + own * 2f64.powi(100)
+            }
         };
         errors.push(error);
     }
@@ -111,7 +153,7 @@ mod tests {
                 let got = root(&plan, &chances);
                 close(got.works(), want.works(), 1e-25);
                 close(got.fails(), want.fails(), 1e-25);
-                assert!(bound(&plan) < 1e-25);
+                assert!(assess(&plan, &chances).bound < 1e-25);
             }
         }
         assert!(cases > 300 && diagrams > 300, "{cases} {diagrams}");

@@ -109,7 +109,9 @@ struct Within {
 
 fn within(plan: &Plan, id: BlockId, chances: &[Chance], nodes: usize) -> Vec<Within> {
     if let Some(group) = plan.group(id) {
-        return within_diagram(&group.diagram, chances, nodes);
+        // Without a diagram nothing is known of the parts; see Plan::diagrams.
+        let Ok(diagram) = group.diagram() else { return Vec::new() };
+        return within_diagram(diagram, chances, nodes);
     }
     let super::plan::Block::Independent { need, .. } = plan.block(id) else { return Vec::new() };
     let effects = effects(need as usize, chances);

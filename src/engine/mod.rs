@@ -12,6 +12,7 @@ pub mod importance;
 pub mod listing;
 pub mod minimal;
 pub mod modules;
+pub mod network;
 pub mod plan;
 mod planner;
 mod subsets;

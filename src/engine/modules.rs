@@ -5,8 +5,10 @@
 //! each node the dates of its first and last visit, and a node is a module
 //! when all visits of all nodes under it lie within its own first visit.
 
+use crate::system::network::Network;
 use crate::system::{Node, NodeId, Structure};
 use rustc_hash::FxHashMap;
+use std::sync::Arc;
 
 /// Stands for "not there" in tables of numbers.
 pub(super) const NONE: u32 = u32::MAX;
@@ -25,6 +27,13 @@ pub enum Kind {
         /// Range of its members in the pool.
         members: (u32, u32),
     },
+    /// A network at whose stops stand the members in this range of the pool.
+    Network {
+        /// Which network; see [`Graph::shape`].
+        shape: u32,
+        /// Range of its members in the pool.
+        members: (u32, u32),
+    },
 }
 
 /// The part of a structure under one node, tidied: numbered so that members
@@ -33,6 +42,7 @@ pub enum Kind {
 pub struct Graph {
     kinds: Vec<Kind>,
     pool: Vec<u32>,
+    shapes: Vec<Arc<Network>>,
     origin: Vec<NodeId>,
     place: Vec<u32>,
 }
@@ -60,7 +70,7 @@ impl Graph {
                     works
                 }
                 Node::Leaf(leaf) => *leaves.entry(leaf).or_insert_with(|| graph.push(Kind::Leaf(leaf), id)),
-                Node::AtLeast { need, .. } => {
+                node @ (Node::AtLeast { .. } | Node::Network { .. }) => {
                     let members = structure.members(id);
                     if let Some(&member) = members.get(next) {
                         stack.push((id, next + 1));
@@ -69,9 +79,15 @@ impl Graph {
                         }
                         continue;
                     }
-                    round += 1;
-                    met.resize(graph.kinds.len(), 0);
-                    graph.tidy(id, need, members, (&mut met, round), &mut works)
+                    match node {
+                        Node::AtLeast { need, .. } => {
+                            round += 1;
+                            met.resize(graph.kinds.len(), 0);
+                            graph.tidy(id, need, members, (&mut met, round), &mut works)
+                        }
+                        Node::Network { shape, .. } => graph.network(id, structure.shape(shape), members),
+                        Node::Works | Node::Leaf(_) => NONE,
+                    }
                 }
             };
             graph.place[id.0 as usize] = at;
@@ -83,6 +99,40 @@ impl Graph {
         self.kinds.push(kind);
         self.origin.push(origin);
         self.kinds.len() as u32 - 1
+    }
+
+    /// Adds a network all of whose members have a place; members that are one
+    /// and the same become one.
+    fn network(&mut self, id: NodeId, shape: &Arc<Network>, members: &[NodeId]) -> u32 {
+        let start = self.pool.len();
+        let mut known: FxHashMap<u32, u32> = FxHashMap::default();
+        let mut moved: Vec<u32> = Vec::with_capacity(members.len());
+        for member in members {
+            let at = self.place[member.0 as usize];
+            let next = (self.pool.len() - start) as u32;
+            let place = *known.entry(at).or_insert(next);
+            if place == next {
+                self.pool.push(at);
+            }
+            moved.push(place);
+        }
+        let mut shape = shape.clone();
+        if self.pool.len() - start < members.len() {
+            let mut network = (*shape).clone();
+            for stop in network.stops.iter_mut().flatten() {
+                *stop = moved[*stop as usize];
+            }
+            shape = Arc::new(network);
+        }
+        self.shapes.push(shape);
+        let members = (start as u32, self.pool.len() as u32);
+        self.push(Kind::Network { shape: self.shapes.len() as u32 - 1, members }, id)
+    }
+
+    /// The network of a [`Kind::Network`]; a number at its stops is a place
+    /// among the node's members.
+    pub fn shape(&self, shape: u32) -> &Arc<Network> {
+        &self.shapes[shape as usize]
     }
 
     /// Adds an "at least" node all of whose members have a place.
@@ -134,7 +184,9 @@ impl Graph {
     /// The members of a node.
     pub fn members(&self, at: u32) -> &[u32] {
         match self.kinds[at as usize] {
-            Kind::AtLeast { members: (a, b), .. } => &self.pool[a as usize..b as usize],
+            Kind::AtLeast { members: (a, b), .. } | Kind::Network { members: (a, b), .. } => {
+                &self.pool[a as usize..b as usize]
+            }
             _ => &[],
         }
     }

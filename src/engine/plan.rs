@@ -18,7 +18,9 @@
 use super::diagram::{Diagram, TooLarge};
 use super::modules::NONE;
 use super::planner;
+use crate::system::network::Network;
 use crate::system::{NodeId, Structure};
+use std::sync::{Arc, OnceLock};
 
 /// A block of a [`Plan`]. What a block rests on has smaller numbers.
 #[derive(Clone, Copy, PartialEq, Eq, PartialOrd, Ord, Hash, Debug)]
@@ -58,6 +60,8 @@ pub enum Block {
     },
     /// By the decision diagram of its group; see [`Plan::group`].
     Diagram,
+    /// By the frontier method over the network of its group.
+    Network,
 }
 
 /// What a block stands for.
@@ -72,7 +76,7 @@ pub enum Stands {
     Given(NodeId),
 }
 
-/// Parts of a system that share things.
+/// Parts of a system that share things, or that stand in a network.
 #[derive(Clone, Debug)]
 pub struct Group {
     /// The members of the structure node that the group is made of: all of
@@ -83,16 +87,34 @@ pub struct Group {
     pub frontier: Vec<BlockId>,
     /// How many times each of the frontier is used in the group.
     pub uses: Vec<u32>,
+    /// The network that the group is, where nothing stands twice in it; the
+    /// numbers at its stops are positions in the frontier.
+    pub network: Option<Arc<Network>>,
+    pub(super) diagram: OnceLock<Result<Diagram, TooLarge>>,
+    pub(super) nodes: usize,
+}
+
+impl Group {
     /// The group as a decision diagram; it exists also where the value is
-    /// computed by cases, for importance and cut sets.
-    pub diagram: Diagram,
+    /// computed in another way, for importance and cut sets. That of a network
+    /// is made when it is first asked for.
+    ///
+    /// # Errors
+    /// If it has more nodes than the plan's limit.
+    pub fn diagram(&self) -> Result<&Diagram, TooLarge> {
+        let made = self.diagram.get_or_init(|| match &self.network {
+            Some(network) => super::planner::network_diagram(network, self.nodes),
+            None => Err(TooLarge { limit: self.nodes }),
+        });
+        made.as_ref().map_err(|error| *error)
+    }
 }
 
 /// How to plan.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 pub struct Options {
-    /// The most cases that one group may be split into; more make a diagram.
-    /// With 1 every group becomes a diagram.
+    /// The most cases that one group may be split into; more make a diagram, or
+    /// go to the frontier method. With 1 no group is split.
     pub cases: usize,
     /// The most nodes of one diagram.
     pub nodes: usize,
@@ -205,6 +227,14 @@ impl Plan {
     /// The block of a thing, if it takes part in the system.
     pub fn of_leaf(&self, leaf: u32) -> Option<BlockId> {
         self.by_leaf.get(leaf as usize).copied().filter(|&at| at != NONE).map(BlockId)
+    }
+
+    /// Makes all diagrams, which importance and cut sets rest on.
+    ///
+    /// # Errors
+    /// If one of them is too large.
+    pub fn diagrams(&self) -> Result<(), TooLarge> {
+        self.groups.iter().try_for_each(|group| group.diagram().map(|_| ()))
     }
 
     /// The things that are used more than once within some group, by block.

@@ -3,12 +3,21 @@
 use super::diagram::{Builder, Diagram, TooLarge};
 use super::modules::{Graph, Kind, NONE};
 use super::plan::{Block, BlockId, Group, Options, Plan, Shell, Span, Stands};
+use crate::system::network::Network;
 use crate::system::{Node, NodeId, Structure};
+use std::cmp::Reverse;
+use std::sync::{Arc, OnceLock};
 
 /// Groups larger than this are not tried by cases: nobody would follow them.
 const CASE_NODES: usize = 2000;
 /// Nor those with more shared things than this, however the cases fall.
 const CASE_SHARED: usize = 40;
+
+/// Networks of more things than this are not tried by cases either.
+const CASE_NETWORK: usize = 24;
+/// The most nodes of a diagram that a network's value and steps are drawn
+/// from; larger ones go to the frontier method without keeping its states.
+const NETWORK_NODES: usize = 400;
 
 /// Why a group was not planned.
 enum Stop {
@@ -142,6 +151,7 @@ fn plan_tree(structure: &Structure, root: NodeId, plan: &mut Plan) -> bool {
                 plan.pool.extend(members.iter().map(|m| BlockId(m.0)));
                 Block::Independent { need, members: Span { start, end: plan.pool.len() as u32 } }
             }
+            Node::Network { .. } => break,
         };
         plan.shells.push(Shell { block, stands: Stands::Node(id), group: NONE });
         waiting[top] = id.0;
@@ -202,6 +212,10 @@ impl Planner<'_> {
                     }
                 },
                 Kind::AtLeast { need, .. } => self.node(&place, &mut groups, at, need, splits)?,
+                Kind::Network { .. } => {
+                    let local = groups.network(&place, at);
+                    self.group(local, place.stands(at), splits)?
+                }
             };
             place.block_of[at as usize] = block.0;
         }
@@ -266,10 +280,16 @@ impl Planner<'_> {
         if let Stands::Given(_) = stands {
             return self.condition(&local, &uses, stands, splits);
         }
-        let diagram = diagram(&local, self.options.nodes)?;
+        let nodes = self.options.nodes;
+        let network = only_network(&local, &uses);
+        let made = OnceLock::new();
+        if network.is_none() {
+            let _ = made.set(Ok(diagram(&local, nodes)?));
+        }
         let shared = uses.iter().filter(|&&u| u > 1).count();
         let mut block = None;
-        if local.structure.len() <= CASE_NODES && shared <= CASE_SHARED && self.options.cases > 1 {
+        let few = network.is_none() || local.frontier.len() <= CASE_NETWORK;
+        if few && local.structure.len() <= CASE_NODES && shared <= CASE_SHARED && self.options.cases > 1 {
             let mark = (self.plan.shells.len(), self.plan.pool.len());
             let mut splits = self.options.cases - 1;
             match self.condition(&local, &uses, stands, &mut splits) {
@@ -281,14 +301,27 @@ impl Planner<'_> {
                 Err(error) => return Err(error),
             }
         }
-        let block = block.unwrap_or_else(|| self.push(Block::Diagram, stands));
+        let block = block.unwrap_or_else(|| {
+            let small = network.as_ref().map(|network| network_diagram(network, NETWORK_NODES.min(nodes)));
+            let block = match small {
+                Some(Err(_)) => Block::Network,
+                Some(small) => {
+                    let _ = made.set(small);
+                    Block::Diagram
+                }
+                None => Block::Diagram,
+            };
+            self.push(block, stands)
+        });
         self.plan.shells[block.0 as usize].group = self.plan.groups.len() as u32;
         let Local { members, frontier, .. } = local;
-        self.plan.groups.push(Group { members, frontier, uses, diagram });
+        self.plan.groups.push(Group { members, frontier, uses, network, diagram: made, nodes });
         Ok(block)
     }
 
     /// Splits a group over the thing that it uses most, the first of equals.
+    /// Where nothing is used twice it is the thing in a network that leaves
+    /// the least of it.
     fn condition(
         &mut self,
         local: &Local,
@@ -298,7 +331,12 @@ impl Planner<'_> {
     ) -> Result<BlockId, Stop> {
         *splits = splits.checked_sub(1).ok_or(Stop::TooManyCases)?;
         let most = uses.iter().copied().max().unwrap_or(0);
-        let pivot = uses.iter().position(|&u| u == most).unwrap_or(0) as u32;
+        let pivot = match most {
+            0 | 1 => {
+                (0..local.frontier.len() as u32).min_by_key(|&pivot| left_over(local, pivot)).unwrap_or(0)
+            }
+            _ => uses.iter().position(|&u| u == most).unwrap_or(0) as u32,
+        };
         let works = self.case(local, pivot, true, splits)?;
         let failed = self.case(local, pivot, false, splits)?;
         let on = local.frontier[pivot as usize];
@@ -370,11 +408,25 @@ fn reduce(local: &Local, pivot: u32, works: bool) -> Left {
                     Now::Is(structure.at_least(need as u32, &left))
                 }
             }
+            Node::Network { shape, .. } => {
+                let members: Vec<Result<NodeId, bool>> = old
+                    .members(id)
+                    .iter()
+                    .map(|m| match now[m.0 as usize] {
+                        Now::Works => Err(true),
+                        Now::Fails => Err(false),
+                        Now::Is(node) => Ok(node),
+                    })
+                    .collect();
+                match structure.network_left(old.shape(shape), &members) {
+                    Ok(node) => Now::Is(node),
+                    Err(true) => Now::Works,
+                    Err(false) => Now::Fails,
+                }
+            }
         };
-        if let Now::Is(_) = value {
-            // A node of one member is that member and adds none.
-            origin.resize(structure.len(), local.origin[id.0 as usize]);
-        }
+        // A node of one member is that member and adds none; a network may add many.
+        origin.resize(structure.len(), local.origin[id.0 as usize]);
         now.push(value);
     }
     match now[local.root.0 as usize] {
@@ -391,10 +443,16 @@ fn uses(structure: &Structure, root: NodeId, frontier: usize) -> Vec<u32> {
     live[root.0 as usize] = true;
     for id in (0..=root.0).rev().map(NodeId) {
         if live[id.0 as usize] {
-            for &member in structure.members(id) {
+            let stands = |at: usize| match structure.node(id) {
+                Node::Network { shape, .. } => {
+                    structure.shape(shape).stops.iter().filter(|s| **s == Some(at as u32)).count() as u32
+                }
+                _ => 1,
+            };
+            for (at, &member) in structure.members(id).iter().enumerate() {
                 live[member.0 as usize] = true;
                 if let Node::Leaf(leaf) = structure.node(member) {
-                    uses[leaf as usize] += 1;
+                    uses[leaf as usize] += stands(at);
                 }
             }
         }
@@ -415,9 +473,64 @@ fn diagram(local: &Local, limit: usize) -> Result<Diagram, TooLarge> {
                 members.extend(local.structure.members(id).iter().map(|m| made[m.0 as usize]));
                 builder.at_least(need as usize, &members)?
             }
+            Node::Network { shape, .. } => {
+                let members = local.structure.members(id);
+                let of = |at: u32| made[members[at as usize].0 as usize];
+                local.structure.shape(shape).diagram(&mut builder, of, limit)?
+            }
         });
     }
     Ok(builder.finish(made[local.root.0 as usize]))
+}
+
+/// The diagram of a network whose things are the variables.
+pub(super) fn network_diagram(network: &Network, limit: usize) -> Result<Diagram, TooLarge> {
+    let mut builder = Builder::new(limit);
+    let things = network.stops.iter().flatten().max().map_or(0, |&most| most + 1);
+    let variables = (0..things).map(|v| builder.variable(v)).collect::<Result<Vec<u32>, TooLarge>>()?;
+    let root = network.diagram(&mut builder, |thing| variables[thing as usize], limit)?;
+    Ok(builder.finish(root))
+}
+
+/// The network that a group is, over its frontier, if it is one and nothing
+/// stands in it twice.
+fn only_network(local: &Local, uses: &[u32]) -> Option<Arc<Network>> {
+    let Node::Network { shape, .. } = local.structure.node(local.root) else { return None };
+    if uses.iter().any(|&u| u > 1) {
+        return None;
+    }
+    let members = local.structure.members(local.root);
+    let mut network = (**local.structure.shape(shape)).clone();
+    for stop in network.stops.iter_mut().flatten() {
+        let Node::Leaf(leaf) = local.structure.node(members[*stop as usize]) else { return None };
+        *stop = leaf;
+    }
+    Some(Arc::new(network))
+}
+
+/// How many stops of networks both cases of a thing leave; of equals the one
+/// with the most links comes first: a cross link, as it is done by hand.
+fn left_over(local: &Local, pivot: u32) -> (usize, Reverse<usize>) {
+    let mut links = 0;
+    for id in (0..local.structure.len() as u32).map(NodeId) {
+        let Node::Network { shape, .. } = local.structure.node(id) else { continue };
+        let (network, members) = (local.structure.shape(shape), local.structure.members(id));
+        let here = |stop: u32| {
+            network.stops[stop as usize]
+                .is_some_and(|at| local.structure.node(members[at as usize]) == Node::Leaf(pivot))
+        };
+        links += network.links.iter().filter(|(a, b)| here(*a) || here(*b)).count();
+    }
+    let stops = |works| match reduce(local, pivot, works) {
+        Left::Node { structure, .. } => (0..structure.len() as u32)
+            .map(|id| match structure.node(NodeId(id)) {
+                Node::Network { shape, .. } => structure.shape(shape).stops.len(),
+                _ => 0,
+            })
+            .sum(),
+        Left::Works | Left::Fails => 0,
+    };
+    (stops(true) + stops(false), Reverse(links))
 }
 
 /// Splits the members of nodes by what they share. The nodes between a module
@@ -485,6 +598,28 @@ impl Grouping {
     /// A node's own leaves are taken before its other members: in a deep nest
     /// the diagram then grows from the inside out, each level in one step.
     fn local(&mut self, place: &Place<'_>, need: u32, members: &[u32], at: u32) -> Local {
+        let mut local = self.members(place, members, at);
+        let tops: Vec<NodeId> = members.iter().map(|&m| NodeId(self.local[m as usize])).collect();
+        local.root = local.structure.at_least(need, &tops);
+        local.origin.resize(local.structure.len(), place.node(at));
+        local
+    }
+
+    /// A network down to the next modules, on its own. Its members are taken in
+    /// the order of the frontier method.
+    fn network(&mut self, place: &Place<'_>, at: u32) -> Local {
+        let members = place.graph.members(at);
+        let mut local = self.members(place, &swept(place.graph, at), at);
+        let tops: Vec<NodeId> = members.iter().map(|&m| NodeId(self.local[m as usize])).collect();
+        if let Kind::Network { shape, .. } = place.graph.kind(at) {
+            local.root = local.structure.shaped(place.graph.shape(shape).clone(), &tops);
+        }
+        local.origin.resize(local.structure.len(), place.node(at));
+        local
+    }
+
+    /// All that lies under some members, down to the next modules.
+    fn members(&mut self, place: &Place<'_>, members: &[u32], at: u32) -> Local {
         let mut structure = Structure::default();
         let mut origin = Vec::new();
         let mut frontier = Vec::new();
@@ -494,7 +629,11 @@ impl Grouping {
             [leaves, others].concat()
         };
         // A visit is entered once to send its members ahead, then left.
-        let mut stack: Vec<(u32, bool)> = ordered(members).into_iter().rev().map(|m| (m, false)).collect();
+        let first = match place.graph.kind(at) {
+            Kind::Network { .. } => members.to_vec(),
+            _ => ordered(members),
+        };
+        let mut stack: Vec<(u32, bool)> = first.into_iter().rev().map(|m| (m, false)).collect();
         let mut inner = Vec::new();
         while let Some((node, ready)) = stack.pop() {
             if self.local[node as usize] != NONE {
@@ -505,8 +644,17 @@ impl Grouping {
                 frontier.push(BlockId(place.block_of[node as usize]));
             } else if !ready {
                 stack.push((node, true));
-                stack.extend(ordered(place.graph.members(node)).into_iter().rev().map(|m| (m, false)));
+                let below = match place.graph.kind(node) {
+                    Kind::Network { .. } => swept(place.graph, node),
+                    _ => ordered(place.graph.members(node)),
+                };
+                stack.extend(below.into_iter().rev().map(|m| (m, false)));
                 continue;
+            } else if let Kind::Network { shape, .. } = place.graph.kind(node) {
+                inner.clear();
+                let members = place.graph.members(node);
+                inner.extend(members.iter().map(|&m| NodeId(self.local[m as usize])));
+                self.local[node as usize] = structure.shaped(place.graph.shape(shape).clone(), &inner).0;
             } else if let Kind::AtLeast { need, .. } = place.graph.kind(node) {
                 inner.clear();
                 let members = place.graph.members(node);
@@ -515,12 +663,25 @@ impl Grouping {
             }
             origin.resize(structure.len(), place.node(node));
         }
-        let tops: Vec<NodeId> = members.iter().map(|&m| NodeId(self.local[m as usize])).collect();
-        let root = structure.at_least(need, &tops);
-        origin.resize(structure.len(), place.node(at));
         let members = members.iter().map(|&m| place.node(m)).collect();
-        Local { structure, origin, root, members, frontier }
+        Local { structure, origin, root: NodeId(0), members, frontier }
     }
+}
+
+/// The members of a network in the order of the frontier method, with those
+/// last that it need not decide.
+fn swept(graph: &Graph, at: u32) -> Vec<u32> {
+    let members = graph.members(at);
+    let Kind::Network { shape, .. } = graph.kind(at) else { return members.to_vec() };
+    let mut left = vec![true; members.len()];
+    let mut order: Vec<u32> = Vec::with_capacity(members.len());
+    for place in graph.shape(shape).order() {
+        if std::mem::replace(&mut left[place as usize], false) {
+            order.push(members[place as usize]);
+        }
+    }
+    order.extend(members.iter().zip(&left).filter(|(_, left)| **left).map(|(&m, _)| m));
+    order
 }
 
 #[cfg(test)]

@@ -91,6 +91,10 @@ pub(super) fn works(s: &Structure, root: NodeId, up: u32) -> bool {
                 let working = s.members(id).iter().filter(|m| values[m.0 as usize]).count();
                 working >= need as usize
             }
+            Node::Network { shape, .. } => {
+                let members = s.members(id);
+                s.shape(shape).works(|at| values[members[at as usize].0 as usize])
+            }
         });
     }
     values[root.0 as usize]

@@ -57,7 +57,12 @@ impl Reader<'_> {
     fn is_thing(&self, value: ExprId) -> bool {
         matches!(
             self.tree.expr(self.tree.inside_groups(value)),
-            Expr::Series(_) | Expr::Parallel(_) | Expr::AtLeast(..) | Expr::FailsWhen(_) | Expr::Mixed(_)
+            Expr::Series(_)
+                | Expr::Parallel(_)
+                | Expr::AtLeast(..)
+                | Expr::FailsWhen(_)
+                | Expr::Mixed(_)
+                | Expr::Routes(_)
         )
     }
 

@@ -6,6 +6,7 @@
 //! readings it may have.
 
 use super::chain::Chain;
+use super::routes::Ways;
 use super::token::{Tok, Token};
 use super::tree::*;
 use super::words;
@@ -13,7 +14,7 @@ use crate::source::{Code, Problem, Span};
 use smallvec::{SmallVec, smallvec};
 
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
-enum Ar {
+pub(super) enum Ar {
     Op(ArithOp),
     Negate,
 }
@@ -42,19 +43,21 @@ enum Prefix {
 
 /// What opened a level.
 #[derive(Debug)]
-enum Opened {
+pub(super) enum Opened {
     Root,
     Paren,
     /// `2 of (`
     List(Need, Span),
     /// `R(`
     Call(Sym),
+    /// `routes(`
+    Routes(Ways),
 }
 
 #[derive(Debug)]
-struct Level {
-    opened: Opened,
-    at: Span,
+pub(super) struct Level {
+    pub(super) opened: Opened,
+    pub(super) at: Span,
     /// Inside `fails when`, where `and`, `or` and `k of` speak of failures.
     failing: bool,
     fails_when: Option<Span>,
@@ -62,10 +65,10 @@ struct Level {
     choice: Option<(Sym, Span)>,
     /// Finished entries of a list or arguments of a call.
     entries: SmallVec<[ExprId; 4]>,
-    items: SmallVec<[ExprId; 4]>,
-    chain: SmallVec<[Chain; 4]>,
-    operands: SmallVec<[ExprId; 4]>,
-    operators: SmallVec<[Ar; 4]>,
+    pub(super) items: SmallVec<[ExprId; 4]>,
+    pub(super) chain: SmallVec<[Chain; 4]>,
+    pub(super) operands: SmallVec<[ExprId; 4]>,
+    pub(super) operators: SmallVec<[Ar; 4]>,
     prefixes: SmallVec<[Prefix; 1]>,
 }
 
@@ -74,7 +77,7 @@ struct Level {
 type Levels = SmallVec<[Level; 1]>;
 
 impl Level {
-    fn new(opened: Opened, at: Span, failing: bool) -> Level {
+    pub(super) fn new(opened: Opened, at: Span, failing: bool) -> Level {
         Level {
             opened,
             at,
@@ -158,7 +161,8 @@ impl Reader<'_> {
                 format!("the line ends where {wanted} should stand"),
             )
             .mend(format!("add {wanted}, or take away what is left open")),
-            Some(Tok::Both) => later(place, "`<->`"),
+            Some(Tok::Both) => Problem::error(Code::UnexpectedToken, place, "`<->` stands in `routes` only")
+                .mend("write `routes(in -> A -> out, in -> B -> out, A <-> B)`"),
             Some(tok) => {
                 let what = self.describe(tok);
                 Problem::error(Code::UnexpectedToken, place, format!("{what} stands where {wanted} should"))
@@ -201,7 +205,11 @@ impl Reader<'_> {
             loop {
                 let depth = levels.len();
                 let level = &mut levels[depth - 1];
-                if self.operator(level)? {
+                let goes_on = match level.opened {
+                    Opened::Routes(_) => self.link(level)?,
+                    _ => self.operator(level)?,
+                };
+                if goes_on {
                     break;
                 }
                 match self.peek() {
@@ -216,6 +224,7 @@ impl Reader<'_> {
                         self.at += 1;
                         let level = levels.pop().expect("depth is above one");
                         let done = self.close(level, close)?;
+                        self.ends(done, &levels[depth - 2])?;
                         self.finish_operand(&mut levels[depth - 2], done)?;
                     }
                     _ if depth == 1 => return self.finish_entry(&mut levels[0]),
@@ -370,7 +379,18 @@ impl Reader<'_> {
                 level.prefixes.push(Prefix::Article(span));
                 return Ok(false);
             }
-            "else" | "with" | "routes" => return Err(Box::new(later(span, &format!("`{text}`")))),
+            "routes" => {
+                let opened = self.open_routes(span)?;
+                levels.push(opened);
+                return Ok(false);
+            }
+            "in" | "out" if matches!(level.opened, Opened::Routes(_)) => {
+                self.at += 1;
+                let terminal = self.tree.add(Expr::Terminal(text == "in"), span);
+                self.finish_operand(level, terminal)?;
+                return Ok(true);
+            }
+            "else" | "with" => return Err(Box::new(later(span, &format!("`{text}`")))),
             "" => {}
             // `total(feed, mass)`: attribute words are arguments of questions.
             _ if matches!(level.opened, Opened::Call(_))
@@ -581,7 +601,7 @@ impl Reader<'_> {
             Some(Tok::Caret) => return Ok(self.arith(level, ArithOp::Pow)),
             Some(Tok::Arrow) => Chain::Series,
             Some(Tok::Bars) => Chain::Parallel,
-            Some(Tok::Both) => return Err(Box::new(later(span, "`<->`"))),
+            Some(Tok::Both) => return Err(self.unexpected("`->` or `//`")),
             _ => match self.word(0) {
                 Some("and") => Chain::And,
                 Some("or") => Chain::Or,
@@ -695,6 +715,9 @@ impl Reader<'_> {
 
     /// A level whose `)` has come.
     fn close(&mut self, mut level: Level, close: Span) -> Read<ExprId> {
+        if let Opened::Routes(_) = level.opened {
+            return self.close_routes(level, close);
+        }
         let span = level.at.to(close);
         let empty = level.at_start() && level.chain.is_empty();
         if !(empty && level.entries.is_empty()) {
@@ -714,6 +737,7 @@ impl Reader<'_> {
                 let list = self.tree.add_list(&level.entries);
                 self.tree.add(Expr::Call(word, list), span)
             }
+            Opened::Routes(_) => self.tree.add(Expr::Broken, span),
         })
     }
 }

@@ -16,6 +16,7 @@ mod line;
 mod literal;
 mod print;
 mod read;
+mod routes;
 mod shape;
 mod token;
 mod tree;

@@ -98,6 +98,8 @@ fn pieces(tree: &Tree, id: ExprId, digits: &dyn Fn(crate::source::Span) -> Strin
         }
         Expr::Series(list) => joined(tree, list, " -> "),
         Expr::Parallel(list) => joined(tree, list, " // "),
+        Expr::Routes(id) => routes(tree, &tree.routes[id as usize]),
+        Expr::Terminal(start) => vec![text(if start { "in" } else { "out" })],
         Expr::And(list) => joined(tree, list, " and "),
         Expr::Or(list) => joined(tree, list, " or "),
         Expr::AtLeast(need, list) => at_least(tree, need, list),
@@ -136,6 +138,26 @@ fn pieces(tree: &Tree, id: ExprId, digits: &dyn Fn(crate::source::Span) -> Strin
         },
         Expr::Broken => vec![text("…")],
     }
+}
+
+fn routes(tree: &Tree, routes: &Routes) -> Vec<Piece> {
+    let mut out = vec![text("routes(")];
+    let stops = tree.list(routes.stops);
+    for (i, (stop, link)) in stops.iter().zip(&routes.links).enumerate() {
+        out.push(Piece::Node(*stop));
+        match link {
+            Link::Forth => out.push(text(" -> ")),
+            Link::Both => out.push(text(" <-> ")),
+            Link::End if i + 1 < stops.len() => out.push(text(", ")),
+            Link::End => {}
+        }
+    }
+    out.push(text(")"));
+    if let Some((need, list)) = routes.ends {
+        out.push(text(" with ends "));
+        out.extend(at_least(tree, need, list));
+    }
+    out
 }
 
 fn at_least(tree: &Tree, need: Need, list: List) -> Vec<Piece> {

@@ -133,6 +133,28 @@ pub struct Settles {
     pub separate: Vec<(Sym, Span)>,
 }
 
+/// `routes(in -> A -> out, A <-> B) with ends all of (L1, L2)`
+#[derive(Clone, PartialEq, Eq, Debug, Default)]
+pub struct Routes {
+    /// All stops as written, way by way.
+    pub stops: List,
+    /// For each stop, how it leads to the next of its way.
+    pub links: Vec<Link>,
+    /// `ends`, with how many of which.
+    pub ends: Option<(Need, List)>,
+}
+
+/// What stands between a stop of a way and the next.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum Link {
+    /// `->`
+    Forth,
+    /// `<->`
+    Both,
+    /// The way ends here.
+    End,
+}
+
 /// A line that mixes kinds of operator: the readings it may have.
 #[derive(Clone, PartialEq, Eq, Debug)]
 pub struct Mixed {
@@ -171,6 +193,10 @@ pub enum Expr {
     Settled(ExprId, u32),
     /// `fails when …`
     FailsWhen(ExprId),
+    /// `routes(in -> A -> out)`; a number into [`Tree::routes`].
+    Routes(u32),
+    /// `in` in `routes`: true; `out`: false.
+    Terminal(bool),
     /// `E1 and E2`
     And(List),
     /// `E1 or E2`
@@ -302,6 +328,8 @@ pub struct Tree {
     pub clauses: Vec<Clause>,
     /// `sharing` and `separate` lists.
     pub settles: Vec<Settles>,
+    /// Networks.
+    pub routes: Vec<Routes>,
     /// Lines that mix operators.
     pub mixed: Vec<Mixed>,
     /// Lines in the order they were read.

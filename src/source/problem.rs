@@ -199,6 +199,8 @@ codes! {
     OutsideRange = "outside-range",
     /// `k of n` with k greater than n, or less than one.
     ImpossibleCount = "impossible-count",
+    /// `routes` that make no network, or stops that lie on no way.
+    WrongRoutes = "wrong-routes",
     /// Data that contradict each other on one item.
     ContradictoryData = "contradictory-data",
     /// An item without any data of failure.

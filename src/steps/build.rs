@@ -9,7 +9,7 @@ use crate::language::words::ClauseWord;
 use crate::language::{Expr, ExprId, Suffix};
 use crate::number::{Chance, Real};
 use crate::source::Span;
-use crate::system::{Base, Exposure, Item, Model, NodeId, Pace, Part, Quantity, System};
+use crate::system::{Base, Exposure, Item, Model, Node, NodeId, Pace, Part, Quantity, System};
 use rustc_hash::{FxHashMap, FxHashSet};
 
 /// Members of an unlike k of n whose states are written out one by one.
@@ -42,6 +42,8 @@ struct Writer<'w, 'a> {
     /// Blocks of things that stand in several places: each has a step of its
     /// own, since the steps on its two states name it alone.
     own: FxHashSet<BlockId>,
+    /// Nodes that a network was reduced to, below its topmost.
+    inner: FxHashSet<NodeId>,
 }
 
 /// Adds the steps of a system to `list`; gives what each main block comes to.
@@ -73,6 +75,7 @@ pub fn write(
         blocks: vec![None; plan.len()],
         under,
         own: plan.shared().into_iter().collect(),
+        inner: inner_nodes(model, system),
     };
     for id in plan.blocks() {
         if !plan.is_case(id) {
@@ -128,6 +131,7 @@ impl Writer<'_, '_> {
                 self.case(id, &name, place, &mut Vec::new())
             }
             Block::Diagram => self.diagram(id),
+            Block::Network => self.network(id),
         }
     }
 
@@ -156,14 +160,44 @@ impl Writer<'_, '_> {
         if let Some(name) = self.model.node_name(self.system, node) {
             return name;
         }
-        if let crate::system::Node::Leaf(leaf) = self.system.structure.node(node) {
+        if let Node::Leaf(leaf) = self.system.structure.node(node) {
             return self.model.leaf_name(&self.system.leaves[leaf as usize]);
+        }
+        if self.inner.contains(&node) {
+            return self.spelled(node);
         }
         let text = match self.system.places.get(node.0 as usize).copied().flatten() {
             Some(expr) => self.model.start_of_text(expr, 4 * NAME),
             None => "the whole".to_string(),
         };
         shortened(&text)
+    }
+
+    /// A name from the members of a node that a network was reduced to.
+    fn spelled(&self, node: NodeId) -> String {
+        let members = self.system.structure.members(node);
+        let named = members.iter().map(|m| {
+            let nested = self.inner.contains(m) && self.system.structure.members(*m).len() > 1;
+            (self.node_name(*m), nested)
+        });
+        match self.system.structure.node(node) {
+            Node::AtLeast { need, .. } => joined(need as usize, members.len(), named),
+            _ => shortened(&format!("network of {}", row(named.map(|(name, _)| name), ", "))),
+        }
+    }
+
+    /// The same for a block of a network under conditions; recursion is as
+    /// deep as the cases and the text allow.
+    fn spelled_block(&self, id: BlockId) -> String {
+        let members = self.plan.members(id);
+        let named = members.iter().map(|&m| match self.plan.block(m) {
+            Block::Independent { .. } if self.plan.is_case(m) => (self.spelled_block(m), true),
+            _ => (self.about(m).0, false),
+        });
+        match self.plan.block(id) {
+            Block::Independent { need, .. } => joined(need as usize, members.len(), named),
+            _ => self.about(id).0,
+        }
     }
 
     fn node_place(&self, node: NodeId) -> Option<Span> {
@@ -433,7 +467,12 @@ impl Writer<'_, '_> {
                     let members: Vec<BlockId> = self.plan.members(id).to_vec();
                     let operands: Vec<Operand> =
                         members.into_iter().map(|m| self.case(m, base, place, given)).collect();
-                    let (own, own_place) = self.about(id);
+                    let (mut own, own_place) = self.about(id);
+                    if let Stands::Given(node) = self.plan.stands(id)
+                        && matches!(self.system.structure.node(node), Node::Network { .. })
+                    {
+                        own = self.spelled_block(id);
+                    }
                     let condition = given.join(", ");
                     let name = format!("{own}, given {condition}");
                     return self.vote(
@@ -446,7 +485,7 @@ impl Writer<'_, '_> {
                 }
                 Block::Works => return Operand::Works,
                 Block::Fails => return Operand::Fails,
-                Block::Leaf(_) | Block::Diagram => {}
+                Block::Leaf(_) | Block::Diagram | Block::Network => {}
             }
         }
         self.operand(id)
@@ -501,19 +540,47 @@ impl Writer<'_, '_> {
         tails.1.evaluate(&self.results).0 < tails.0.evaluate(&self.results).0
     }
 
+    /// One step for a network whose states are too many to be shown.
+    fn network(&mut self, id: BlockId) -> Operand {
+        let (name, place) = self.about(id);
+        let Some(group) = self.plan.group(id) else { return Operand::Fails };
+        let Some(network) = group.network.clone() else { return Operand::Fails };
+        let mut members = Vec::with_capacity(group.frontier.len());
+        for part in &group.frontier {
+            // What cannot fail, or cannot work, stands at no stop of a network.
+            let Operand::Step(step) = self.operand(*part) else { return Operand::Fails };
+            members.push(step);
+        }
+        self.list.remarks.push(format!(
+            "{name} has too many states to be written out: the frontier method sums them in one step"
+        ));
+        let of = |side| Formula::Network(network.clone(), members.clone(), side);
+        let tails = (of(Side::Works), of(Side::Fails));
+        let shown = if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
+        Operand::Step(self.add(format!("network {}", id.0), name, place, Rule::Network, tails, shown))
+    }
+
     /// One step for each node of a diagram, from the ends up.
     fn diagram(&mut self, id: BlockId) -> Operand {
         let (name, place) = self.about(id);
         let Some(group) = self.plan.group(id) else { return Operand::Fails };
         let frontier: Vec<Operand> = group.frontier.iter().map(|b| self.operand(*b)).collect();
         let variables: Vec<String> = group.frontier.iter().map(|b| self.about(*b).0).collect();
-        let branches: Vec<diagram::Branch> = group.diagram.nodes().to_vec();
-        let root = group.diagram.root() as usize;
+        let Ok(found) = group.diagram() else { return Operand::Fails };
+        let branches: Vec<diagram::Branch> = found.nodes().to_vec();
+        let root = found.root() as usize;
         let mut done: Vec<Operand> = Vec::with_capacity(branches.len());
-        self.list.remarks.push(format!(
-            "{name} shares too much to be written in a few cases: its steps are the {} nodes of a decision diagram",
-            branches.len().saturating_sub(2)
-        ));
+        let count = branches.len().saturating_sub(2);
+        let (rule, remark) = if group.network.is_some() {
+            let what = format!(
+                "needs more than a few cases: its steps are the {count} states of the frontier method"
+            );
+            (Rule::NetworkState, what)
+        } else {
+            let what = "shares too much to be written in a few cases";
+            (Rule::DiagramNode, format!("{what}: its steps are the {count} nodes of a decision diagram"))
+        };
+        self.list.remarks.push(format!("{name} {remark}"));
         for (at, branch) in branches.iter().enumerate() {
             let operand = match at as u32 {
                 diagram::FAILS => Operand::Fails,
@@ -533,7 +600,7 @@ impl Writer<'_, '_> {
                             let shown =
                                 if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
                             let key = format!("{} node {} {at}", self.list.ledger.systems, id.0);
-                            Operand::Step(self.add(key, own, place, Rule::DiagramNode, tails, shown))
+                            Operand::Step(self.add(key, own, place, rule, tails, shown))
                         }
                     }
                 }
@@ -542,6 +609,46 @@ impl Writer<'_, '_> {
         }
         done.get(root).copied().unwrap_or(Operand::Fails)
     }
+}
+
+/// Names joined by how many of them must work.
+fn joined(need: usize, count: usize, named: impl Iterator<Item = (String, bool)>) -> String {
+    let named = named.map(|(name, nested)| if nested { format!("({name})") } else { name });
+    if need == count {
+        shortened(&row(named, " -> "))
+    } else if need == 1 {
+        shortened(&row(named, " // "))
+    } else {
+        shortened(&format!("{need} of ({})", row(named, ", ")))
+    }
+}
+
+/// As many of the names as a name has room for.
+fn row(names: impl Iterator<Item = String>, between: &str) -> String {
+    let mut text = String::new();
+    for name in names {
+        if !text.is_empty() {
+            text.push_str(between);
+        }
+        text.push_str(&name);
+        if text.len() > 4 * NAME {
+            break;
+        }
+    }
+    text
+}
+
+/// Nodes that a network was reduced to and that stand below another such.
+fn inner_nodes(model: &Model<'_>, system: &System) -> FxHashSet<NodeId> {
+    let place = |node: NodeId| system.places.get(node.0 as usize).copied().flatten();
+    let mut inner = FxHashSet::default();
+    for node in (0..system.structure.len() as u32).map(NodeId) {
+        let Some(expr) = place(node).filter(|expr| matches!(model.tree.expr(*expr), Expr::Routes(_))) else {
+            continue;
+        };
+        inner.extend(system.structure.members(node).iter().copied().filter(|m| place(*m) == Some(expr)));
+    }
+    inner
 }
 
 /// R(x) · side(up) + F(x) · side(down), without the terms that are 0.

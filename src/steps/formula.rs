@@ -5,7 +5,10 @@
 //! has them, so that `1 - x` never loses digits of a probability.
 
 use crate::engine::at_least;
+use crate::engine::network::Limits;
 use crate::number::{Chance, Real};
+use crate::system::network::Network;
+use std::sync::Arc;
 
 /// Which tail of a step's result a formula uses.
 #[derive(Clone, Copy, PartialEq, Eq, Hash, Debug)]
@@ -74,6 +77,9 @@ pub enum Formula {
     Function(&'static str, Vec<Formula>),
     /// P(at least k of these independent things work), `Works`; its complement, `Fails`.
     AtLeast(u32, Vec<usize>, Side),
+    /// P(enough ends of a network are reached), `Works`; its complement, `Fails`.
+    /// The number at a stop is a place in this list of steps.
+    Network(Arc<Network>, Vec<usize>, Side),
 }
 
 /// Both tails of a formula's value; the second is known where the formula has it.
@@ -134,11 +140,11 @@ impl Formula {
             }
             Formula::AtLeast(need, members, side) => {
                 let chances: Vec<Chance> = members.iter().map(|m| results[*m]).collect();
-                let chance = at_least::at_least(*need as usize, &chances);
-                match side {
-                    Side::Works => (chance.works(), Some(chance.fails())),
-                    Side::Fails => (chance.fails(), Some(chance.works())),
-                }
+                tails(at_least::at_least(*need as usize, &chances), *side)
+            }
+            Formula::Network(network, members, side) => {
+                let chances: Vec<Chance> = members.iter().map(|m| results[*m]).collect();
+                tails(network.frontier(&chances, &Limits::default()).middle(), *side)
             }
         }
     }
@@ -176,7 +182,8 @@ impl Formula {
             | Formula::Whole(_)
             | Formula::Choose(..)
             | Formula::Step(..)
-            | Formula::AtLeast(..) => {}
+            | Formula::AtLeast(..)
+            | Formula::Network(..) => {}
             Formula::Sum(list) | Formula::Product(list) | Formula::Function(_, list) => {
                 list.iter().for_each(|f| f.collect_data(found));
             }
@@ -199,8 +206,15 @@ impl Formula {
             }
             Formula::OneMinus(a) | Formula::ExpMinus(a) | Formula::Negate(a) => a.collect(found),
             Formula::Function(_, args) => args.iter().for_each(|f| f.collect(found)),
-            Formula::AtLeast(_, members, _) => found.extend(members),
+            Formula::AtLeast(_, members, _) | Formula::Network(_, members, _) => found.extend(members),
         }
+    }
+}
+
+fn tails(chance: Chance, side: Side) -> Tails {
+    match side {
+        Side::Works => (chance.works(), Some(chance.fails())),
+        Side::Fails => (chance.fails(), Some(chance.works())),
     }
 }
 

@@ -29,6 +29,10 @@ pub enum Rule {
     TotalProbability,
     /// A node of a decision diagram.
     DiagramNode,
+    /// A state of a network on the frontier of what is decided.
+    NetworkState,
+    /// A network of too many states to be shown.
+    Network,
     /// Arithmetic that the note asks for.
     Arithmetic,
     /// A measure of importance.
@@ -49,6 +53,8 @@ impl Rule {
             Rule::UnlikeVote => "k of n, unlike members",
             Rule::TotalProbability => "total probability",
             Rule::DiagramNode => "diagram node",
+            Rule::NetworkState => "state of a network",
+            Rule::Network => "frontier method",
             Rule::Arithmetic => "arithmetic",
             Rule::Importance => "importance",
         }
@@ -68,6 +74,9 @@ impl Rule {
                 "Barlow and Proschan, Statistical Theory of Reliability (1975), pivotal decomposition"
             }
             Rule::Importance => "Birnbaum (1969); Rausand and Hoyland, System Reliability Theory, ch. 5",
+            Rule::NetworkState | Rule::Network => {
+                "Carlier and Lucet, Discrete Applied Mathematics 65 (1996); Hardy, Lucet and Limnios, IEEE Trans. Reliability 56 (2007)"
+            }
             Rule::DiagramNode => "Bryant, IEEE Trans. Computers C-35 (1986); Rauzy (1993)",
         }
     }

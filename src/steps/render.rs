@@ -4,6 +4,7 @@ use super::formula::{Formula, Side};
 use super::list::{Outcome, Rule, Step, StepList};
 use crate::number::{Chance, format_fails, format_number, format_works};
 use crate::source::Sources;
+use crate::system::network::Network;
 
 /// Relative error that a step's printed digits allow for; the engine's is far smaller.
 const BOUND: f64 = 1e-25;
@@ -142,6 +143,7 @@ impl Renderer<'_> {
                 (format!("{name}({})", self.joined(args, ", ", 0, usize::MAX)), POWER + 1)
             }
             Formula::AtLeast(need, members, side) => (self.at_least(*need, members, *side), POWER + 1),
+            Formula::Network(network, members, side) => (self.network(network, members, *side), POWER + 1),
         };
         let less = matches!(formula, Formula::OneMinus(_)) || text.starts_with("1 - ");
         if own < around || (own == around && own == SUM && less) { format!("({text})") } else { text }
@@ -174,6 +176,25 @@ impl Renderer<'_> {
     /// `1 - 6.4e-93` among factors needs parentheses.
     fn step_binding(&self, step: usize, side: Side) -> u8 {
         if self.step(step, side).contains(" - ") && self.numbers { SUM } else { POWER + 1 }
+    }
+
+    fn network(&self, network: &Network, members: &[usize], side: Side) -> String {
+        let names: Vec<String> = members.iter().map(|m| self.step(*m, Side::Works)).collect();
+        let n = names.len();
+        let of = if n <= FACTORS {
+            names.join(", ")
+        } else {
+            format!("{}, … ({} more), {}", names[..ENDS].join(", "), n - ENDS - 1, names[n - 1])
+        };
+        let what = match (network.ends.len(), network.need) {
+            (1, _) => "a way leads".to_string(),
+            (ends, need) if ends == need as usize => "ways lead to all ends".to_string(),
+            (ends, need) => format!("ways lead to {need} of {ends} ends"),
+        };
+        match side {
+            Side::Works => format!("P({what} through {of})"),
+            Side::Fails => format!("P(not: {what} through {of})"),
+        }
     }
 
     fn at_least(&self, need: u32, members: &[usize], side: Side) -> String {

@@ -6,6 +6,7 @@ mod exposure;
 mod figure;
 mod item;
 mod model;
+pub mod network;
 mod quantity;
 mod scope;
 mod structure;

@@ -250,12 +250,15 @@ impl<'a> Model<'a> {
                 format!("several names stand for the one thing `{}`", self.written(a)),
                 format!("write `a {}` for fresh copies, or one name for each line", self.written(a)),
             ),
-            Expr::Series(_) | Expr::Parallel(_) | Expr::AtLeast(..) | Expr::FailsWhen(_) | Expr::Call(..) => {
-                (
-                    "several names stand for one structure".to_string(),
-                    format!("write `a ({})` for fresh copies of it", self.text_of(value)),
-                )
-            }
+            Expr::Series(_)
+            | Expr::Parallel(_)
+            | Expr::AtLeast(..)
+            | Expr::FailsWhen(_)
+            | Expr::Routes(_)
+            | Expr::Call(..) => (
+                "several names stand for one structure".to_string(),
+                format!("write `a ({})` for fresh copies of it", self.text_of(value)),
+            ),
             _ => return,
         };
         let place = self.tree.span(value);

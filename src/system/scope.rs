@@ -114,7 +114,7 @@ impl Model<'_> {
     ) {
         while let Some((id, used)) = stack.pop() {
             match self.tree.expr(id) {
-                Expr::Literal(_) | Expr::Broken => {}
+                Expr::Literal(_) | Expr::Broken | Expr::Terminal(_) => {}
                 Expr::Name(sym) => {
                     if params.contains(&sym) {
                         continue;
@@ -132,6 +132,16 @@ impl Model<'_> {
                 Expr::Arith(_, a, b) => stack.extend([(a, Use::Figure), (b, Use::Figure)]),
                 Expr::Series(l) | Expr::Parallel(l) | Expr::And(l) | Expr::Or(l) => {
                     stack.extend(self.tree.list(l).iter().map(|x| (*x, Use::Thing)));
+                }
+                Expr::Routes(id) => {
+                    let routes = &self.tree.routes[id as usize];
+                    stack.extend(self.tree.list(routes.stops).iter().map(|x| (*x, Use::Thing)));
+                    if let Some((need, ends)) = routes.ends {
+                        if let Need::Count(k) = need {
+                            stack.push((k, Use::Figure));
+                        }
+                        stack.extend(self.tree.list(ends).iter().map(|x| (*x, Use::Thing)));
+                    }
                 }
                 Expr::AtLeast(need, l) => {
                     if let Need::Count(k) = need {

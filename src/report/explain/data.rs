@@ -115,6 +115,14 @@ pub(super) const TOO_LARGE: Explanation = Explanation {
     mended: note!("cell = 0.99", "bank = 3 of 4000 cell", "R(bank) ?"),
 };
 
+pub(super) const WRONG_ROUTES: Explanation = Explanation {
+    what: "The ways of `routes` make no network, or some stops lie on no way. A network works if a way of links leads from `in` to `out`, or \
+           to the ends that `with ends` names, through stops that all work. `->` leads one way, `<->` both ways. A stop \
+           that no way needs changes no answer, so a link is mostly missing or turned the wrong way there.",
+    wrong: note!("A, B, C = 0.9", "net = routes(in -> A -> out, B -> A, C -> B)", "R(net) ?"),
+    mended: note!("A, B, C = 0.9", "net = routes(in -> A -> out, in -> C -> B -> out, A <-> B)", "R(net) ?"),
+};
+
 pub(super) const CUT_SHORT: Explanation = Explanation {
     what: "A list was cut short. There are more cut sets or path sets than are listed, and the answer says how many are shown. Ask for those \
            of low order, `cuts(x, order 3)`, for a number of your own, `cuts(x, first 20)`, or only for how \

@@ -82,6 +82,7 @@ pub fn of(code: Code) -> Explanation {
         Code::Undeclared => data::UNDECLARED,
         Code::OutsideRange => data::OUTSIDE_RANGE,
         Code::ImpossibleCount => data::IMPOSSIBLE_COUNT,
+        Code::WrongRoutes => data::WRONG_ROUTES,
         Code::ContradictoryData => data::CONTRADICTORY_DATA,
         Code::MissingData => data::MISSING_DATA,
         Code::ExposureNotGiven => data::EXPOSURE_NOT_GIVEN,

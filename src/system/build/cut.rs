@@ -80,11 +80,16 @@ impl System {
                         Ok((left.structure.at_least(need as u32, &members), changed))
                     }
                 }
+                Node::Network { shape, .. } => {
+                    let of = |m: &NodeId| now[m.0 as usize];
+                    let changed = old.members(id).iter().map(of).any(|m| m.is_ok_and(|m| m.1) || m.is_err());
+                    let known: Vec<_> = old.members(id).iter().map(|m| of(m).map(|m| m.0)).collect();
+                    left.structure.network_left(old.shape(shape), &known).map(|node| (node, changed))
+                }
             };
-            // A node of one member is that member and adds none.
-            if let Ok((_, changed)) = value
-                && left.structure.len() > touched.len()
-            {
+            // A node of one member is that member and adds none; a network may add many.
+            let changed = value.is_ok_and(|(_, changed)| changed);
+            while left.structure.len() > touched.len() {
                 touched.push(changed);
                 left.labels.push(self.labels.get(id.0 as usize).copied().unwrap_or(NONE));
                 left.places.push(self.places.get(id.0 as usize).copied().flatten());
@@ -167,6 +172,15 @@ impl Model<'_> {
                         places[member.0 as usize] += 1;
                     }
                     system.structure.at_least(need, members)
+                }
+                Node::Network { shape, .. } => {
+                    members.clear();
+                    let olds = built.structure.members(*old).iter();
+                    members.extend(olds.map(|m| NodeId(built.cut[m.0 as usize])));
+                    for member in members.iter() {
+                        places[member.0 as usize] += 1;
+                    }
+                    system.structure.shaped(built.structure.shape(shape).clone(), members)
                 }
             };
             system.places.push(built.origin.get(old.0 as usize).copied());

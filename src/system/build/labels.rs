@@ -45,6 +45,11 @@ impl Model<'_> {
 
     /// The copy with a label: in full, or in short where there is only one such.
     fn find_labelled(&mut self, expr: ExprId, text: &str) -> Out<u32> {
+        // A name in full needs nothing but what it begins with, which has been
+        // built. To build all else here would meet what is still being built.
+        if let Some(index) = self.labelled_in_full(text) {
+            return Ok(index);
+        }
         // Whatever order the lines stand in, every copy has been made.
         for def in 0..self.defs.len() as u32 {
             self.try_definition(DefId(def));
@@ -78,6 +83,16 @@ impl Model<'_> {
                 .mend("write its name in full, owner first")
         };
         Err(self.fault(problem))
+    }
+
+    fn labelled_in_full(&self, text: &str) -> Option<u32> {
+        let found = self.built.instances.iter().position(|instance| {
+            instance.frame != NONE
+                && instance.out.is_some()
+                && self.is_owned(instance.label)
+                && self.label_text(instance.label) == text
+        });
+        found.map(|index| index as u32)
     }
 
     /// Whether a label begins with the name of a definition.

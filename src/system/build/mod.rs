@@ -12,6 +12,7 @@ mod calls;
 mod copies;
 mod cut;
 mod labels;
+mod routes;
 
 pub use cut::System;
 
@@ -129,6 +130,10 @@ pub struct Built {
     arguments: FxHashMap<(u32, u32, u32), Out<NodeId>>,
     asked: FxHashMap<ExprId, u32>,
     used_settles: FxHashSet<(u32, Sym)>,
+    /// Networks whose stops are being built, or are.
+    ways: Vec<routes::Ways>,
+    /// Networks whose idle stops have been named.
+    judged: FxHashSet<ExprId>,
     has_parts: bool,
     /// By node, its number in the system being cut out; [`NONE`] between two.
     cut: Vec<u32>,
@@ -157,6 +162,8 @@ impl Default for Built {
             arguments: FxHashMap::default(),
             asked: FxHashMap::default(),
             used_settles: FxHashSet::default(),
+            ways: Vec::new(),
+            judged: FxHashSet::default(),
             has_parts: false,
             cut: Vec::new(),
             room: cut::Room::default(),
@@ -190,6 +197,7 @@ enum Task {
     Finish(u32),
     Argument((u32, u32, u32)),
     Path(ExprId, Sym),
+    Routes(u32),
 }
 
 impl Model<'_> {
@@ -286,6 +294,10 @@ impl Model<'_> {
                     values.truncate(from);
                     values.push(out);
                 }
+                Task::Routes(number) => {
+                    let out = self.network(number, &mut values);
+                    values.push(out);
+                }
                 Task::Finish(instance) => self.finish(instance, values.last().copied()),
                 Task::Argument(key) => {
                     if let Some(out) = values.last() {
@@ -361,7 +373,8 @@ impl Model<'_> {
             Expr::Copy(of) => tasks.push(Task::Copy(Visit { expr: of, ..visit })),
             Expr::Settled(of, id) => tasks.push(Task::Visit(Visit { expr: of, settles: id, ..visit })),
             Expr::Call(word, args) => self.visit_call(visit, word, args, NONE, tasks, values),
-            Expr::Counted(..) | Expr::Choice(..) | Expr::Mixed(_) | Expr::Broken => {
+            Expr::Routes(id) => self.push_routes(visit, id, tasks, values),
+            Expr::Counted(..) | Expr::Choice(..) | Expr::Mixed(_) | Expr::Terminal(_) | Expr::Broken => {
                 let fault = self.no_thing(expr);
                 values.push(Err(fault));
             }
