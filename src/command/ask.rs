@@ -36,7 +36,7 @@ impl Ask {
             _ => return Verdict { error: true, ..Verdict::default() }, // clap lets none and three not pass
         };
         let question = bare(question);
-        answer(input, voice, false, |name, document| document.ask(name, &self.given, question, self.room))
+        answer(input, voice, false, |name, document| document.ask(name, &self.given, question, &self.room))
     }
 }
 

@@ -27,11 +27,11 @@ pub(super) struct Check {
 
 impl Check {
     pub(super) fn run(&self, voice: Voice) -> Verdict {
-        each(&expand(&self.files), voice, |input, watch| one(input, self.room, watch))
+        each(&expand(&self.files), voice, |input, watch| one(input, &self.room, watch))
     }
 }
 
-fn one(input: &Input, room: Room, watch: &Watch) -> Outcome {
+fn one(input: &Input, room: &Room, watch: &Watch) -> Outcome {
     match Document::read(input) {
         Ok(document) => judge(input, document.fill(input, Writing::Compare, room, watch)),
         Err(unread) => Outcome::new(input, unread.filled),

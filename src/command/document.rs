@@ -2,24 +2,34 @@
 
 use super::input::{Input, Unread};
 use super::progress::Watch;
+use super::shelf::Disk;
 use crate::answer::{Filled, StepsForm};
 use crate::document::workbook::{Limits, lock_file};
 use crate::note;
 use crate::sheets::{self, Options, SheetForm, Writing};
 use crate::source::{Code, Level, Problem, Span};
 use clap::Args;
+use std::path::PathBuf;
 use std::sync::Arc;
 
-/// What a workbook may ask for.
-#[derive(Args, Clone, Copy, Debug)]
+/// How far a file may reach, and what a workbook may ask for.
+#[derive(Args, Clone, Debug)]
 pub(super) struct Room {
+    /// A folder of which notes may use files, beside those at or below their own; may be repeated
+    #[arg(long, value_name = "FOLDER")]
+    use_from: Vec<PathBuf>,
+
     /// How many GiB a workbook may take when it is unzipped
     #[arg(long, value_name = "GIB", default_value_t = 1, value_parser = clap::value_parser!(u16).range(1..=1024))]
     unzip_limit: u16,
 }
 
 impl Room {
-    fn limits(self) -> Limits {
+    fn shelf(&self) -> Disk {
+        Disk::new(&self.use_from, self.limits())
+    }
+
+    fn limits(&self) -> Limits {
         let times = u64::from(self.unzip_limit);
         let usual = Limits::default();
         Limits::with_unzipped(usual.unzipped.saturating_mul(times))
@@ -57,10 +67,10 @@ impl Document {
     }
 
     /// The document with its answers.
-    pub(super) fn fill(&self, input: &Input, writing: Writing, room: Room, watch: &Watch) -> Filled {
+    pub(super) fn fill(&self, input: &Input, writing: Writing, room: &Room, watch: &Watch) -> Filled {
         let name = input.name();
         match self {
-            Document::Note(text) => note::fill_shared(&name, text.clone()),
+            Document::Note(text) => note::fill_from(&name, text.clone(), &room.shelf()),
             Document::Sheets(form, bytes) => {
                 let tell = |stage| watch.tell(stage);
                 let options =
@@ -86,9 +96,9 @@ impl Document {
     }
 
     /// The answer to one question.
-    pub(super) fn ask(&self, name: &str, given: &[String], question: &str, room: Room) -> Filled {
+    pub(super) fn ask(&self, name: &str, given: &[String], question: &str, room: &Room) -> Filled {
         match self {
-            Document::Note(text) => note::ask(name, text, given, question),
+            Document::Note(text) => note::ask(name, text, &room.shelf(), given, question),
             Document::Sheets(form, bytes) => {
                 let mut filled = sheets::ask(name, *form, bytes.clone(), &room.limits(), given, question);
                 told_of_limit(&mut filled);
@@ -104,10 +114,10 @@ impl Document {
         given: &[String],
         question: &str,
         form: StepsForm,
-        room: Room,
+        room: &Room,
     ) -> Filled {
         match self {
-            Document::Note(text) => note::steps(name, text, given, question, form),
+            Document::Note(text) => note::steps(name, text, &room.shelf(), given, question, form),
             Document::Sheets(sort, bytes) => {
                 let mut filled =
                     sheets::steps(name, *sort, bytes.clone(), &room.limits(), given, question, form);

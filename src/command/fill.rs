@@ -65,7 +65,7 @@ impl Fill {
             Target::InPlace(_) => Writing::InPlace,
             _ => Writing::NewFile,
         };
-        let mut outcome = Outcome::new(input, document.fill(input, writing, self.room, watch));
+        let mut outcome = Outcome::new(input, document.fill(input, writing, &self.room, watch));
         let unread = document.is_sheets() && outcome.verdict.access;
         let patched = match std::mem::replace(&mut outcome.filled.rewrite, Rewrite::Unchanged) {
             Rewrite::Patched(bytes) => Some(bytes),

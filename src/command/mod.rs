@@ -12,6 +12,7 @@ mod files;
 mod fill;
 mod input;
 mod progress;
+mod shelf;
 mod steps;
 mod terminal;
 mod verdict;

@@ -48,7 +48,7 @@ impl Steps {
             (false, Form::Markdown) => StepsForm::Markdown,
         };
         answer(Some(Input::one(&self.file)), voice, form == StepsForm::Json, |name, document| {
-            document.steps(name, &self.given, bare(&self.question), form, self.room)
+            document.steps(name, &self.given, bare(&self.question), form, &self.room)
         })
     }
 }

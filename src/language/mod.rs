@@ -14,6 +14,7 @@ mod grid_ask;
 mod header;
 mod line;
 mod literal;
+mod prefix;
 mod print;
 mod read;
 mod routes;

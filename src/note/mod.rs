@@ -3,6 +3,7 @@
 mod ahead;
 mod place;
 mod read;
+mod uses;
 
 pub use crate::answer::{Asked, Filled, StepsForm};
 use crate::answer::{Inquiry, answer_all, show_readings, told_once};
@@ -13,18 +14,20 @@ use crate::source::{Code, Problem, Sources, Span};
 use crate::system::Model;
 use read::{Read, find_and_read};
 use std::sync::Arc;
+pub use uses::{Fetched, NoShelf, NotFetched, Shelf};
 
 /// Fills a note: finds its questions and answers them.
 pub fn fill(name: &str, text: &str) -> Filled {
-    fill_shared(name, Arc::from(text))
+    fill_from(name, Arc::from(text), &NoShelf)
 }
 
-/// The same for a text that the caller goes on using: a large note is held once.
-pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
+/// The same for a note that may use other files. The text is shared: a large
+/// note is held once.
+pub fn fill_from(name: &str, text: Arc<str>, shelf: &dyn Shelf) -> Filled {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text.clone()) else { return Filled::too_much_text(sources) };
     let text: &str = &text;
-    let read = find_and_read(text, base);
+    let read = find_and_read(text, base, name, shelf, &mut sources);
     if read.found.places.is_empty() {
         let mut problems = read.found.problems;
         if problems.is_empty() {
@@ -45,7 +48,7 @@ pub fn fill_shared(name: &str, text: Arc<str>) -> Filled {
 pub fn syntax(name: &str, text: &str) -> (Sources, Tree, Vec<Problem>) {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return (sources, Tree::default(), Vec::new()) };
-    let read = find_and_read(text, base);
+    let read = find_and_read(text, base, name, &NoShelf, &mut sources);
     (sources, read.tree, read.problems)
 }
 
@@ -114,16 +117,23 @@ impl<'a> Work<'a> {
 }
 
 /// One question against the definitions of a note and further lines.
-pub fn ask(name: &str, text: &str, given: &[String], question: &str) -> Filled {
-    match inquiry(name, text, given, question) {
+pub fn ask(name: &str, text: &str, shelf: &dyn Shelf, given: &[String], question: &str) -> Filled {
+    match inquiry(name, text, shelf, given, question) {
         Ok(inquiry) => inquiry.ask(),
         Err(filled) => *filled,
     }
 }
 
 /// The steps of a question, in one of their forms; `question` is `R(feed)` or a formula.
-pub fn steps(name: &str, text: &str, given: &[String], question: &str, form: StepsForm) -> Filled {
-    match inquiry(name, text, given, question) {
+pub fn steps(
+    name: &str,
+    text: &str,
+    shelf: &dyn Shelf,
+    given: &[String],
+    question: &str,
+    form: StepsForm,
+) -> Filled {
+    match inquiry(name, text, shelf, given, question) {
         Ok(inquiry) => inquiry.steps(form),
         Err(filled) => *filled,
     }
@@ -132,12 +142,13 @@ pub fn steps(name: &str, text: &str, given: &[String], question: &str, form: Ste
 fn inquiry<'a>(
     name: &str,
     text: &str,
+    shelf: &dyn Shelf,
     given: &'a [String],
     question: &'a str,
 ) -> Result<Inquiry<'a>, Box<Filled>> {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return Err(Box::new(Filled::too_much_text(sources))) };
-    let Read { found, tree, problems: read, .. } = find_and_read(text, base);
+    let Read { found, tree, problems: read, .. } = find_and_read(text, base, name, shelf, &mut sources);
     let mut problems = found.problems;
     problems.extend(read);
     Ok(Inquiry { sources, tree, problems, given, question })

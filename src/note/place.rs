@@ -133,7 +133,13 @@ impl Work<'_> {
             }
             false => whole.start <= place.start && place.start <= whole.end,
         };
-        let elsewhere = |place| format!("line {}", self.line_once_filled(place, model));
+        let elsewhere = |place| match model.sources.find(place) {
+            // Of a file that the note uses, whose lines stay as they are.
+            Some((file, _)) if file.base != self.base => {
+                format!("{} {}", file.name, model.sources.words(place))
+            }
+            _ => format!("line {}", self.line_once_filled(place, model)),
+        };
         let own = Own { within: &within, in_cell, first: &|| None, elsewhere: &elsewhere };
         let first = || self.read.problems.iter().find(|p| p.level == Level::Error && own.holds(p));
         Own { first: &first, ..own }.message(fault, model)

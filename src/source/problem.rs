@@ -157,6 +157,8 @@ codes! {
     NotUtf8 = "not-utf8",
     /// A file that could not be read or written.
     FileAccess = "file-access",
+    /// A file that a note uses and that cannot be had, or says nothing.
+    UnusableFile = "unusable-file",
     /// Nothing for tieback in a file.
     NothingToDo = "nothing-to-do",
     // --- names and things ---

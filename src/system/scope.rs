@@ -424,6 +424,6 @@ fn roots(line: &Line) -> SmallVec<[ExprId; 2]> {
         }
         Line::Require { left, right, .. } => smallvec![*left, *right],
         Line::Mission(phases) => phases.iter().flat_map(|p| [Some(p.amount), p.stress]).flatten().collect(),
-        Line::Exposure(_) | Line::Attribute(_) | Line::Broken(_) => SmallVec::new(),
+        Line::Exposure(_) | Line::Attribute(_) | Line::Use(_) | Line::Broken(_) => SmallVec::new(),
     }
 }

@@ -62,6 +62,7 @@ pub fn of(code: Code) -> Explanation {
         Code::NearlyABlock => places::NEARLY_A_BLOCK,
         Code::NotUtf8 => places::NOT_UTF8,
         Code::FileAccess => places::FILE_ACCESS,
+        Code::UnusableFile => places::UNUSABLE_FILE,
         Code::NothingToDo => places::NOTHING_TO_DO,
         Code::UnknownName => things::UNKNOWN_NAME,
         Code::DefinedTwice => things::DEFINED_TWICE,

@@ -124,6 +124,14 @@ pub(super) const NEARLY_A_BLOCK: Explanation = Explanation {
     mended: lines!("```tieback", "pump = 0.98", "```", "", "```tieback", "R(pump) ?", "```"),
 };
 
+pub(super) const UNUSABLE_FILE: Explanation = Explanation {
+    what: "A file that the note uses cannot be had, or defines nothing. Its path is written relative to the note, with `/`, \
+           without `..`, and the file lies at or below the note's folder, also after links are followed. The option \
+           `--use-from FOLDER` allows files of another folder.",
+    wrong: note!("use \"../stores/parts.md\"", "R(pump) ?"),
+    mended: note!("pump = 0.98", "R(pump) ?"),
+};
+
 pub(super) const UNCLOSED_FENCE: Explanation = Explanation {
     what: "A block is never closed. Markdown then takes everything up to the end of the note for its content, prose as well. Close \
            the block with as many backticks or tildes as open it, on a line of their own.",
