@@ -15,6 +15,7 @@
 //! | [`answer`] | numbers | what is written: figures, tables, lists, requirements |
 //! | [`sheets`] | one workbook or delimited file | the same way, from cells to cells: [`sheets::fill`] |
 //! | [`note`] | one note | all of the above, once through: [`note::fill`] |
+//! | [`view`] | answers and steps | what a reviewer signs from: a workbook of live formulas |
 //! | [`report`] | problems | text for a terminal, JSON, and the long explanation of each code |
 //! | [`command`] | arguments, files | an exit code: the only module that opens files and writes streams |
 //!
@@ -50,3 +51,4 @@ pub mod sheets;
 pub mod source;
 pub mod steps;
 pub mod system;
+pub mod view;

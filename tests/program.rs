@@ -358,3 +358,30 @@ fn a_reader_that_leaves_is_no_error() {
     assert_eq!(output.status.code(), Some(0));
     assert!(output.stderr.is_empty());
 }
+
+#[test]
+fn a_review_is_a_workbook() {
+    let note = "```tieback\nA = 0.9\nR(A // A) ?\nrequire R(A) >= 0.95\n```\n";
+    let ran = Case::new(&["review", "note.md", "-o", "review.xlsx"]).file("note.md", note).run();
+    assert_eq!(ran.code, 4, "{}", ran.err);
+    assert!(ran.err.contains("note.md: 2 answers with their steps in review.xlsx"), "{}", ran.err);
+    let book = std::fs::read(ran.folder.path().join("review.xlsx")).unwrap();
+    assert!(book.starts_with(b"PK"));
+    // The note is only read.
+    assert_eq!(std::fs::read_to_string(ran.folder.path().join("note.md")).unwrap(), note);
+
+    let csv = "name,fails,R ?\npump,0.1,\n";
+    let ran = Case::new(&["review", "parts.csv", "-o", "r.xlsx"]).file("parts.csv", csv).run();
+    assert_eq!((ran.code, ran.folder.path().join("r.xlsx").exists()), (0, true), "{}", ran.err);
+
+    let wrong = "```tieback\nA = 0.9 -> B\nR(A) ?\n```\n";
+    let ran = Case::new(&["review", "note.md", "-o", "r.xlsx"]).file("note.md", wrong).run();
+    assert!(ran.code == 2 && ran.err.contains("unknown name"), "{}", ran.err);
+
+    let ran = Case::new(&["review", "note.md", "-o", "page.html"]).file("note.md", note).run();
+    assert!(ran.code == 2 && ran.err.contains("not known yet"), "{}", ran.err);
+    let ran = Case::new(&["review", "note.md", "-o", "page.pdf"]).file("note.md", note).run();
+    assert!(ran.code == 3 && ran.err.contains("ends in .xlsx"), "{}", ran.err);
+    let ran = Case::new(&["review", "note.md", "-o", "none/r.xlsx"]).file("note.md", note).run();
+    assert_eq!(ran.code, 3, "{}", ran.err);
+}

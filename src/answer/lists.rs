@@ -165,7 +165,11 @@ impl Desk {
         Ok(Reply::Table { head: vec!["single point".to_string(), "F".to_string()], rows, foot: None })
     }
 
-    fn rank_table(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
+    /// The things of a system by importance, as a table.
+    ///
+    /// # Errors
+    /// What prevents it.
+    pub(crate) fn rank_table(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
         const COLUMNS: [&str; 7] = ["Birnbaum", "criticality", "FV", "RAW", "RRW", "doubled", "made perfect"];
         let subject = self.subject(model, call, args, 1)?;
         let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given)?;

@@ -35,13 +35,7 @@ pub fn require(
     limit: Limit,
     right: ExprId,
 ) -> Out<(Verdict, String)> {
-    // `0.98 <= R(feed)` says the same as `R(feed) >= 0.98`, and what is asked is shown.
-    let turned = asks_within(model, right) && !asks_within(model, left);
-    let (left, limit, right) = match (turned, limit) {
-        (false, limit) => (left, limit, right),
-        (true, Limit::AtLeast) => (right, Limit::AtMost, left),
-        (true, Limit::AtMost) => (right, Limit::AtLeast, left),
-    };
+    let (left, limit, right) = turned(model, left, limit, right);
     let number = desk.number(model, left)?;
     let bar = model.figure_with(right, Ctx::TOP, desk)?;
     let value = match quantity(&number) {
@@ -80,6 +74,31 @@ pub fn require(
         _ => None,
     };
     Ok((verdict, format!("{word}: {shown}{}", used.unwrap_or_default())))
+}
+
+/// `0.98 <= R(feed)` says the same as `R(feed) >= 0.98`, and what is asked is shown.
+fn turned(model: &Model<'_>, left: ExprId, limit: Limit, right: ExprId) -> (ExprId, Limit, ExprId) {
+    let turned = asks_within(model, right) && !asks_within(model, left);
+    match (turned, limit) {
+        (false, limit) => (left, limit, right),
+        (true, Limit::AtLeast) => (right, Limit::AtMost, left),
+        (true, Limit::AtMost) => (right, Limit::AtLeast, left),
+    }
+}
+
+/// A requirement as what is asked, at least or at most, and the limit.
+///
+/// # Errors
+/// What is wrong with the limit.
+pub(crate) fn require_parts(
+    desk: &mut Desk,
+    model: &mut Model<'_>,
+    left: ExprId,
+    limit: Limit,
+    right: ExprId,
+) -> Out<(ExprId, Limit, Quantity)> {
+    let (left, limit, right) = turned(model, left, limit, right);
+    Ok((left, limit, model.figure_with(right, Ctx::TOP, desk)?))
 }
 
 fn quantity(number: &Number) -> Result<Quantity, String> {

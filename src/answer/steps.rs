@@ -18,25 +18,49 @@ const MOST_STEPS: usize = 10_000;
 pub(super) const MEASURES: [&str; 7] =
     ["Birnbaum", "criticality", "FV", "RAW", "RRW", "doubled", "made perfect"];
 
+/// What the steps of a question end in.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub enum End {
+    /// One side of a step, by its place in the list.
+    Chance(usize, Side),
+    /// A step that is a figure.
+    Figure(usize),
+    /// A probability of 1 or of 0.
+    Certain(bool),
+}
+
 impl Desk {
     /// The steps of `R(x)`, `F(x)` or a formula of them.
     ///
     /// # Errors
     /// What prevents the answer itself, or that there are too many steps.
     pub fn steps(&mut self, model: &mut Model<'_>, asked: ExprId) -> Out<StepList> {
-        let inner = model.tree.inside_groups(asked);
         let mut list = StepList::default();
+        self.add_steps(model, asked, &mut list)?;
+        Ok(list)
+    }
+
+    /// Adds the steps of one question to those of others; what is common is
+    /// stated once.
+    ///
+    /// # Errors
+    /// As for [`Desk::steps`].
+    pub fn add_steps(&mut self, model: &mut Model<'_>, asked: ExprId, list: &mut StepList) -> Out<End> {
+        let inner = model.tree.inside_groups(asked);
         if let Expr::Call(word, args) = model.tree.expr(inner)
-            && matches!(model.tree.names.text(word), "R" | "F")
+            && let word @ ("R" | "F") = model.tree.names.text(word)
         {
-            let _certain = self.steps_of(model, inner, args, &mut list)?;
-            return Ok(list);
+            let side = if word == "R" { Side::Works } else { Side::Fails };
+            return Ok(match self.steps_of(model, inner, args, list)? {
+                Ok(step) => End::Chance(step, side),
+                Err(works) => End::Certain(works == (side == Side::Works)),
+            });
         }
         if let Expr::Call(word, args) = model.tree.expr(inner)
             && MEASURES.contains(&model.tree.names.text(word))
-            && self.steps_of_measure(model, inner, word, args, &mut list)?
+            && self.steps_of_measure(model, inner, word, args, list)?
         {
-            return Ok(list);
+            return Ok(End::Figure(list.steps.len() - 1));
         }
         let number = self.number(model, asked)?;
         let Number::Figure(quantity) = number else {
@@ -46,7 +70,7 @@ impl Desk {
                     .mend("write `steps(R(feed))`"),
             ));
         };
-        let formula = self.formula(model, inner, &mut list)?;
+        let formula = self.formula(model, inner, list)?;
         let unit = model.units.symbol(&quantity.dim, &model.tree.names);
         let works = formula.clone();
         let fails = formula.one_minus();
@@ -61,7 +85,7 @@ impl Desk {
             shown: Side::Works,
             outcome: Outcome::Figure(quantity.value, unit),
         });
-        Ok(list)
+        Ok(End::Figure(list.steps.len() - 1))
     }
 
     /// Adds the steps of one `R(…)` or `F(…)`; its last step, or what it is for certain.

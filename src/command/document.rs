@@ -5,9 +5,10 @@ use super::progress::Watch;
 use super::shelf::Disk;
 use crate::answer::{Filled, StepsForm};
 use crate::document::workbook::{Limits, lock_file};
+use crate::language::Tree;
 use crate::note;
 use crate::sheets::{self, Options, SheetForm, Writing};
-use crate::source::{Code, Level, Problem, Span};
+use crate::source::{Code, Level, Problem, Sources, Span};
 use clap::Args;
 use std::path::PathBuf;
 use std::sync::Arc;
@@ -92,6 +93,14 @@ impl Document {
                 }
                 filled
             }
+        }
+    }
+
+    /// Its syntax, with that of what it uses.
+    pub(super) fn syntax(&self, name: &str, room: &Room) -> (Sources, Tree, Vec<Problem>) {
+        match self {
+            Document::Note(text) => note::syntax_from(name, text, &room.shelf()),
+            Document::Sheets(form, bytes) => sheets::syntax(name, *form, bytes.clone(), &room.limits()),
         }
     }
 

@@ -12,6 +12,7 @@ mod files;
 mod fill;
 mod input;
 mod progress;
+mod review;
 mod shelf;
 mod steps;
 mod terminal;
@@ -53,6 +54,7 @@ enum Command {
     Check(check::Check),
     Ask(ask::Ask),
     Steps(steps::Steps),
+    Review(review::Review),
     Explain(explain::Explain),
 }
 
@@ -76,6 +78,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Command::Check(command) => Ok(command.run(voice)),
         Command::Ask(command) => Ok(command.run(voice)),
         Command::Steps(command) => Ok(command.run(voice)),
+        Command::Review(command) => Ok(command.run(voice)),
         Command::Explain(command) => Ok(command.run(voice)),
     };
     match done {

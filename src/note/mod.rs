@@ -46,9 +46,14 @@ pub fn fill_from(name: &str, text: Arc<str>, shelf: &dyn Shelf) -> Filled {
 
 /// The syntax of a note: everything in its blocks, pairs and tables.
 pub fn syntax(name: &str, text: &str) -> (Sources, Tree, Vec<Problem>) {
+    syntax_from(name, text, &NoShelf)
+}
+
+/// The same for a note that may use other files.
+pub fn syntax_from(name: &str, text: &str, shelf: &dyn Shelf) -> (Sources, Tree, Vec<Problem>) {
     let mut sources = Sources::default();
     let Some(base) = sources.add(name, text) else { return (sources, Tree::default(), Vec::new()) };
-    let read = find_and_read(text, base, name, &NoShelf, &mut sources);
+    let read = find_and_read(text, base, name, shelf, &mut sources);
     (sources, read.tree, read.problems)
 }
 

@@ -557,7 +557,14 @@ impl Writer<'_, '_> {
         let of = |side| Formula::Network(network.clone(), members.clone(), side);
         let tails = (of(Side::Works), of(Side::Fails));
         let shown = if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
-        Operand::Step(self.add(format!("network {}", id.0), name, place, Rule::Network, tails, shown))
+        Operand::Step(self.add(
+            format!("{} network {}", self.list.ledger.systems, id.0),
+            name,
+            place,
+            Rule::Network,
+            tails,
+            shown,
+        ))
     }
 
     /// One step for each node of a diagram, from the ends up.

@@ -128,7 +128,7 @@ pub(super) const UNUSABLE_FILE: Explanation = Explanation {
     what: "A file that the note uses cannot be had, or defines nothing. Its path is written relative to the note, with `/`, \
            without `..`, and the file lies at or below the note's folder, also after links are followed. The option \
            `--use-from FOLDER` allows files of another folder.",
-    wrong: note!("use \"../stores/parts.md\"", "R(pump) ?"),
+    wrong: note!("use \"../stores/parts.md\"", "pump = 0.98", "R(pump) ?"),
     mended: note!("pump = 0.98", "R(pump) ?"),
 };
 
