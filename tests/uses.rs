@@ -136,6 +136,18 @@ fn errors_say_their_file() {
 }
 
 #[test]
+fn a_year_of_another_length_is_told() {
+    let list = "year,8766 h\nname,is\nfan,mttf 2 yr\n";
+    for (year, code) in [("", 2), ("year 8766 h\n", 0)] {
+        let note = block(&format!("{year}use \"fans.csv\"\nmission 100 h\nF(fan) ?"));
+        let files = folder(&[("note.md", &note), ("fans.csv", list)]);
+        let (found, _, said) = fill(files.path(), &["fill", "note.md"], "note.md");
+        assert_eq!(found, code, "{said}");
+        assert_eq!(said.contains("the length of a year"), code == 2, "{said}");
+    }
+}
+
+#[test]
 fn circles_and_diamonds() {
     let files = folder(&[
         ("a.md", &block("use \"b.md\"\nuse \"c.md\"\na = b -> c\nF(a) ?")),

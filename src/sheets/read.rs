@@ -122,6 +122,17 @@ pub(super) fn definitions(
         return false;
     };
     for (entry, setting) in &settings {
+        if setting.word == "year" {
+            let source = read.based().source(*entry as usize);
+            if !same_year(source.text, tree, sources) {
+                let end = source.at + source.text.len() as u32;
+                let place = Span { start: source.at, end };
+                let message =
+                    "this sets the length of a year, and the note that uses the list does not set it alike";
+                let problem = Problem::error(Code::BadSetting, place, message);
+                problems.push(problem.mend("set the same year in both, or give its data in hours"));
+            }
+        }
         if matches!(setting.word, "exposure" | "attribute") {
             self::setting(read.based().source(*entry as usize), setting, block, tree, problems);
             drop_declared(tree);
@@ -129,6 +140,16 @@ pub(super) fn definitions(
     }
     language::read_grids(&grids(&read, block), tree, problems);
     true
+}
+
+/// Whether the note sets the year in the same words.
+fn same_year(theirs: &str, tree: &Tree, sources: &Sources) -> bool {
+    let words = |text: &str| text.split_whitespace().collect::<String>();
+    let theirs = words(theirs.trim_start_matches("year"));
+    tree.statements.iter().any(|s| match s.line {
+        Line::Year(value) => words(sources.text(tree.span(value))) == theirs,
+        _ => false,
+    })
 }
 
 /// Takes from the last line what a line before it declares alike: a note and
