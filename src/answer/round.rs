@@ -122,10 +122,12 @@ fn in_halves<T: Send>(
         build_rest(model, defs);
         (answered, desk)
     };
-    let mut other = model.clone();
+    let other = model.clone();
     let ((mut answered, desk), more) = rayon::join(
         || work(model, 0..half, 0..cut),
-        || {
+        move || {
+            // Given back here, where the other half is still being answered.
+            let mut other = other;
             let (more, _) = work(&mut other, half..count, cut..defs);
             let clean = other.problems.len() == before && more.iter().all(|a| a.reply.is_ok());
             clean.then_some(more)

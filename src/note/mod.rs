@@ -12,6 +12,7 @@ use crate::document::patch::{Edit, apply};
 use crate::language::Tree;
 use crate::source::{Code, Problem, Sources, Span};
 use crate::system::Model;
+use ahead::LARGE;
 use read::{Read, find_and_read};
 use std::sync::Arc;
 pub use uses::{Fetched, NoShelf, NotFetched, Shelf};
@@ -74,7 +75,13 @@ fn answer_note(read: &Read, sources: &Sources, text: &str, base: u32) -> Outcome
     problems.sort_by_key(|p| (p.place.start, p.place.end));
     problems.dedup();
     let edits = std::mem::take(&mut work.edits);
-    let rewrite = match apply(text.as_bytes(), &edits) {
+    let patched = if text.len() < LARGE {
+        apply(text.as_bytes(), &edits)
+    } else {
+        // A large model takes a while to be given back: the answers are put in meanwhile.
+        rayon::join(|| drop((model, desk, answered)), || apply(text.as_bytes(), &edits)).1
+    };
+    let rewrite = match patched {
         Ok(rewrite) => rewrite,
         Err(overlap) => {
             let place = Span::new(overlap.second.start, overlap.second.end);

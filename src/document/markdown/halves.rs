@@ -15,7 +15,7 @@ use std::ops::Range;
 const TRIES: usize = 64;
 /// Halves are halved again so often: what else is done at the same time must
 /// not leave one thread with a whole half at the end.
-const TIMES: u32 = 3;
+const TIMES: u32 = 2;
 
 /// The places of all parts; nothing where the note cannot be divided safely.
 pub(super) fn find(text: &str, base: u32, mark: usize, first: usize) -> Option<Found> {
