@@ -13,7 +13,9 @@
 //! | [`engine`] | system | a plan, then numbers: closed forms, cases, decision diagrams, cut sets, importance |
 //! | [`steps`] | plan and numbers | numbered formulas, each computed from what it shows |
 //! | [`answer`] | numbers | what is written: figures, tables, lists, requirements |
+//! | [`sheets`] | one workbook or delimited file | the same way, from cells to cells: [`sheets::fill`] |
 //! | [`note`] | one note | all of the above, once through: [`note::fill`] |
+//! | [`view`] | answers and steps | what a reviewer signs from: a workbook of live formulas |
 //! | [`report`] | problems | text for a terminal, JSON, and the long explanation of each code |
 //! | [`command`] | arguments, files | an exit code: the only module that opens files and writes streams |
 //!
@@ -45,6 +47,8 @@ pub mod language;
 pub mod note;
 pub mod number;
 pub mod report;
+pub mod sheets;
 pub mod source;
 pub mod steps;
 pub mod system;
+pub mod view;

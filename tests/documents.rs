@@ -2,7 +2,7 @@
 
 use std::path::{Path, PathBuf};
 use std::process::Command;
-use tieback::note::{Rewrite, fill};
+use tieback::note::{Fetched, NotFetched, Rewrite, Shelf, fill_from};
 use tieback::source::Level;
 
 fn root() -> &'static Path {
@@ -26,11 +26,22 @@ fn documents() -> Vec<PathBuf> {
     examples
 }
 
+/// The folder of a document.
+struct Beside;
+
+impl Shelf for Beside {
+    fn fetch(&self, from: &str, path: &str) -> Result<Fetched, NotFetched> {
+        let path = Path::new(from).with_file_name(path);
+        let bytes = std::fs::read(&path).unwrap();
+        Ok(Fetched { name: path.display().to_string(), bytes })
+    }
+}
+
 #[test]
 fn documents_are_committed_filled() {
     for path in documents() {
         let name = path.display().to_string();
-        let filled = fill(&name, &text(&path));
+        let filled = fill_from(&name, text(&path).into(), &Beside);
         let errors: Vec<_> = filled.problems.iter().filter(|p| p.level == Level::Error).collect();
         assert!(errors.is_empty(), "{name}: {errors:#?}");
         for asked in &filled.asked {

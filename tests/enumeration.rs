@@ -471,7 +471,7 @@ fn answers_equal_enumeration() {
         assert!(gap(&got_f, &f) < 1e-25, "seed {seed}\n{}\n{got_f} {f}", t.note);
         // As written, 15 digits of the smaller side.
         let ask = |q: &str| {
-            let filled = note::ask("note", &t.note, &[], q);
+            let filled = note::ask("note", &t.note, &note::NoShelf, &[], q);
             assert!(!filled.asked[0].error, "seed {seed} {q}: {}\n{}", filled.asked[0].new, t.note);
             filled.asked[0].new.clone()
         };

@@ -5,7 +5,14 @@ use tieback::report::explain;
 use tieback::source::{Code, Level};
 
 /// What the program itself reports: no note alone can show it.
-const OF_THE_PROGRAM: &[Code] = &[Code::FileAccess, Code::NotUtf8, Code::NothingToDo, Code::Stale];
+const OF_THE_PROGRAM: &[Code] = &[
+    Code::FileAccess,
+    Code::NotUtf8,
+    Code::NothingToDo,
+    Code::Stale,
+    Code::OutOfDateFormula,
+    Code::OpenElsewhere,
+];
 
 #[test]
 fn wrong_examples_give_their_code_and_mended_ones_do_not() {

@@ -31,7 +31,7 @@ fn published_values_are_met() {
         let text = format!("```tieback\ndigits 15\n{}\n```\n", case.note);
         assert!(matches!(case.class, 'a'..='c') && !case.source.is_empty(), "{}", case.id);
         for Ask(question, printed, full, half_unit) in case.asks {
-            let filled = note::ask("published.md", &text, &[], question);
+            let filled = note::ask("published.md", &text, &note::NoShelf, &[], question);
             let answer = &filled.asked[0].new;
             let number = answer.split(' ').next().and_then(|n| n.parse::<f64>().ok());
             let Some(value) = number.filter(|_| !filled.asked[0].error && !answer.contains(" - ")) else {

@@ -204,16 +204,6 @@ fn a_filter_hands_back_what_it_cannot_read() {
 }
 
 #[test]
-fn a_sheet_is_refused_by_its_name() {
-    Case::new(&["fill", "parts.xlsx"])
-        .file("parts.xlsx", "PK")
-        .run()
-        .exits(2)
-        .mentions("not-known-yet")
-        .holds("parts.xlsx", "PK");
-}
-
-#[test]
 fn problems_are_data_with_json() {
     let ran = Case::new(&["check", "--json", "gone.md", "old.md"])
         .file("old.md", b"a\n\xFF")
@@ -280,7 +270,7 @@ fn a_folder_without_notes_is_a_remark() {
         .file("a.txt", "")
         .run()
         .exits(0)
-        .mentions("remark[nothing-to-do]: there is no note");
+        .mentions("remark[nothing-to-do]: there is no note and no parts list");
 }
 
 #[test]
@@ -367,4 +357,31 @@ fn a_reader_that_leaves_is_no_error() {
     let output = child.wait_with_output().unwrap();
     assert_eq!(output.status.code(), Some(0));
     assert!(output.stderr.is_empty());
+}
+
+#[test]
+fn a_review_is_a_workbook() {
+    let note = "```tieback\nA = 0.9\nR(A // A) ?\nrequire R(A) >= 0.95\n```\n";
+    let ran = Case::new(&["review", "note.md", "-o", "review.xlsx"]).file("note.md", note).run();
+    assert_eq!(ran.code, 4, "{}", ran.err);
+    assert!(ran.err.contains("note.md: 2 answers with their steps in review.xlsx"), "{}", ran.err);
+    let book = std::fs::read(ran.folder.path().join("review.xlsx")).unwrap();
+    assert!(book.starts_with(b"PK"));
+    // The note is only read.
+    assert_eq!(std::fs::read_to_string(ran.folder.path().join("note.md")).unwrap(), note);
+
+    let csv = "name,fails,R ?\npump,0.1,\n";
+    let ran = Case::new(&["review", "parts.csv", "-o", "r.xlsx"]).file("parts.csv", csv).run();
+    assert_eq!((ran.code, ran.folder.path().join("r.xlsx").exists()), (0, true), "{}", ran.err);
+
+    let wrong = "```tieback\nA = 0.9 -> B\nR(A) ?\n```\n";
+    let ran = Case::new(&["review", "note.md", "-o", "r.xlsx"]).file("note.md", wrong).run();
+    assert!(ran.code == 2 && ran.err.contains("unknown name"), "{}", ran.err);
+
+    let ran = Case::new(&["review", "note.md", "-o", "page.html"]).file("note.md", note).run();
+    assert!(ran.code == 2 && ran.err.contains("not known yet"), "{}", ran.err);
+    let ran = Case::new(&["review", "note.md", "-o", "page.pdf"]).file("note.md", note).run();
+    assert!(ran.code == 3 && ran.err.contains("ends in .xlsx"), "{}", ran.err);
+    let ran = Case::new(&["review", "note.md", "-o", "none/r.xlsx"]).file("note.md", note).run();
+    assert_eq!(ran.code, 3, "{}", ran.err);
 }

@@ -7,7 +7,7 @@ use proptest::test_runner::{Config, RngAlgorithm, TestRng, TestRunner};
 use std::sync::atomic::{AtomicU32, Ordering::Relaxed};
 use tieback::document::patch::Rewrite;
 use tieback::language::{self, Line, Tree};
-use tieback::note::{Filled, ask, fill};
+use tieback::note::{Filled, NoShelf, ask, fill};
 use tieback::source::{Code, Sources};
 
 /// Runs a property on cases that are the same in every run; `TIEBACK_CASES`
@@ -308,7 +308,7 @@ fn arbitrary_text_is_no_trouble() {
     check(3, 300, any::<String>(), |text| {
         keeps_its_promises(&text);
         keeps_its_promises(&format!("```tieback\n{text}\n```\n"));
-        let _ = ask("note.md", "", std::slice::from_ref(&text), &text);
+        let _ = ask("note.md", "", &NoShelf, std::slice::from_ref(&text), &text);
     });
 }
 
@@ -432,7 +432,7 @@ fn definitions_stand_in_any_order() {
     check(6, 120, (shuffled, question()), |((one, other), question)| {
         let answer = |lines: &[String]| {
             let text = format!("```tieback\n{}\n```\n", lines.join("\n"));
-            let filled = ask("note.md", &text, &[], &question);
+            let filled = ask("note.md", &text, &NoShelf, &[], &question);
             // A line that moved has another number; that it is in error stays.
             match filled.asked[0].new.strip_prefix("! rests on line ") {
                 Some(_) => "! rests on a line in error".to_string(),

@@ -457,6 +457,19 @@ fn steps_can_be_computed_again() {
         "1 - R(row) * R(nest)",
         "sqrt(F(row)) + max(R(row), 0.2, R(pair)) - min(ln(2), log10(3))",
         "exp(-F(row)) ^ 2",
+        "F(row) / F(bridge)",
+        "R(row, 500 h) / R(row, 600 h)",
+        "Birnbaum(row, plug)",
+        "Birnbaum(nest, F1)",
+        "criticality(nest, F1)",
+        "FV(nest, F2)",
+        "RAW(nest, i3)",
+        "RRW(bridge, i3)",
+        "doubled(mixed, fan)",
+        "made perfect(wide, pair)",
+        "RAW(row, plug)",
+        "RRW(row, plug)",
+        "Birnbaum(bridge, i3, 900 h)",
     ];
     each_step_list(PLANT, &plant, |question, list, answer, sources| {
         recompute(question, list, answer, sources, &mut rules);
@@ -521,6 +534,7 @@ fn steps_can_be_computed_again() {
         Rule::LikeVote,
         Rule::UnlikeVote,
         Rule::TotalProbability,
+        Rule::Importance,
         Rule::DiagramNode,
         Rule::Arithmetic,
     ] {

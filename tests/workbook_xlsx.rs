@@ -6,7 +6,7 @@ use std::io::Cursor;
 
 use calamine::{Data, Reader, Xlsx};
 use proptest::prelude::*;
-use tieback::document::workbook::{Answer, AnswerValue, Book, Limits, Value, open};
+use tieback::document::workbook::{Answer, AnswerValue, Book, Limits, Value, a1, open};
 use workbook_tools::*;
 
 /// Answers for the first sheet of the library's workbook: a General cell with a
@@ -127,7 +127,7 @@ fn stale_formulas_are_named() {
         let book = open(name, file(name), &Limits::default()).unwrap();
         let named = |cells: &[(usize, u32, u32)]| -> Vec<String> {
             let found = book.formulas_depending_on(cells);
-            found.iter().map(|(sheet, at)| format!("{sheet}!{at}")).collect()
+            found.iter().map(|(sheet, row, column)| format!("{sheet}!{}", a1(*row, *column))).collect()
         };
         // E9 stands in its half, the sum, `worst`, and what refers to that.
         assert_eq!(named(&[(0, 8, 4)]), ["0!H9", "0!E13", "1!E1", "1!E3"], "{name}");

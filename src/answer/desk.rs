@@ -1,5 +1,6 @@
 //! Where questions are worked on: systems cut out, planned and valued, each once.
 
+use super::find::Index;
 use crate::engine::evaluate::{Assessed, assess, evaluate};
 use crate::engine::importance::{Importance, importance};
 use crate::engine::network::Interval;
@@ -53,6 +54,8 @@ pub struct Desk {
     prepared: FxHashMap<ExprKey, Out<Arc<Prepared>>>,
     valued: FxHashMap<(ExprKey, Vec<ExprId>), Out<Arc<Valued>>>,
     ranked: FxHashMap<(ExprKey, Vec<ExprId>), Ranked>,
+    /// The names in the system that was asked last by name.
+    pub(super) index: Option<(Arc<Prepared>, Arc<Index>)>,
     /// Questions within questions.
     pub(super) depth: u32,
     /// What the answer at hand rests on; each becomes one folded remark.

@@ -101,7 +101,11 @@ pub(super) fn figure_text(
     display: Option<Display>,
 ) -> Result<String, Box<Problem>> {
     let bound = quantity.relative_error();
+    let tiny = |value: Real| !value.is_zero() && value.abs() < Real::from(SMALLEST);
     let number = |value: Real| match format_number(value, model.digits, bound) {
+        _ if tiny(value) && quantity.error <= SMALLEST => {
+            if value.is_negative() { "> -1e-300" } else { "< 1e-300" }.to_string()
+        }
         Some(text) => text,
         None if value.is_zero() || bound >= 1.0 => format!("~0 (within {:.0e})", quantity.error),
         None => format!("~{:.0e}", value.to_f64()),

@@ -307,7 +307,7 @@ impl Desk {
 }
 
 /// Whether a formula has a question in it.
-fn asks_within(model: &Model<'_>, value: ExprId) -> bool {
+pub(super) fn asks_within(model: &Model<'_>, value: ExprId) -> bool {
     let mut stack = vec![value];
     while let Some(at) = stack.pop() {
         match model.tree.expr(at) {

@@ -1,13 +1,13 @@
 //! Importance of one thing in a system: Birnbaum and the measures that rest on it.
 
 use super::desk::Desk;
-use super::figure::{Number, Subject};
+use super::figure::Number;
+use super::find::Found;
 use crate::engine::importance::Importance;
-use crate::engine::plan::BlockId;
-use crate::language::{Expr, ExprId, List, Sym, words};
+use crate::language::{ExprId, List};
 use crate::number::{Chance, Real};
 use crate::source::{Code, Problem};
-use crate::system::{Dim, Fault, Model, NodeId, Out, Quantity, STEP};
+use crate::system::{Dim, Model, Out, Quantity, STEP};
 
 impl Desk {
     pub(super) fn importance(
@@ -30,10 +30,13 @@ impl Desk {
             ));
         }
         let subject = self.subject(model, call, args, 2)?;
-        let block = self.find_block(model, &subject, list[1])?;
-        let Some(block) = block else {
-            // Perfect: it stands in no cut, and nothing changes with it.
-            return Ok(measure_of_perfect(word, subject.valued.chance));
+        let block = match self.find(model, &subject, list[1])? {
+            Found::Block(block) => block,
+            // It stands in no cut, and nothing changes with it.
+            Found::Perfect => return Ok(measure_of_perfect(word, subject.valued.chance)),
+            Found::Elsewhere => {
+                return Ok(Number::None(format!("not in {}", model.text_of(subject.thing))));
+            }
         };
         let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given)?;
         let Some(found) = ranked.get(block.0 as usize).copied().flatten() else {
@@ -41,136 +44,6 @@ impl Desk {
         };
         Ok(measure(word, &found, subject.valued.chance, subject.valued.bound))
     }
-
-    /// The block of a named thing within a system; `None` for one that changes nothing.
-    fn find_block(&mut self, model: &mut Model<'_>, subject: &Subject, name: ExprId) -> Out<Option<BlockId>> {
-        if let Some(fault) = model.faulty(name) {
-            return Err(fault);
-        }
-        let wanted = match model.tree.expr(model.tree.inside_groups(name)) {
-            Expr::Name(sym) => model.tree.names.text(sym).to_string(),
-            _ => model.text_of(name),
-        };
-        let system = &subject.prepared.system;
-        let plan = &subject.prepared.plan;
-        let mut ends: Vec<(String, Option<BlockId>)> = Vec::new();
-        for (number, leaf) in system.leaves.iter().enumerate() {
-            let own = model.leaf_name(leaf);
-            let block = plan.of_leaf(number as u32);
-            if own == wanted {
-                return Ok(block);
-            }
-            if own.ends_with(&format!(".{wanted}")) {
-                ends.push((own, block));
-            }
-        }
-        for node in (0..system.structure.len() as u32).map(NodeId) {
-            let Some(own) = model.node_name(system, node) else { continue };
-            if own == wanted {
-                return match plan.of_node(node) {
-                    Some(block) => Ok(Some(block)),
-                    None => Err(self.shares_with_the_rest(model, &wanted, name)),
-                };
-            }
-            if own.ends_with(&format!(".{wanted}")) && system.structure.members(node).len() > 1 {
-                ends.push((own, plan.of_node(node)));
-            }
-        }
-        ends.sort();
-        ends.dedup();
-        if let [(_, block)] = ends.as_slice() {
-            return Ok(*block);
-        }
-        if ends.is_empty() && lies_on_no_way(model, subject, &wanted) {
-            return Ok(None);
-        }
-        if let Expr::Name(sym) = model.tree.expr(model.tree.inside_groups(name))
-            && ends.is_empty()
-        {
-            // Another name for a thing, or a perfect one, is found by building it.
-            return self.find_by_building(model, subject, name, sym);
-        }
-        Err(self.not_in_system(model, subject, name, &wanted, &ends))
-    }
-
-    fn find_by_building(
-        &mut self,
-        model: &mut Model<'_>,
-        subject: &Subject,
-        name: ExprId,
-        sym: Sym,
-    ) -> Out<Option<BlockId>> {
-        if model.lookup(sym).is_some() {
-            let asked = model.build(name)?;
-            if let Some((own, item)) = model.things_under(asked).first().cloned()
-                && model.things_under(asked).len() == 1
-                && model.things_under(subject.prepared.asked).iter().any(|(n, _)| *n == own)
-            {
-                if model.item(item).perfect {
-                    return Ok(None);
-                }
-                let found = subject.prepared.system.leaves.iter().position(|l| model.leaf_name(l) == own);
-                // What lies on no way of a network is none of the leaves.
-                return Ok(found.and_then(|number| subject.prepared.plan.of_leaf(number as u32)));
-            }
-        }
-        let wanted = model.tree.names.text(sym).to_string();
-        Err(self.not_in_system(model, subject, name, &wanted, &[]))
-    }
-
-    fn shares_with_the_rest(&mut self, model: &mut Model<'_>, wanted: &str, name: ExprId) -> Fault {
-        let place = model.tree.span(name);
-        model.fault(
-            Problem::error(
-                Code::NoValue,
-                place,
-                format!(
-                    "`{wanted}` shares parts with the rest of the system and has no importance as a whole"
-                ),
-            )
-            .mend("ask for its parts one by one"),
-        )
-    }
-
-    fn not_in_system(
-        &mut self,
-        model: &mut Model<'_>,
-        subject: &Subject,
-        name: ExprId,
-        wanted: &str,
-        ends: &[(String, Option<BlockId>)],
-    ) -> Fault {
-        let place = model.tree.span(name);
-        let system = model.text_of(subject.thing);
-        let known: Vec<String> = subject.prepared.system.leaves.iter().map(|l| model.leaf_name(l)).collect();
-        let problem = if ends.len() > 1 {
-            let some: Vec<&str> = ends.iter().take(3).map(|(n, _)| n.as_str()).collect();
-            Problem::error(Code::AmbiguousName, place, format!("\"{wanted}\" may be {}", some.join(" or ")))
-                .mend("write its name in full, owner first")
-        } else {
-            let problem =
-                Problem::error(Code::UnknownName, place, format!("\"{wanted}\" is no thing in {system}"));
-            match words::nearest(wanted, known.iter().map(String::as_str)) {
-                Some(near) => problem.mend(format!("did you mean \"{near}\"?")),
-                None => {
-                    let some: Vec<&str> = known.iter().take(5).map(String::as_str).collect();
-                    problem.mend(format!("its things are {}", some.join(", ")))
-                }
-            }
-        };
-        model.fault(problem)
-    }
-}
-
-/// Whether a thing stands under the asked one and yet nothing rests on it: a
-/// stop of a network that lies on no way, which changes as little as a perfect one.
-fn lies_on_no_way(model: &Model<'_>, subject: &Subject, wanted: &str) -> bool {
-    let tail = format!(".{wanted}");
-    let things = model.things_under(subject.prepared.asked);
-    if things.iter().any(|(name, _)| name == wanted) {
-        return true;
-    }
-    things.iter().filter(|(name, _)| name.ends_with(&tail)).count() == 1
 }
 
 /// One measure of importance. Definitions: criticality B·q/F, Fussell–Vesely

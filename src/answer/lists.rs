@@ -8,18 +8,15 @@ use super::reply::Reply;
 use crate::engine::cuts::{Minimal, single_points};
 use crate::engine::listing::{CutBy, Limits};
 use crate::engine::minimal::Which;
-use crate::engine::plan::Block;
 use crate::language::{Clause, Expr, ExprId, List, words};
 use crate::number::{Chance, Real, format_number};
 use crate::source::{Code, Problem};
-use crate::steps::{Formula, Outcome, Rule, Side, Step, StepList, folded, listed, shown, write};
+use crate::steps::{Side, folded, listed};
 use crate::system::{Base, Exposure, Item, Model, Node, NodeId, Out, Pace, STEP};
 use std::collections::hash_map::Entry;
 
 /// Sets listed where the question does not say how many.
 const FIRST: usize = 100;
-/// The most steps that are written.
-const MOST_STEPS: usize = 10_000;
 
 /// Limits of `cuts(x, order 3)`, `cuts(x, first 20)`.
 ///
@@ -168,7 +165,11 @@ impl Desk {
         Ok(Reply::Table { head: vec!["single point".to_string(), "F".to_string()], rows, foot: None })
     }
 
-    fn rank_table(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
+    /// The things of a system by importance, as a table.
+    ///
+    /// # Errors
+    /// What prevents it.
+    pub(crate) fn rank_table(&mut self, model: &mut Model<'_>, call: ExprId, args: List) -> Out<Reply> {
         const COLUMNS: [&str; 7] = ["Birnbaum", "criticality", "FV", "RAW", "RRW", "doubled", "made perfect"];
         let subject = self.subject(model, call, args, 1)?;
         let ranked = self.rank(model, subject.thing, &subject.prepared, &subject.valued, &subject.given)?;
@@ -264,220 +265,6 @@ impl Desk {
         let head = ["thing", "data", "source"].map(str::to_string).to_vec();
         Ok(Reply::Table { head, rows, foot: None })
     }
-
-    /// The steps of `R(x)`, `F(x)` or a formula of them.
-    ///
-    /// # Errors
-    /// What prevents the answer itself, or that there are too many steps.
-    pub fn steps(&mut self, model: &mut Model<'_>, asked: ExprId) -> Out<StepList> {
-        let inner = model.tree.inside_groups(asked);
-        let mut list = StepList::default();
-        if let Expr::Call(word, args) = model.tree.expr(inner)
-            && matches!(model.tree.names.text(word), "R" | "F")
-        {
-            let _certain = self.steps_of(model, inner, args, &mut list)?;
-            return Ok(list);
-        }
-        let number = self.number(model, asked)?;
-        let Number::Figure(quantity) = number else {
-            let place = model.tree.span(asked);
-            return Err(model.fault(
-                Problem::error(Code::WrongKind, place, "steps are written for R, F and formulas of them")
-                    .mend("write `steps(R(feed))`"),
-            ));
-        };
-        let formula = self.formula(model, inner, &mut list)?;
-        let unit = model.units.symbol(&quantity.dim, &model.tree.names);
-        let works = formula.clone();
-        let fails = formula.one_minus();
-        let place = Some(model.tree.span(asked));
-        list.steps.push(Step {
-            thing: model.text_of(asked),
-            symbol: model.text_of(asked),
-            place,
-            rule: Rule::Arithmetic,
-            works,
-            fails,
-            shown: Side::Works,
-            outcome: Outcome::Figure(quantity.value, unit),
-        });
-        Ok(list)
-    }
-
-    /// Adds the steps of one `R(…)` or `F(…)`; its last step, or what it is for certain.
-    fn steps_of(
-        &mut self,
-        model: &mut Model<'_>,
-        call: ExprId,
-        args: List,
-        list: &mut StepList,
-    ) -> Out<Result<usize, bool>> {
-        let Subject { prepared, given, thing, .. } = self.subject(model, call, args, 1)?;
-        // Like things share a step, so that their number alone does not decide.
-        let blocks = prepared.plan.blocks();
-        let steps = blocks.filter(|b| !matches!(prepared.plan.block(*b), Block::Leaf(_))).count();
-        if steps > MOST_STEPS {
-            return Err(too_many_steps(model, thing, call));
-        }
-        let exposure = self.exposure(model, &given, model.tree.span(call))?;
-        let known = std::mem::take(list);
-        let (mut done, root) = write(model, &prepared.system, &prepared.plan, &exposure, known);
-        for line in assumptions(model, &prepared.system, &exposure) {
-            if !done.assumptions.contains(&line) {
-                done.assumptions.push(line);
-            }
-        }
-        if let Err(works) = root {
-            done.remarks.push(format!(
-                "{} {} for certain",
-                model.text_of(thing),
-                if works { "works" } else { "fails" }
-            ));
-        }
-        if done.steps.len() > MOST_STEPS {
-            return Err(too_many_steps(model, thing, call));
-        }
-        *list = done;
-        Ok(root)
-    }
-
-    /// A formula of questions and figures as a tree; the steps of its questions go to `list`.
-    fn formula(&mut self, model: &mut Model<'_>, expr: ExprId, list: &mut StepList) -> Out<Formula> {
-        let place = model.tree.span(expr);
-        self.depth += 1;
-        let out = if self.depth > 100 {
-            Err(model.fault(
-                Problem::error(Code::TooDeep, place, "this formula is nested too deep for its steps")
-                    .mend("give parts of it names on lines of their own"),
-            ))
-        } else {
-            self.formula_inner(model, expr, list)
-        };
-        self.depth -= 1;
-        out
-    }
-
-    fn formula_inner(&mut self, model: &mut Model<'_>, expr: ExprId, list: &mut StepList) -> Out<Formula> {
-        use crate::language::ArithOp;
-        Ok(match model.tree.expr(expr) {
-            Expr::Group(inner) => self.formula(model, inner, list)?,
-            Expr::Negate(inner) => Formula::Negate(Box::new(self.formula(model, inner, list)?)),
-            Expr::Arith(op, a, b) => {
-                let (a, b) = (self.formula(model, a, list)?, self.formula(model, b, list)?);
-                match op {
-                    ArithOp::Add => Formula::Sum(vec![a, b]),
-                    ArithOp::Sub if a == Formula::Whole(1) => b.one_minus(),
-                    ArithOp::Sub => Formula::Sum(vec![a, Formula::Negate(Box::new(b))]),
-                    ArithOp::Mul => Formula::Product(vec![a, b]),
-                    ArithOp::Div => Formula::Quotient(Box::new(a), Box::new(b)),
-                    ArithOp::Pow => Formula::Power(Box::new(a), Box::new(b)),
-                }
-            }
-            Expr::Call(word, args) => {
-                let text = model.tree.names.text(word);
-                if let Some(name) = words::FUNCTIONS.iter().find(|f| **f == text) {
-                    let args = model.tree.list(args).to_vec();
-                    let args =
-                        args.into_iter().map(|a| self.formula(model, a, list)).collect::<Out<Vec<_>>>()?;
-                    return Ok(Formula::Function(name, args));
-                }
-                if matches!(text, "R" | "F") {
-                    let side = if text == "R" { Side::Works } else { Side::Fails };
-                    return Ok(match self.steps_of(model, expr, args, list)? {
-                        Ok(step) => Formula::Step(step, side),
-                        Err(works) => Formula::Whole(u32::from(works == (side == Side::Works))),
-                    });
-                }
-                self.datum(model, expr)?
-            }
-            Expr::Name(sym) => match model.lookup(sym).and_then(|d| model.def(d).value) {
-                Some(value)
-                    if matches!(
-                        model.tree.expr(model.tree.inside_groups(value)),
-                        Expr::Arith(..) | Expr::Call(..)
-                    ) =>
-                {
-                    self.formula(model, value, list)?
-                }
-                _ => self.datum(model, expr)?,
-            },
-            Expr::Literal(_) => {
-                let quantity = model.figure(expr)?;
-                if quantity.whole() == Some(1) { Formula::Whole(1) } else { self.datum(model, expr)? }
-            }
-            _ => self.datum(model, expr)?,
-        })
-    }
-
-    fn datum(&mut self, model: &mut Model<'_>, expr: ExprId) -> Out<Formula> {
-        let quantity = model.figure_with(expr, crate::system::Ctx::TOP, self)?;
-        let unit = model.units.symbol(&quantity.dim, &model.tree.names);
-        let number = super::plain(quantity.value);
-        let text = if unit.is_empty() { number } else { format!("{number} {unit}") };
-        Ok(Formula::Datum {
-            symbol: model.text_of(expr),
-            value: quantity.value,
-            complement: quantity.complement,
-            written: self.written_as(model, expr, &text),
-            text,
-        })
-    }
-
-    /// How the note has a figure, where the formula shows another spelling.
-    fn written_as(&self, model: &Model<'_>, expr: ExprId, shown: &str) -> Option<String> {
-        let from = match model.tree.expr(expr) {
-            Expr::Name(sym) => model.lookup(sym).and_then(|d| model.def(d).value)?,
-            _ => expr,
-        };
-        Some(model.text_of(from)).filter(|text| text != shown)
-    }
-
-    /// Steps as a numbered list. `places` says on which line of the source each
-    /// thing stands; a note itself shows none, since its answers move its lines.
-    pub fn steps_reply(&self, model: &Model<'_>, list: &StepList, places: bool) -> Reply {
-        let digits = (model.digits + 3).min(15);
-        let mut entries: Vec<Vec<String>> = Vec::new();
-        for step in shown(list, model.sources, digits) {
-            let mut about = vec![step.thing.clone()];
-            about.extend((places && !step.place.is_empty()).then(|| step.place.clone()));
-            about.push(step.rule.to_string());
-            if !step.rests_on.is_empty() {
-                let on: Vec<String> = step.rests_on.iter().map(ToString::to_string).collect();
-                about.push(format!("from {}", on.join(", ")));
-            }
-            let mut formula = format!("{} = {}", step.left, step.symbols);
-            if step.numbers != step.symbols {
-                formula.push_str(&format!(" = {}", step.numbers));
-            }
-            if step.result != step.numbers {
-                formula.push_str(&format!(" = {}", step.result));
-            }
-            if !step.other.is_empty() {
-                formula.push_str(&format!("; {}", step.other));
-            }
-            let mut entry = vec![about.join(", "), formula];
-            if !step.data.is_empty() {
-                entry.push(format!("with {}", step.data.join(", ")));
-            }
-            entries.push(entry);
-        }
-        let mut notes = list.remarks.clone();
-        notes.extend(list.assumptions.iter().map(|line| format!("assumed: {line}")));
-        Reply::List { entries, numbered: true, notes }
-    }
-}
-
-fn too_many_steps(model: &mut Model<'_>, thing: ExprId, call: ExprId) -> crate::system::Fault {
-    let text = model.text_of(thing);
-    let place = model.tree.span(call);
-    model.fault(
-        Problem::error(
-            Code::TooLarge,
-            place,
-            format!("the steps of `{text}` would be more than {MOST_STEPS}"),
-        )
-        .mend("ask for the steps of its parts"),
-    )
 }
 
 fn probability_text(model: &Model<'_>, value: Real, which: Which, subject: &Subject, set: &[u32]) -> String {

@@ -2,12 +2,12 @@
 
 use super::desk::Desk;
 use super::display::{figure_text, written};
-use super::figure::Number;
+use super::figure::{Number, asks_within};
 use crate::language::{ExprId, Limit};
 use crate::number::{Real, format_number};
 use crate::source::{Code, Problem};
 use crate::steps::Side;
-use crate::system::{Ctx, Model, Out, Quantity};
+use crate::system::{Ctx, Model, Out, Quantity, STEP};
 
 /// How a requirement came out.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -35,6 +35,7 @@ pub fn require(
     limit: Limit,
     right: ExprId,
 ) -> Out<(Verdict, String)> {
+    let (left, limit, right) = turned(model, left, limit, right);
     let number = desk.number(model, left)?;
     let bar = model.figure_with(right, Ctx::TOP, desk)?;
     let value = match quantity(&number) {
@@ -75,6 +76,31 @@ pub fn require(
     Ok((verdict, format!("{word}: {shown}{}", used.unwrap_or_default())))
 }
 
+/// `0.98 <= R(feed)` says the same as `R(feed) >= 0.98`, and what is asked is shown.
+fn turned(model: &Model<'_>, left: ExprId, limit: Limit, right: ExprId) -> (ExprId, Limit, ExprId) {
+    let turned = asks_within(model, right) && !asks_within(model, left);
+    match (turned, limit) {
+        (false, limit) => (left, limit, right),
+        (true, Limit::AtLeast) => (right, Limit::AtMost, left),
+        (true, Limit::AtMost) => (right, Limit::AtLeast, left),
+    }
+}
+
+/// A requirement as what is asked, at least or at most, and the limit.
+///
+/// # Errors
+/// What is wrong with the limit.
+pub(crate) fn require_parts(
+    desk: &mut Desk,
+    model: &mut Model<'_>,
+    left: ExprId,
+    limit: Limit,
+    right: ExprId,
+) -> Out<(ExprId, Limit, Quantity)> {
+    let (left, limit, right) = turned(model, left, limit, right);
+    Ok((left, limit, model.figure_with(right, Ctx::TOP, desk)?))
+}
+
 fn quantity(number: &Number) -> Result<Quantity, String> {
     match number {
         Number::Infinite => Err("it is infinite".to_string()),
@@ -91,7 +117,8 @@ fn compare(value: &Quantity, limit: Limit, bar: &Quantity) -> Verdict {
         (Some(ca), Some(cb)) if value.value > half => (ca, cb, true),
         _ => (value.value, bar.value, false),
     };
-    let scale = if flipped { value.error.min(bar.error) } else { value.error + bar.error };
+    let scale =
+        if flipped { complement_error(value) + complement_error(bar) } else { value.error + bar.error };
     let slack = scale.max((a.to_f64().abs() + b.to_f64().abs()) * 1e-28);
     let difference = (a - b).to_f64();
     let relative = slack / (a.to_f64().abs() + b.to_f64().abs()).max(f64::MIN_POSITIVE);
@@ -100,6 +127,14 @@ fn compare(value: &Quantity, limit: Limit, bar: &Quantity) -> Verdict {
     }
     let above = (difference > 0.0) != flipped;
     if above == (limit == Limit::AtLeast) { Verdict::Met } else { Verdict::NotMet }
+}
+
+/// The error of what 1 minus a figure is. That of the figure is this and the
+/// rounding of the figure itself, which may be far larger.
+fn complement_error(figure: &Quantity) -> f64 {
+    let complement = figure.complement.map_or(0.0, |c| c.to_f64().abs());
+    let rounding = 1.001 * figure.value.to_f64().abs() * STEP;
+    (figure.error - rounding).max(16.0 * complement * STEP)
 }
 
 /// `, uses 71.5% of the allowed 0.02`

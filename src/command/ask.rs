@@ -1,10 +1,11 @@
 //! `tieback ask`: answers one question.
 
 use super::Voice;
+use super::document::{Document, Room};
 use super::each::{Outcome, each};
 use super::input::Input;
 use super::verdict::Verdict;
-use crate::note::{self, Filled};
+use crate::answer::Filled;
 use clap::Args;
 
 /// Answer one question from the definitions of a note, or from given lines
@@ -15,13 +16,16 @@ use clap::Args;
                   tieback ask 'R(1 of 2 gate)' --given 'gate = 0.98'"
 )]
 pub(super) struct Ask {
-    /// The note (`-` for standard input), if there is one, and the question
+    /// The note or parts list (`-` for standard input), if there is one, and the question
     #[arg(value_name = "FILE> <QUESTION", required = true, num_args = 1..=2)]
     words: Vec<String>,
 
     /// A further line, as it would stand in a note; may be repeated
     #[arg(long, value_name = "LINE")]
     given: Vec<String>,
+
+    #[command(flatten)]
+    room: Room,
 }
 
 impl Ask {
@@ -32,7 +36,7 @@ impl Ask {
             _ => return Verdict { error: true, ..Verdict::default() }, // clap lets none and three not pass
         };
         let question = bare(question);
-        answer(input, voice, false, |name, text| note::ask(name, text, &self.given, question))
+        answer(input, voice, false, |name, document| document.ask(name, &self.given, question, &self.room))
     }
 }
 
@@ -47,20 +51,20 @@ pub(super) fn answer(
     input: Option<Input>,
     voice: Voice,
     as_data: bool,
-    ask: impl Fn(&str, &str) -> Filled + Sync,
+    ask: impl Fn(&str, &Document) -> Filled + Sync,
 ) -> Verdict {
     let none = input.is_none();
     // Without a file all lines are given, and a name is only needed for messages.
     let input = input.unwrap_or(Input::Stdin);
-    each(std::slice::from_ref(&input), voice, |input| {
-        let (name, text) = match none {
-            true => ("given".to_string(), String::new()),
-            false => match input.read() {
-                Ok(text) => (input.name(), text),
+    each(std::slice::from_ref(&input), voice, |input, _| {
+        let (name, document) = match none {
+            true => ("given".to_string(), Document::Note("".into())),
+            false => match Document::read(input) {
+                Ok(document) => (input.name(), document),
                 Err(unread) => return Outcome::new(input, unread.filled),
             },
         };
-        let mut filled = ask(&name, &text);
+        let mut filled = ask(&name, &document);
         // Requirements elsewhere in the note are not what was asked.
         filled.unmet = 0;
         let mut outcome = Outcome::new(input, filled);

@@ -1,10 +1,14 @@
 //! `tieback check`: says whether the notes are as tieback would leave them.
 
 use super::Voice;
+use super::document::{Document, Room};
 use super::each::{Outcome, counted, each};
 use super::input::{Input, expand};
+use super::progress::Watch;
 use super::verdict::Verdict;
-use crate::note::{self, Asked, Filled, Rewrite};
+use crate::answer::{Asked, Filled};
+use crate::document::patch::Rewrite;
+use crate::sheets::Writing;
 use crate::source::{Code, Problem};
 use clap::Args;
 use std::path::PathBuf;
@@ -13,23 +17,25 @@ use std::path::PathBuf;
 #[derive(Args, Debug)]
 #[command(after_help = "Example:\n  tieback check notes/")]
 pub(super) struct Check {
-    /// Notes, folders of notes, or patterns; `-` for standard input
+    /// Notes, parts lists, folders of them, or patterns; `-` for standard input
     #[arg(value_name = "FILE", required = true)]
     files: Vec<PathBuf>,
+
+    #[command(flatten)]
+    room: Room,
 }
 
 impl Check {
     pub(super) fn run(&self, voice: Voice) -> Verdict {
-        each(&expand(&self.files), voice, one)
+        each(&expand(&self.files), voice, |input, watch| one(input, &self.room, watch))
     }
 }
 
-fn one(input: &Input) -> Outcome {
-    let text = match input.read() {
-        Ok(text) => text,
-        Err(unread) => return Outcome::new(input, unread.filled),
-    };
-    judge(input, note::fill(&input.name(), &text))
+fn one(input: &Input, room: &Room, watch: &Watch) -> Outcome {
+    match Document::read(input) {
+        Ok(document) => judge(input, document.fill(input, Writing::Compare, room, watch)),
+        Err(unread) => Outcome::new(input, unread.filled),
+    }
 }
 
 /// Adds what is stale to what filling gave.

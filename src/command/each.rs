@@ -2,13 +2,15 @@
 
 use super::Voice;
 use super::input::Input;
+use super::progress::{Progress, Watch};
 use super::verdict::Verdict;
-use crate::note::{Asked, Filled};
+use crate::answer::{Asked, Filled};
 use crate::report::json::{FileReport, Run};
 use crate::report::render;
 use crate::source::{Code, Problem};
 use rayon::prelude::*;
 use serde::Serialize;
+use std::sync::Arc;
 
 /// What came of one note, ready to be reported.
 #[derive(Debug)]
@@ -55,34 +57,47 @@ impl Outcome {
 
 /// The error for a requirement that is not met, unless it has been made already.
 fn unmet(asked: &Asked, filled: &Filled) -> Option<Problem> {
+    if !asked.unmet {
+        return None;
+    }
     let overlaps = |p: &Problem| p.place.start <= asked.place.end && asked.place.start <= p.place.end;
-    let said = filled.problems.iter().any(|p| p.code == Code::NotMet && overlaps(p));
+    // In a sheet the requirement and its answer are cells of one row.
+    let is_it = |p: &Problem| p.message.strip_prefix("requirement ") == Some(asked.new.as_str());
+    let said = filled.problems.iter().any(|p| p.code == Code::NotMet && (overlaps(p) || is_it(p)));
     let message = if asked.new.starts_with("UNDECIDED") {
         "a requirement is undecided"
     } else {
         "a requirement is not met"
     };
-    (asked.unmet && !said).then(|| Problem::error(Code::NotMet, asked.place, message).mark(&asked.new))
+    (!said).then(|| Problem::error(Code::NotMet, asked.place, message).mark(&asked.new))
 }
 
 /// So many notes are held in memory at once.
 const AT_ONCE: usize = 256;
 
 /// Works on each input and reports in their order.
-pub(super) fn each(inputs: &[Input], voice: Voice, work: impl Fn(&Input) -> Outcome + Sync) -> Verdict {
+pub(super) fn each(
+    inputs: &[Input],
+    voice: Voice,
+    work: impl Fn(&Input, &Watch) -> Outcome + Sync,
+) -> Verdict {
+    let watch = Arc::new(Watch::default());
     let mut verdict = Verdict::default();
     let mut reports = Vec::new();
     let done = |input: &Input| {
-        let mut outcome = work(input);
+        let mut outcome = work(input, &watch);
         outcome.quieten(input);
+        watch.file_done();
         outcome
     };
     for some in inputs.chunks(AT_ONCE) {
+        let progress = Progress::start(&watch, some.len(), voice);
         // Threads take longer to start than one note takes to fill.
         let outcomes: Vec<Outcome> = match some {
             [one] => vec![done(one)],
             _ => some.par_iter().map(done).collect(),
         };
+        drop(progress);
         for outcome in outcomes {
             verdict = verdict.and(outcome.verdict);
             if voice.json {

@@ -1,7 +1,8 @@
 //! What is given on the command line, as a list of notes.
 
 use super::files;
-use crate::note::{Filled, Rewrite};
+use crate::answer::Filled;
+use crate::sheets::SheetForm;
 use crate::source::{Code, Problem, Sources, Span};
 use globset::GlobBuilder;
 use ignore::WalkBuilder;
@@ -51,8 +52,26 @@ impl Input {
         !matches!(self, Input::File { named: false, .. })
     }
 
+    /// Where it is, if it is a file.
+    pub(super) fn path(&self) -> Option<&Path> {
+        match self {
+            Input::File { path, .. } => Some(path),
+            _ => None,
+        }
+    }
+
+    /// What sort of sheets it holds; `None` for a note.
+    pub(super) fn sheet_form(&self) -> Option<SheetForm> {
+        sheet_form(self.path()?)
+    }
+
     /// Its text.
     pub(super) fn read(&self) -> Result<String, Box<Unread>> {
+        String::from_utf8(self.bytes()?).map_err(|error| self.not_utf8(error))
+    }
+
+    /// Its bytes.
+    pub(super) fn bytes(&self) -> Result<Vec<u8>, Box<Unread>> {
         let bytes = match self {
             Input::Stdin => {
                 let mut bytes = Vec::new();
@@ -61,12 +80,7 @@ impl Input {
                     Err(error) => Err((files::cause(&error), "pipe the text of a note into it".to_string())),
                 }
             }
-            Input::File { path, .. } => {
-                if let Some(problem) = later_form(path) {
-                    return Err(Unread::because(problem));
-                }
-                files::read(path).map_err(|trouble| (trouble.cause, trouble.mend))
-            }
+            Input::File { path, .. } => files::read(path).map_err(|trouble| (trouble.cause, trouble.mend)),
             Input::Nothing(_, problem) => return Err(Unread::because((**problem).clone())),
         };
         let bytes = bytes.map_err(|(cause, mend)| {
@@ -77,9 +91,9 @@ impl Input {
         if bytes.len() > Sources::LIMIT {
             let message = format!("cannot read \"{}\": it is larger than 4 GiB", self.name());
             let problem = Problem::error(Code::FileAccess, Span::default(), message);
-            return Err(Unread::because(problem.mend("split it into several notes")));
+            return Err(Unread::because(problem.mend("split it into several files")));
         }
-        String::from_utf8(bytes).map_err(|error| self.not_utf8(error))
+        Ok(bytes)
     }
 
     /// The error for bytes that are not UTF-8, with the place of the first in
@@ -116,27 +130,8 @@ pub(super) struct Unread {
 
 impl Unread {
     fn because(problem: Problem) -> Box<Unread> {
-        let filled = Filled {
-            sources: Sources::default(),
-            problems: vec![problem],
-            asked: Vec::new(),
-            unmet: 0,
-            rewrite: Rewrite::Unchanged,
-        };
-        Box::new(Unread { filled, bytes: None })
+        Box::new(Unread { filled: Filled::nothing(Sources::default(), vec![problem]), bytes: None })
     }
-}
-
-/// Workbooks and their kind are part of the design and not read yet; as text
-/// they would only give an error that misleads.
-fn later_form(path: &Path) -> Option<Problem> {
-    let extension = path.extension()?.to_str()?.to_ascii_lowercase();
-    let known = ["xlsx", "xlsm", "xls", "ods", "csv"].contains(&extension.as_str());
-    known.then(|| {
-        let message = format!("\"{}\" is a sheet, and sheets are not known yet", path.to_string_lossy());
-        Problem::error(Code::NotKnownYet, Span::default(), message)
-            .mend("put the parts into a table or a block of a Markdown note")
-    })
 }
 
 /// The notes that arguments stand for: files, folders and patterns, in the
@@ -173,11 +168,17 @@ fn keep_first(inputs: &mut Vec<Input>) {
 
 fn folder(root: &Path, inputs: &mut Vec<Input>) {
     let before = inputs.len();
-    walk(root, inputs, is_note);
+    walk(root, inputs, is_document);
     if inputs.len() == before {
-        let message = format!("there is no note in the folder \"{}\"", name(root));
+        let message = format!("there is no note and no parts list in the folder \"{}\"", name(root));
         let problem = Problem::remark(Code::NothingToDo, Span::default(), message);
-        inputs.push(Input::Nothing(name(root), Box::new(problem.mend("notes end in .md or .markdown"))));
+        inputs.push(Input::Nothing(
+            name(root),
+            Box::new(
+                problem
+                    .mend("notes end in .md or .markdown, parts lists in .xlsx, .xlsm, .ods, .csv or .tsv"),
+            ),
+        ));
     }
 }
 
@@ -203,7 +204,7 @@ fn pattern(pattern: &Path, inputs: &mut Vec<Input>) {
     // A pattern that spells the ending out means files with that ending.
     let spelt = text.rsplit_once('.').is_some_and(|(_, end)| !end.contains('/') && !has_sign(end));
     let before = inputs.len();
-    walk(&root, inputs, |path| (spelt || is_note(path)) && glob.is_match(path));
+    walk(&root, inputs, |path| (spelt || is_document(path)) && glob.is_match(path));
     if inputs.len() == before {
         inputs.push(nothing(
             format!("no file matches \"{text}\""),
@@ -239,8 +240,18 @@ fn walk(root: &Path, inputs: &mut Vec<Input>, wanted: impl Fn(&Path) -> bool) {
     inputs.extend(found.into_iter().map(|path| Input::File { path, named: false }));
 }
 
-fn is_note(path: &Path) -> bool {
-    path.extension().is_some_and(|e| e.eq_ignore_ascii_case("md") || e.eq_ignore_ascii_case("markdown"))
+/// Whether a file is taken that was only found on the way. Workbooks that are
+/// only read are not, nor the lock files of open ones.
+fn is_document(path: &Path) -> bool {
+    const ENDINGS: &[&str] = &["md", "markdown", "xlsx", "xlsm", "ods", "csv", "tsv"];
+    let locks = path.file_name().is_some_and(|name| name.to_string_lossy().starts_with("~$"));
+    let ending = path.extension().and_then(|e| e.to_str());
+    !locks && ending.is_some_and(|ending| ENDINGS.iter().any(|known| ending.eq_ignore_ascii_case(known)))
+}
+
+/// The form of a file of sheets, by the ending of its name.
+pub(super) fn sheet_form(path: &Path) -> Option<SheetForm> {
+    SheetForm::of_ending(path.extension()?.to_str()?)
 }
 
 fn is_pattern(path: &Path) -> bool {

@@ -5,11 +5,15 @@
 
 mod ask;
 mod check;
+mod document;
 mod each;
 mod explain;
 mod files;
 mod fill;
 mod input;
+mod progress;
+mod review;
+mod shelf;
 mod steps;
 mod terminal;
 mod verdict;
@@ -32,7 +36,7 @@ Exit codes:
 tieback is an aid to calculation. It is no substitute for the codes and
 standards in force and the judgement of a licensed engineer.";
 
-/// Fill reliability answers into Markdown notes, and change no other byte
+/// Fill reliability answers into Markdown notes and parts lists, and change no other byte
 #[derive(Parser, Debug)]
 #[command(name = "tieback", version, after_long_help = CAUTION, max_term_width = 100)]
 struct Cli {
@@ -50,6 +54,7 @@ enum Command {
     Check(check::Check),
     Ask(ask::Ask),
     Steps(steps::Steps),
+    Review(review::Review),
     Explain(explain::Explain),
 }
 
@@ -73,6 +78,7 @@ pub fn run(arguments: impl IntoIterator<Item = OsString>) -> ExitCode {
         Command::Check(command) => Ok(command.run(voice)),
         Command::Ask(command) => Ok(command.run(voice)),
         Command::Steps(command) => Ok(command.run(voice)),
+        Command::Review(command) => Ok(command.run(voice)),
         Command::Explain(command) => Ok(command.run(voice)),
     };
     match done {

@@ -2,16 +2,17 @@
 
 use super::Voice;
 use super::ask::{answer, bare};
+use super::document::Room;
 use super::input::Input;
 use super::verdict::Verdict;
-use crate::note::{self, StepsForm};
+use crate::answer::StepsForm;
 use clap::{Args, ValueEnum};
 
 /// Show the numbered steps to an answer, so that each can be recomputed
 #[derive(Args, Debug)]
 #[command(after_help = "Example:\n  tieback steps flood-gate.md 'R(gate)' --form markdown")]
 pub(super) struct Steps {
-    /// The note; `-` for standard input
+    /// The note or parts list; `-` for standard input
     #[arg(value_name = "FILE")]
     file: String,
 
@@ -26,6 +27,9 @@ pub(super) struct Steps {
     /// How the steps are written; with --json they are data
     #[arg(long, value_enum, default_value = "text")]
     form: Form,
+
+    #[command(flatten)]
+    room: Room,
 }
 
 #[derive(Clone, Copy, ValueEnum, Debug)]
@@ -43,8 +47,8 @@ impl Steps {
             (false, Form::Text) => StepsForm::Text,
             (false, Form::Markdown) => StepsForm::Markdown,
         };
-        answer(Some(Input::one(&self.file)), voice, form == StepsForm::Json, |name, text| {
-            note::steps(name, text, &self.given, bare(&self.question), form)
+        answer(Some(Input::one(&self.file)), voice, form == StepsForm::Json, |name, document| {
+            document.steps(name, &self.given, bare(&self.question), form, &self.room)
         })
     }
 }

@@ -7,20 +7,27 @@ use std::io::{self, IsTerminal, Write};
 #[derive(Clone, Copy, Debug)]
 pub(super) struct Terminal {
     paint: Paint,
+    watched: bool,
 }
 
 impl Terminal {
     /// Colours only where a person looks at them and has not declined them.
     pub(super) fn new() -> Terminal {
-        let declined = std::env::var_os("NO_COLOR").is_some_and(|v| !v.is_empty())
-            || std::env::var_os("TERM").is_some_and(|v| v == "dumb");
-        let coloured = !declined && io::stderr().is_terminal();
-        Terminal { paint: if coloured { Paint::Coloured } else { Paint::Plain } }
+        let dumb = std::env::var_os("TERM").is_some_and(|v| v == "dumb");
+        let declined = dumb || std::env::var_os("NO_COLOR").is_some_and(|v| !v.is_empty());
+        let terminal = io::stderr().is_terminal();
+        let paint = if terminal && !declined { Paint::Coloured } else { Paint::Plain };
+        Terminal { paint, watched: terminal && !dumb }
     }
 
     /// Whether messages are coloured.
     pub(super) fn paint(self) -> Paint {
         self.paint
+    }
+
+    /// Whether somebody may look at a line that moves.
+    pub(super) fn is_watched(self) -> bool {
+        self.watched
     }
 
     /// Says something on standard error.

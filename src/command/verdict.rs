@@ -1,6 +1,6 @@
 //! What a run came to, as an exit code.
 
-use crate::note::Filled;
+use crate::answer::Filled;
 use crate::source::{Code, Level};
 
 /// What was found in a file or a run; several may hold at once.

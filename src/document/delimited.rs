@@ -5,6 +5,7 @@
 //! missing quotes, mixed line endings) is as files are found.
 
 use super::patch::Edit;
+use std::borrow::Cow;
 use std::ops::Range;
 
 /// What sort of delimited file it is; found from its text.
@@ -108,21 +109,23 @@ impl Delimited {
     }
 
     /// What a field says: without its quotes, and a decimal comma as a point.
-    pub fn value(&self, text: &str, field: &Field) -> String {
-        let raw = &text[field.span.clone()];
-        let plain = if field.quoted {
-            let inner = raw.strip_prefix('"').unwrap_or(raw);
-            let inner = inner.trim_end().strip_suffix('"').unwrap_or(inner);
-            inner.replace("\"\"", "\"")
-        } else {
-            raw.to_string()
-        };
-        let trimmed = plain.trim();
-        if self.form.decimal_comma && is_comma_number(trimmed) {
-            trimmed.replace(',', ".")
-        } else {
-            trimmed.to_string()
+    pub fn value<'t>(&self, text: &'t str, field: &Field) -> Cow<'t, str> {
+        let plain = self.as_written(text, field);
+        if !self.form.decimal_comma || !is_comma_value(plain.trim()) {
+            return plain;
         }
+        Cow::Owned(plain.trim().replace(',', "."))
+    }
+
+    /// What a field says, its decimal comma as it stands.
+    pub fn as_written<'t>(&self, text: &'t str, field: &Field) -> Cow<'t, str> {
+        let raw = text.get(field.span.clone()).unwrap_or("");
+        if !field.quoted {
+            return Cow::Borrowed(raw.trim());
+        }
+        let inner = raw.strip_prefix('"').unwrap_or(raw);
+        let inner = inner.trim_end().strip_suffix('"').unwrap_or(inner);
+        if inner.contains('"') { Cow::Owned(inner.replace("\"\"", "\"")) } else { Cow::Borrowed(inner) }
     }
 
     fn has_decimal_commas(&self, text: &str) -> bool {
@@ -135,40 +138,62 @@ impl Delimited {
         commas > 0 && commas >= self.fields.iter().filter(points).count()
     }
 
-    /// The edit that puts an answer into a field. A record that is too short
-    /// gets the fields that it lacks; the answer is quoted if it must be, or if
-    /// the field was.
-    pub fn edit(&self, text: &str, record: usize, column: usize, answer: &str) -> Option<Edit> {
-        let answer = self.written(answer);
+    /// The edits that put answers into a record, each a column and a text, in
+    /// the order of their columns. A record that is too short gets the fields
+    /// that it lacks; an answer is quoted if it must be, or if the field was.
+    pub fn edits(&self, record: usize, answers: &[(usize, &str)]) -> Vec<Edit> {
         let fields = self.record_fields(record);
-        if let Some(field) = fields.get(column) {
-            let text = self.quoted(&answer, field.quoted);
-            return Some(Edit { span: field.span.clone(), text });
-        }
-        let last = fields.last()?;
-        let missing = column + 1 - fields.len();
+        let Some(last) = fields.last() else { return Vec::new() };
+        let mut edits = Vec::new();
         let mut added = String::new();
-        for _ in 0..missing {
-            added.push(char::from(self.form.delimiter));
+        let mut reached = fields.len();
+        for &(column, answer) in answers {
+            match fields.get(column) {
+                Some(field) => {
+                    edits.push(Edit { span: field.span.clone(), text: self.quoted(answer, field.quoted) });
+                }
+                None => {
+                    added.extend((reached..=column).map(|_| char::from(self.form.delimiter)));
+                    added.push_str(&self.quoted(answer, false));
+                    reached = column + 1;
+                }
+            }
         }
-        added.push_str(&self.quoted(&answer, false));
-        let _ = text;
-        Some(Edit { span: last.span.end..last.span.end, text: added })
+        if !added.is_empty() {
+            // An edit of the last field and what follows it are one place.
+            match edits.last_mut().filter(|edit| edit.span == last.span) {
+                Some(edit) => edit.text.push_str(&added),
+                None => edits.push(Edit { span: last.span.end..last.span.end, text: added }),
+            }
+        }
+        edits
     }
 
-    /// A number as this file writes numbers.
-    fn written(&self, answer: &str) -> String {
-        if self.form.decimal_comma && answer.parse::<f64>().is_ok() {
-            answer.replace('.', ",")
-        } else {
-            answer.to_string()
-        }
+    /// An answer as this file writes numbers: with its decimal comma, if it has one.
+    pub fn written<'t>(&self, answer: &'t str) -> Cow<'t, str> {
+        if self.form.decimal_comma { swapped(answer, '.', ',') } else { Cow::Borrowed(answer) }
+    }
+
+    /// The opposite of [`Delimited::written`].
+    pub fn plain<'t>(&self, answer: &'t str) -> Cow<'t, str> {
+        if self.form.decimal_comma { swapped(answer, ',', '.') } else { Cow::Borrowed(answer) }
     }
 
     fn quoted(&self, answer: &str, was_quoted: bool) -> String {
         let must = answer.bytes().any(|b| b == self.form.delimiter || matches!(b, b'"' | b'\n' | b'\r'));
         if must || was_quoted { format!("\"{}\"", answer.replace('"', "\"\"")) } else { answer.to_string() }
     }
+}
+
+/// A text with one sign between digits put in place of another.
+fn swapped(text: &str, from: char, to: char) -> Cow<'_, str> {
+    let bytes = text.as_bytes();
+    let digit = |at: Option<usize>| at.and_then(|at| bytes.get(at)).is_some_and(u8::is_ascii_digit);
+    let between = |at: usize| digit(at.checked_sub(1)) && digit(Some(at + 1));
+    if !text.match_indices(from).any(|(at, _)| between(at)) {
+        return Cow::Borrowed(text);
+    }
+    Cow::Owned(text.char_indices().map(|(at, c)| if c == from && between(at) { to } else { c }).collect())
 }
 
 /// One past the closing quote of the field that opens at `at`.
@@ -185,6 +210,16 @@ fn after_quotes(bytes: &[u8], mut at: usize) -> usize {
         }
     }
     at
+}
+
+/// A decimal comma between digits at the start of a value: `0,98`, `12,5%`, `1,2e-6 /h`.
+fn is_comma_value(text: &str) -> bool {
+    let number = text.trim_end_matches(|c: char| !c.is_ascii_digit());
+    let rest = &text[number.len()..];
+    is_comma_number(number) && (rest.is_empty() || rest.trim_start().starts_with('%'))
+        || text.split_once([' ', '/']).is_some_and(|(number, unit)| {
+            is_comma_number(number) && !unit.contains([',', ' ']) && !unit.trim().is_empty()
+        })
 }
 
 /// `0,98`, `-12,5`, `1,2e-6`
@@ -237,13 +272,17 @@ mod tests {
 
     fn values(text: &str) -> Vec<Vec<String>> {
         let file = Delimited::read(text, false);
-        (0..file.len()).map(|r| file.record_fields(r).iter().map(|f| file.value(text, f)).collect()).collect()
+        let record = |r| file.record_fields(r).iter().map(|f| file.value(text, f).into_owned()).collect();
+        (0..file.len()).map(record).collect()
     }
 
     fn filled(text: &str, record: usize, column: usize, answer: &str) -> String {
         let file = Delimited::read(text, false);
-        let edit = file.edit(text, record, column, answer).expect("a place");
-        match apply(text.as_bytes(), &[edit]).expect("one edit") {
+        patched(text, &file.edits(record, &[(column, &file.written(answer))]))
+    }
+
+    fn patched(text: &str, edits: &[Edit]) -> String {
+        match apply(text.as_bytes(), edits).expect("edits that fit") {
             Rewrite::Patched(bytes) => String::from_utf8(bytes).expect("text"),
             Rewrite::Unchanged => text.to_string(),
         }
@@ -271,6 +310,36 @@ mod tests {
         assert_eq!(filled(text, 1, 1, "0.9"), text.replace("0.5", "0.9"));
         assert_eq!(filled(text, 2, 1, "0.9"), text.replace("P2\n", "P2,0.9\n"));
         assert_eq!(filled(text, 3, 1, "a,b"), text.replace("P3,,x", "P3,\"a,b\",x"));
+    }
+
+    #[test]
+    fn commas_may_stand_before_a_unit() {
+        for yes in ["0,98", "12,5%", "12,5 %", "-1,2e-6", "18,5 /Mh", "2,5/h", "3,5 kg"] {
+            assert!(is_comma_value(yes), "{yes}");
+        }
+        for no in
+            ["0.98", "1,2,3", "2 of (A, B)", "fails 0,1", "A,B", "1,5 of 2 A", "0,1, cost 3", "12,5 x y"]
+        {
+            assert!(!is_comma_value(no), "{no}");
+        }
+    }
+
+    #[test]
+    fn several_answers_of_a_short_record_stand_in_their_columns() {
+        let text = "name,R ?,x,F ?\nP2\nP3,\n";
+        let file = Delimited::read(text, false);
+        let answers = [(1, "0.9"), (3, "0.1")];
+        let edits = [file.edits(1, &answers), file.edits(2, &answers)].concat();
+        assert_eq!(patched(text, &edits), "name,R ?,x,F ?\nP2,0.9,,0.1\nP3,0.9,,0.1\n");
+    }
+
+    #[test]
+    fn answers_of_many_numbers_take_the_comma() {
+        let file = Delimited::read("name;fails;R ?\nP1;0,02;\n", false);
+        assert_eq!(file.written("1 in 69.93"), "1 in 69,93");
+        assert_eq!(file.plain("1 in 69,93"), "1 in 69.93");
+        assert_eq!(file.written("met: 0.98570, uses 71.5%"), "met: 0,98570, uses 71,5%");
+        assert_eq!(file.plain("met: 0,98570, uses 71,5%"), "met: 0.98570, uses 71.5%");
     }
 
     #[test]

@@ -5,8 +5,7 @@
 //! answers into edits there; [`patch`] applies edits and keeps every other
 //! byte; [`save`] puts the result on disk whole or not at all.
 //! [`workbook`] does the same for spreadsheets, cell by cell, [`delimited`] for
-//! CSV and TSV; [`sheet`] finds the tables among cells. The program does not
-//! reach these three yet.
+//! CSV and TSV.
 
 pub mod answer_place;
 pub mod delimited;
@@ -14,5 +13,4 @@ pub mod escape;
 pub mod markdown;
 pub mod patch;
 pub mod save;
-pub mod sheet;
 pub mod workbook;

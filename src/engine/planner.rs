@@ -409,23 +409,19 @@ fn reduce(local: &Local, pivot: u32, works: bool) -> Left {
                 }
             }
             Node::Network { shape, .. } => {
-                let members = old.members(id);
-                let mut network = (**old.shape(shape)).clone();
-                for (at, member) in members.iter().enumerate() {
-                    if let Now::Fails = now[member.0 as usize] {
-                        network = network.given(at as u32, false);
-                    }
-                }
-                for stop in &mut network.stops {
-                    *stop = stop.and_then(|at| match now[members[at as usize].0 as usize] {
-                        Now::Is(node) => Some(node.0),
-                        Now::Works | Now::Fails => None,
-                    });
-                }
-                match structure.network(&network) {
-                    Some(node) if structure.node(node) == Node::Works => Now::Works,
-                    Some(node) => Now::Is(node),
-                    None => Now::Fails,
+                let members: Vec<Result<NodeId, bool>> = old
+                    .members(id)
+                    .iter()
+                    .map(|m| match now[m.0 as usize] {
+                        Now::Works => Err(true),
+                        Now::Fails => Err(false),
+                        Now::Is(node) => Ok(node),
+                    })
+                    .collect();
+                match structure.network_left(old.shape(shape), &members) {
+                    Ok(node) => Now::Is(node),
+                    Err(true) => Now::Works,
+                    Err(false) => Now::Fails,
                 }
             }
         };

@@ -13,9 +13,17 @@ impl Reader<'_> {
         match self.word(0) {
             Some("fails") => self.word(1) != Some("when"),
             Some(word) if words::begins_clause(word) => true,
-            Some(word) if !words::is_reserved(word) => self.word_before_number(),
+            Some(word) if !words::is_reserved(word) => {
+                self.word_before_number() || self.misspelt_before_text(word)
+            }
             _ => false,
         }
+    }
+
+    /// `sorce "sheet 7"`: no two things stand side by side like this.
+    fn misspelt_before_text(&self, word: &str) -> bool {
+        matches!(self.tok(1), Some(Tok::Name { quoted: true, .. }))
+            && words::nearest(word, std::iter::once("source")).is_some()
     }
 
     fn word_before_number(&self) -> bool {

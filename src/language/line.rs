@@ -1,6 +1,6 @@
 //! Lines: definitions, questions, requirements and settings.
 
-use super::expr::{Read, Reader, later};
+use super::expr::{Read, Reader};
 use super::token::{Tok, Token};
 use super::tree::*;
 use super::words;
@@ -310,7 +310,44 @@ impl Reader<'_> {
             "exposure" => self.exposures(),
             "attribute" => self.attributes(),
             "require" => self.requirement(),
-            _ => Err(Box::new(later(span, &format!("`{word}`")))),
+            _ => self.used().map(Line::Use),
+        }
+    }
+
+    /// `"parts.xlsx" sheet "Power" as P`
+    fn used(&mut self) -> Read<Use> {
+        let path = self.quoted("the path of a file in double quotes", "write `use \"parts.xlsx\"`")?;
+        let mut used = Use { path, sheet: None, prefix: None };
+        loop {
+            match self.word(0) {
+                Some("sheet") if used.sheet.is_none() => {
+                    self.at += 1;
+                    let mend = "write `use \"parts.xlsx\" sheet \"Power\"`";
+                    used.sheet = Some(self.quoted("the name of a sheet in double quotes", mend)?);
+                }
+                Some("as") if used.prefix.is_none() => {
+                    self.at += 1;
+                    let span = self.peek_span();
+                    let Some(Tok::Name { sym, quoted }) = self.peek() else {
+                        return Err(self.unexpected("a name to stand before those of the file"));
+                    };
+                    self.definable(sym, quoted, span)?;
+                    self.at += 1;
+                    used.prefix = Some((sym, span));
+                }
+                _ => return Ok(used),
+            }
+        }
+    }
+
+    fn quoted(&mut self, wanted: &str, mend: &str) -> Read<(Sym, Span)> {
+        let span = self.peek_span();
+        match self.peek() {
+            Some(Tok::Name { sym, quoted: true }) => {
+                self.at += 1;
+                Ok((sym, span))
+            }
+            _ => Err(Box::new(self.unexpected(wanted).mend(mend))),
         }
     }
 

@@ -71,6 +71,26 @@ fn stray_answer(line: Source<'_>) -> Problem {
 /// Reads one question that stands alone, as in a comment pair: the text left
 /// of a `?`. Returns its statement, which is also added to the tree.
 pub fn read_question(source: Source<'_>, block: u32, tree: &mut Tree, problems: &mut Vec<Problem>) -> usize {
+    question(source, false, block, tree, problems)
+}
+
+/// The same for a pair in a cell of a Markdown table, where `|` is written `\|`.
+pub fn read_cell_question(
+    source: Source<'_>,
+    block: u32,
+    tree: &mut Tree,
+    problems: &mut Vec<Problem>,
+) -> usize {
+    question(source, true, block, tree, problems)
+}
+
+fn question(
+    source: Source<'_>,
+    in_cell: bool,
+    block: u32,
+    tree: &mut Tree,
+    problems: &mut Vec<Problem>,
+) -> usize {
     let mut open = Open { asked: true, ..Open::default() };
     let mut at = source.at;
     for (number, line) in source.text.split('\n').enumerate() {
@@ -91,6 +111,9 @@ pub fn read_question(source: Source<'_>, block: u32, tree: &mut Tree, problems: 
     }
     let end = source.at + source.text.len() as u32;
     open.end = Span { start: end, end };
+    if in_cell {
+        undo_escapes(&mut open.tokens, &mut tree.names);
+    }
     let mark = Mark { at: end, answer: Span { start: end, end }, line: 0 };
     let found = problems.len();
     open.finish_as(Some(mark), block, tree, problems, true);
@@ -102,16 +125,32 @@ pub fn read_question(source: Source<'_>, block: u32, tree: &mut Tree, problems: 
     tree.statements.len() - 1
 }
 
-/// Reads a right side or an argument that stands alone, as in a table's cell.
+/// In quoted names and texts of a cell, `\|` is a `|`.
+fn undo_escapes(tokens: &mut [Token], names: &mut Names) {
+    for token in tokens {
+        if let Tok::Name { sym, quoted: true } = token.tok
+            && names.text(sym).contains("\\|")
+        {
+            let plain = names.text(sym).replace("\\|", "|");
+            token.tok = Tok::Name { sym: names.intern(&plain), quoted: true };
+        }
+    }
+}
+
+/// Reads a right side or an argument that stands alone, as in a table's cell;
+/// `in_cell` for one of a Markdown table, where `|` is written `\|`.
 ///
 /// # Errors
 /// The first problem in it.
-pub fn read_expression(source: Source<'_>, tree: &mut Tree) -> Result<ExprId, Box<Problem>> {
+pub fn read_expression(source: Source<'_>, in_cell: bool, tree: &mut Tree) -> Result<ExprId, Box<Problem>> {
     let mut problems = Vec::new();
     let mut tokens = Vec::new();
     let end = token::line(source.text, source.at, 0, &mut tree.names, &mut tokens, &mut problems);
     if let Some(problem) = problems.into_iter().next() {
         return Err(Box::new(problem));
+    }
+    if in_cell {
+        undo_escapes(&mut tokens, &mut tree.names);
     }
     let stop = source.at + source.text.len() as u32;
     if let Some(mark) = end.mark {

@@ -121,11 +121,36 @@ pub fn is_answer_block(text: &str) -> bool {
         || first.split_once(". ").is_some_and(|(n, _)| n.bytes().all(|b| b.is_ascii_digit()) && !n.is_empty())
 }
 
+/// Whether the text of a sheet's cell is one of tieback's: an answer of one
+/// line, or the lines of a table or a list.
+pub fn is_answer_cell(text: &str, is_unit: &dyn Fn(&str) -> bool) -> bool {
+    let text = text.trim();
+    let first = text.lines().next().unwrap_or("");
+    let numbered = first.split_once(". ").is_some_and(|(n, _)| n == "1");
+    let head = first.split_once(" | ").map(|(head, _)| head);
+    numbered
+        || first.starts_with("• ")
+        || matches!(head, Some("order" | "thing" | "single point"))
+        || (first.len() == text.len() && is_answer(text, is_unit))
+}
+
 #[cfg(test)]
 mod tests {
 
     fn is_answer(text: &str) -> bool {
         super::is_answer(text, &|w| matches!(w, "h" | "kg" | "start" | "yr" | "kh" | "start-up" | "warm-up"))
+    }
+
+    #[test]
+    fn cells_may_hold_lists() {
+        let is_cell = |text| super::is_answer_cell(text, &|w| w == "h");
+        for yes in ["", "0.98", "12 h", "order | cut set\n1 | gate", "1. R(x) = 0.9\n    b", "• none", "! no"]
+        {
+            assert!(is_cell(yes), "{yes}");
+        }
+        for no in ["see annex", "0.98\nmine", "2. second", "name | x", "- mine"] {
+            assert!(!is_cell(no), "{no}");
+        }
     }
 
     #[test]

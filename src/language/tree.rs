@@ -257,6 +257,17 @@ pub struct Phase {
     pub stress: Option<ExprId>,
 }
 
+/// Another file whose definitions a note takes.
+#[derive(Clone, Copy, PartialEq, Eq, Debug)]
+pub struct Use {
+    /// The path as written, with its place.
+    pub path: (Sym, Span),
+    /// The one sheet of a workbook that is wanted.
+    pub sheet: Option<(Sym, Span)>,
+    /// What stands before its names here: `P` of `P.pump`.
+    pub prefix: Option<(Sym, Span)>,
+}
+
 /// What a line says.
 #[derive(Clone, PartialEq, Debug)]
 pub enum Line {
@@ -297,6 +308,8 @@ pub enum Line {
     Exposure(Vec<(Sym, Span)>),
     /// `attribute power W`: the words with their units, if any.
     Attribute(Vec<(Sym, Span, Option<Unit>)>),
+    /// `use "parts.xlsx" sheet "Power" as P`
+    Use(Use),
     /// A line in error, with the names it would have defined.
     Broken(Vec<(Sym, Span)>),
 }
@@ -353,6 +366,11 @@ impl Tree {
         List { start, end: self.list.len() as u32 }
     }
 
+    /// How many nodes there are.
+    pub(super) fn count(&self) -> u32 {
+        self.exprs.len() as u32
+    }
+
     /// The node.
     pub fn expr(&self, id: ExprId) -> Expr {
         self.exprs[id.0 as usize]
@@ -361,6 +379,11 @@ impl Tree {
     /// Its place.
     pub fn span(&self, id: ExprId) -> Span {
         self.spans[id.0 as usize]
+    }
+
+    /// Puts another node in place of one.
+    pub(super) fn set_expr(&mut self, id: ExprId, expr: Expr) {
+        self.exprs[id.0 as usize] = expr;
     }
 
     /// Widens or moves a node's place.

@@ -37,11 +37,17 @@ impl Ahead {
         ahead
     }
 
-    /// Keeps the blocks that are among `fences`, given with their numbers in the
+    /// Whether nothing has been read.
+    pub(super) fn is_empty(&self) -> bool {
+        self.blocks.is_empty()
+    }
+
+    /// Of the statements in `tree`, keeps those of the blocks that are among `fences`, given with their numbers in the
     /// order of the note: their statements take these numbers, their problems
     /// are returned. Whether each of the fences has been read is told by `read`.
     pub(super) fn keep<'f>(
         &mut self,
+        tree: &mut Tree,
         fences: impl Iterator<Item = (u32, &'f Fence)>,
         mut unread: impl FnMut(u32, &'f Fence),
     ) -> Vec<Problem> {
@@ -57,7 +63,10 @@ impl Ahead {
                 _ => unread(number, fence),
             }
         }
-        self.tree.statements.retain_mut(|statement| match numbers[statement.block as usize] {
+        if self.is_empty() {
+            return Vec::new();
+        }
+        tree.statements.retain_mut(|statement| match numbers[statement.block as usize] {
             Some(number) => {
                 statement.block = number;
                 true
@@ -115,13 +124,14 @@ fn slice(text: &str, base: u32, span: Span) -> &str {
 #[cfg(test)]
 mod tests {
     use super::super::read::read;
+    use super::super::uses::NoShelf;
     use super::*;
     use crate::document::markdown::find;
 
     /// What stands where, and what is wrong, read ahead or not.
     fn both_ways(text: &str) -> [String; 2] {
         [Ahead::read(text, 7), Ahead::default()].map(|ahead| {
-            let read = read(text, 7, find(text, 7), ahead);
+            let read = read(text, 7, find(text, 7), ahead, "note.md", &NoShelf, &mut Default::default());
             let names = &read.tree.names;
             let statements = read.tree.statements.iter().map(|s| {
                 let line = match &s.line {

@@ -1,9 +1,8 @@
 //! Replies to edits: each answer goes to the place of its question, and what
 //! the user wrote there stays.
 
-use super::answers::{Answered, MANY};
 use super::{Asked, Work};
-use crate::answer::Reply;
+use crate::answer::{Answered, MANY, Own, Reply};
 use crate::document::answer_place::{
     FenceAnswer, block_edit, bytes_of_lines, fence_edits, inline_edit, old_answer_lines, row_edits,
 };
@@ -17,7 +16,7 @@ impl Work<'_> {
     /// Places all replies. An answer that names a line names it as it will be
     /// numbered once all answers stand: where answers above it come to have
     /// more lines or fewer, the placing is done again with those counted.
-    pub(super) fn place_all(&mut self, replies: &[Answered], model: &Model<'_>) {
+    pub(super) fn place_all(&mut self, replies: &[Answered<Reply>], model: &Model<'_>) {
         let problems = self.problems.len();
         self.place_once(replies, model);
         self.shifts = self.line_shifts();
@@ -31,9 +30,9 @@ impl Work<'_> {
     }
 
     /// Places all replies; of many, both halves at once.
-    fn place_once(&mut self, replies: &[Answered], model: &Model<'_>) {
+    fn place_once(&mut self, replies: &[Answered<Reply>], model: &Model<'_>) {
         // The cells of one row are written together.
-        let block = |a: &Answered| self.read.tree.statements[a.statement].block;
+        let block = |a: &Answered<Reply>| self.read.tree.statements[a.statement].block;
         let mut half = if replies.len() < MANY { replies.len() } else { replies.len() / 2 };
         while half > 0 && half < replies.len() && block(&replies[half]) == block(&replies[half - 1]) {
             half += 1;
@@ -51,7 +50,7 @@ impl Work<'_> {
         self.problems.append(&mut other.problems);
     }
 
-    fn place_some(&mut self, replies: &[Answered], model: &Model<'_>) {
+    fn place_some(&mut self, replies: &[Answered<Reply>], model: &Model<'_>) {
         for answered in replies {
             self.place(answered, model);
         }
@@ -80,7 +79,7 @@ impl Work<'_> {
         line + after.checked_sub(1).map_or(0, |i| self.shifts[i].1)
     }
 
-    fn place(&mut self, answered: &Answered, model: &Model<'_>) {
+    fn place(&mut self, answered: &Answered<Reply>, model: &Model<'_>) {
         let Answered { statement: index, mark: Some(mark), unmet, .. } = *answered else { return };
         let read = self.read;
         let statement = &read.tree.statements[index];
@@ -100,9 +99,8 @@ impl Work<'_> {
             Place::Fence(fence) => self.in_fence(fence, mark, reply, broken, model),
             Place::Pair(pair) => self.in_pair(pair, reply, broken, model),
             Place::Table(table) => {
-                let Some(&(_, block, row, column)) = read.cells.iter().find(|(s, ..)| *s == index) else {
-                    return;
-                };
+                let Ok(at) = read.cells.binary_search_by_key(&index, |(s, ..)| *s) else { return };
+                let (_, block, row, column) = read.cells[at];
                 self.in_table(table, (block, row, column), reply, model)
             }
         };
@@ -124,14 +122,7 @@ impl Work<'_> {
     }
 
     /// The message of an answer that is none.
-    pub(super) fn message(
-        &self,
-        fault: Fault,
-        span: Span,
-        mark: Mark,
-        in_cell: bool,
-        model: &Model<'_>,
-    ) -> String {
+    fn message(&self, fault: Fault, span: Span, mark: Mark, in_cell: bool, model: &Model<'_>) -> String {
         let whole = Span { start: span.start, end: span.end.max(mark.at + 1) };
         // A question in a cell is its header and its row.
         let row = model.sources.line(Span { start: mark.at, end: mark.at }).map(|l| l.1);
@@ -142,33 +133,16 @@ impl Work<'_> {
             }
             false => whole.start <= place.start && place.start <= whole.end,
         };
-        let own = |p: &Problem| {
-            within(p.place)
-                || (matches!(p.code, Code::UnknownName | Code::UnknownUnit)
-                    && p.labels.iter().any(|l| within(l.place)))
-        };
-        let below = fault.0 != u32::MAX && model.rests_below(fault);
-        let own_line = below && in_cell && within(model.problem(fault).place);
-        let problem = if fault.0 == u32::MAX || own_line {
-            self.read.problems.iter().find(|p| p.level == Level::Error && own(p))
-        } else {
-            Some(model.problem(fault))
-        };
-        let text = match problem {
-            Some(problem) if own(problem) && (own_line || !below) => {
-                let hint = problem.mends.iter().find(|m| m.starts_with("did you mean"));
-                match hint {
-                    Some(hint) => format!("{}: {hint}", problem.message),
-                    None => problem.message.clone(),
-                }
+        let elsewhere = |place| match model.sources.find(place) {
+            // Of a file that the note uses, whose lines stay as they are.
+            Some((file, _)) if file.base != self.base => {
+                format!("{} {}", file.name, model.sources.words(place))
             }
-            Some(problem) => {
-                let line = self.line_once_filled(problem.place, model);
-                format!("rests on line {line}, which is in error")
-            }
-            None => "this line is in error".to_string(),
+            _ => format!("line {}", self.line_once_filled(place, model)),
         };
-        without_number_signs(&text)
+        let own = Own { within: &within, in_cell, first: &|| None, elsewhere: &elsewhere };
+        let first = || self.read.problems.iter().find(|p| p.level == Level::Error && own.holds(p));
+        Own { first: &first, ..own }.message(fault, model)
     }
 
     fn not_an_answer(&mut self, place: Span) {
@@ -341,22 +315,4 @@ impl Work<'_> {
 fn answer_shaped(text: &str, model: &Model<'_>) -> bool {
     let text = text.split_whitespace().collect::<Vec<_>>().join(" ");
     is_answer(&text, &|word| model.units.is_unit(word, &model.tree.names))
-}
-
-/// An answer holds no `#` outside quotes: it would begin a comment.
-fn without_number_signs(text: &str) -> String {
-    let mut inside = false;
-    let mut out = String::with_capacity(text.len());
-    for c in text.chars() {
-        match c {
-            '"' => {
-                inside = !inside;
-                out.push(c);
-            }
-            '#' if !inside => out.push_str("number sign"),
-            '\n' | '\r' => out.push(' '),
-            c => out.push(c),
-        }
-    }
-    out
 }

@@ -79,7 +79,15 @@ impl Chance {
         if hazard.is_negative() {
             return Chance { works: Real::from(f64::NAN), fails: Real::from(f64::NAN) };
         }
-        Chance::new((-hazard).exp(), -(-hazard).exp_m1())
+        // One elementary function gives both: the side below one half is
+        // computed, and to take it from 1 costs the other no digit.
+        if hazard.hi() < std::f64::consts::LN_2 {
+            let fails = -(-hazard).exp_m1();
+            Chance::new(Real::ONE - fails, fails)
+        } else {
+            let works = (-hazard).exp();
+            Chance::new(works, Real::ONE - works)
+        }
     }
 
     /// The cumulative hazard -ln(works), to full relative precision however

@@ -28,6 +28,8 @@
 //! - Lines and columns begin at 1; columns count characters. `end_line` and
 //!   `end_column` name the first character after the place. A problem or label
 //!   that is in no text has `null` for its file, lines and columns.
+//! - In a workbook or a delimited file, a place is `"sheet": "Power", "cell": "C7"`, and lines and columns
+//!   are `null`; a delimited file has no `sheet`. A question's cell is the one that its answer goes into.
 //! - `changed` says whether the file was written (`fill`) or would be (`check`).
 //! - `answer` is what tieback writes now, `old` what stood there; lines of a
 //!   longer answer are joined by `\n`. `level` is `error` or `remark`.
@@ -40,7 +42,7 @@
 //! Later versions may add keys; those that are here keep their meaning.
 
 use super::lines::Lines;
-use crate::note::Filled;
+use crate::answer::Filled;
 use crate::source::{Level, Problem, Sources, Span};
 use serde::Serialize;
 use serde_json::value::RawValue;
@@ -77,6 +79,12 @@ pub struct QuestionReport {
     pub line: Option<usize>,
     /// Column of the question.
     pub column: Option<usize>,
+    /// The sheet of the answer's cell, in a workbook.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub sheet: Option<String>,
+    /// The cell that the answer goes into, in a workbook or a delimited file.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub cell: Option<String>,
     /// The question as written.
     pub question: String,
     /// The answer now.
@@ -140,17 +148,32 @@ pub struct PlaceReport {
     pub end_line: Option<usize>,
     /// Column of the character after it.
     pub end_column: Option<usize>,
+    /// The sheet, in a workbook.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub sheet: Option<String>,
+    /// The cell, in a workbook or a delimited file.
+    #[serde(skip_serializing_if = "Option::is_none")]
+    pub cell: Option<String>,
 }
 
 impl PlaceReport {
     fn new(lines: &Lines<'_>, span: Span) -> PlaceReport {
         let Some(place) = lines.place(span) else { return PlaceReport::default() };
+        if let Some(cell) = place.cell {
+            return PlaceReport {
+                file: Some(place.file.to_string()),
+                sheet: cell.sheet.map(str::to_string),
+                cell: Some(cell.cell()),
+                ..PlaceReport::default()
+            };
+        }
         PlaceReport {
             file: Some(place.file.to_string()),
             line: Some(place.line),
             column: Some(place.column),
             end_line: Some(place.end_line),
             end_column: Some(place.end_column),
+            ..PlaceReport::default()
         }
     }
 }
@@ -162,8 +185,10 @@ impl FileReport {
         let questions = filled.asked.iter().map(|asked| {
             let place = lines.place(asked.place);
             QuestionReport {
-                line: place.map(|p| p.line),
-                column: place.map(|p| p.column),
+                line: place.filter(|p| p.cell.is_none()).map(|p| p.line),
+                column: place.filter(|p| p.cell.is_none()).map(|p| p.column),
+                sheet: place.and_then(|p| p.cell?.sheet).map(str::to_string),
+                cell: place.and_then(|p| p.cell).map(|cell| cell.cell()),
                 question: asked.question.clone(),
                 answer: Some(asked.new.clone()),
                 steps: None,

@@ -1,6 +1,6 @@
 //! Spans as people count: lines and columns.
 
-use crate::source::{SourceFile, Sources, Span};
+use crate::source::{CellPlace, SourceFile, Sources, Span};
 use std::cell::{Cell, OnceCell};
 use std::ops::Range;
 
@@ -20,6 +20,9 @@ pub struct Place<'a> {
     pub end_line: usize,
     /// Column of the first character after the span.
     pub end_column: usize,
+    /// The cell, where the file is one of sheets: lines and columns are then
+    /// those of a text that nobody sees.
+    pub cell: Option<CellPlace<'a>>,
 }
 
 /// Finds lines and columns in sources; the line starts of a text are found once.
@@ -45,7 +48,14 @@ impl<'a> Lines<'a> {
         let (index, file, range) = self.range(span)?;
         let (line, column) = self.line_column(index, file, range.start);
         let (end_line, end_column) = self.line_column(index, file, range.end);
-        Some(Place { file: &file.name, line, column, end_line, end_column })
+        let cell = self.cell(file, range.start);
+        Some(Place { file: &file.name, line, column, end_line, end_column, cell })
+    }
+
+    /// The cell that holds `at`, where the file is one of sheets.
+    pub(super) fn cell(&self, file: &'a SourceFile, at: usize) -> Option<CellPlace<'a>> {
+        let cells = file.cells.as_ref()?;
+        cells.place(cells.at(at)?)
     }
 
     /// The file under `span` with its number, and the range in it, moved to

@@ -6,7 +6,7 @@
 //! every mark is moved into it.
 
 use super::lines::{Lines, char_end, char_start};
-use crate::source::{Code, Level, Problem, SourceFile, Sources, Span};
+use crate::source::{CellPlace, Code, Level, Problem, SourceFile, Sources, Span};
 use annotate_snippets::{
     Annotation, AnnotationKind, Element, Level as Weight, Origin, Renderer, Snippet, normalize_untrusted_str,
 };
@@ -118,8 +118,11 @@ fn views<'a>(lines: &Lines<'a>, problem: &'a Problem) -> Vec<View<'a>> {
         .chain(problem.labels.iter().map(|l| (l.place, l.text.as_str(), false)));
     for (place, words, primary) in places {
         let Some(mark) = Mark::new(lines, place, words, primary) else { continue };
+        let sheet = mark.file.cells.is_some();
         let near = views.iter_mut().find(|v| {
             v.marks[0].index == mark.index
+                // Each cell has a place of its own above it.
+                && (!sheet || mark.first_line == v.first_line)
                 && mark.first_line <= v.last_line + APART
                 && v.first_line <= mark.last_line + APART
         });
@@ -179,8 +182,14 @@ impl<'a> View<'a> {
         if text.is_empty() || text.ends_with('\n') {
             text.push(' '); // something for a mark at the very end to stand under
         }
-        let column = self.column(lines, &text, &cuts);
-        let snippet = Snippet::source(text).line_start(self.first_line + 1).path(shown_name(first.file));
+        let cell = lines.cell(first.file, first.range.start);
+        let column = match &cell {
+            Some(cell) => self.cell_in_place_of_line(cell, &text, &cuts),
+            None => self.column(lines, &text, &cuts),
+        };
+        // Beside a cell stands the number of its row.
+        let line = cell.map_or(self.first_line, |cell| cell.row as usize) + 1;
+        let snippet = Snippet::source(text).line_start(line).path(shown_name(first.file));
         let snippet = snippet.annotations(self.marks.iter().map(|mark| {
             let kind = if mark.primary { AnnotationKind::Primary } else { AnnotationKind::Context };
             let start = shown_offset(&cuts, mark.range.start);
@@ -193,6 +202,15 @@ impl<'a> View<'a> {
             }
         }));
         (snippet, column)
+    }
+
+    /// A sheet's file is named with the cell, where a text's is with line and column.
+    fn cell_in_place_of_line(&self, cell: &CellPlace<'_>, text: &str, cuts: &[Cut]) -> Option<Column> {
+        let mark = &self.marks[0];
+        let at = shown_offset(cuts, mark.range.start);
+        let name = shown_name(mark.file);
+        let counted = format!("{name}:{}:{}", cell.row + 1, 1 + text[..at].chars().count());
+        Some(Column { counted, real: normalize_untrusted_str(&format!("{}, {cell}", mark.file.name)) })
     }
 
     /// How the first mark's column differs from what the library will count.

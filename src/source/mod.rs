@@ -4,8 +4,10 @@
 //! [`Problem`] with a place, a cause and a mend. Nothing here knows the
 //! language or prints anything.
 
+mod cells;
 mod problem;
 mod span;
 
+pub use cells::{CellAt, CellMap, CellPlace, cell_name};
 pub use problem::{Code, Label, Level, Problem};
 pub use span::{SourceFile, Sources, Span};

@@ -151,10 +151,14 @@ codes! {
     TableCell = "table-cell",
     /// A block that is never closed.
     UnclosedFence = "unclosed-fence",
+    /// A block whose info word is nearly the one that is read.
+    NearlyABlock = "nearly-a-block",
     /// Bytes that are not UTF-8.
     NotUtf8 = "not-utf8",
     /// A file that could not be read or written.
     FileAccess = "file-access",
+    /// A file that a note uses and that cannot be had, or says nothing.
+    UnusableFile = "unusable-file",
     /// Nothing for tieback in a file.
     NothingToDo = "nothing-to-do",
     // --- names and things ---
@@ -219,6 +223,10 @@ codes! {
     CutShort = "cut-short",
     /// A requirement that is not met.
     NotMet = "not-met",
+    /// Formulas of a workbook whose stored values rest on answers that have changed.
+    OutOfDateFormula = "out-of-date-formula",
+    /// A workbook that is open in a spreadsheet program.
+    OpenElsewhere = "open-elsewhere",
     /// An answer that no longer is what tieback would write.
     Stale = "stale",
 }

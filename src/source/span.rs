@@ -1,5 +1,6 @@
 //! Spans and the files that they point into.
 
+use super::cells::{CellMap, CellPlace};
 use std::sync::Arc;
 
 /// A range of bytes, counted over all sources one after the other.
@@ -46,6 +47,8 @@ pub struct SourceFile {
     pub base: u32,
     /// Its whole text.
     pub text: Arc<str>,
+    /// Which cells the text was put together from, if it is that of a sheet.
+    pub cells: Option<Arc<CellMap>>,
 }
 
 /// All texts of one run, in one count of bytes.
@@ -61,12 +64,25 @@ impl Sources {
     /// Adds a text and returns the offset of its first byte, or `None` when
     /// the texts together would pass [`Sources::LIMIT`].
     pub fn add(&mut self, name: impl Into<String>, text: impl Into<Arc<str>>) -> Option<u32> {
-        let text = text.into();
+        self.add_text(name.into(), text.into(), None)
+    }
+
+    /// Adds the text of a sheet, put together from these cells.
+    pub fn add_cells(
+        &mut self,
+        name: impl Into<String>,
+        text: impl Into<Arc<str>>,
+        cells: impl Into<Arc<CellMap>>,
+    ) -> Option<u32> {
+        self.add_text(name.into(), text.into(), Some(cells.into()))
+    }
+
+    fn add_text(&mut self, name: String, text: Arc<str>, cells: Option<Arc<CellMap>>) -> Option<u32> {
         let base = self.files.last().map_or(0, |f| f.base as usize + f.text.len() + 1);
         if base + text.len() > Self::LIMIT {
             return None;
         }
-        self.files.push(SourceFile { name: name.into(), base: base as u32, text });
+        self.files.push(SourceFile { name, base: base as u32, text, cells });
         Some(base as u32)
     }
 
@@ -87,6 +103,21 @@ impl Sources {
     /// The text under `span`; empty when it is nowhere.
     pub fn text(&self, span: Span) -> &str {
         self.find(span).and_then(|(file, range)| file.text.get(range)).unwrap_or("")
+    }
+
+    /// The cell that holds the start of `span`, where it lies in a sheet.
+    pub fn cell(&self, span: Span) -> Option<CellPlace<'_>> {
+        let (file, range) = self.find(span)?;
+        let cells = file.cells.as_ref()?;
+        cells.place(cells.at(range.start)?)
+    }
+
+    /// The start of `span` in words: `line 12`, or `Power!C7` in a sheet.
+    pub fn words(&self, span: Span) -> String {
+        match self.cell(span) {
+            Some(cell) => cell.short(),
+            None => format!("line {}", self.line(span).map_or(0, |l| l.1)),
+        }
     }
 
     /// File name and one-based line number of the start of `span`.

@@ -9,7 +9,7 @@ use crate::language::words::ClauseWord;
 use crate::language::{Expr, ExprId, Suffix};
 use crate::number::{Chance, Real};
 use crate::source::Span;
-use crate::system::{Base, Exposure, Item, Model, Node, NodeId, Pace, Quantity, System};
+use crate::system::{Base, Exposure, Item, Model, Node, NodeId, Pace, Part, Quantity, System};
 use rustc_hash::{FxHashMap, FxHashSet};
 
 /// Members of an unlike k of n whose states are written out one by one.
@@ -36,10 +36,9 @@ struct Writer<'w, 'a> {
     exposure: &'w Exposure,
     list: StepList,
     results: Vec<Chance>,
-    known: FxHashMap<String, usize>,
     blocks: Vec<Option<Operand>>,
-    names: Vec<Vec<String>>,
-    named: FxHashSet<(usize, String)>,
+    /// The number of the exposure in the ledger.
+    under: usize,
     /// Blocks of things that stand in several places: each has a step of its
     /// own, since the steps on its two states name it alone.
     own: FxHashSet<BlockId>,
@@ -47,17 +46,25 @@ struct Writer<'w, 'a> {
     inner: FxHashSet<NodeId>,
 }
 
-/// Adds the steps of a system to `list`; returns the number of its last step,
-/// or what it is for certain.
+/// Adds the steps of a system to `list`; gives what each main block comes to.
 pub fn write(
     model: &Model<'_>,
     system: &System,
     plan: &Plan,
     exposure: &Exposure,
-    list: StepList,
-) -> (StepList, Result<usize, bool>) {
+    mut list: StepList,
+) -> (StepList, Written) {
     let results = list.results();
-    let names = list.steps.iter().map(|s| vec![s.thing.clone()]).collect();
+    let exposures = &mut list.ledger.exposures;
+    let under = exposures.iter().position(|e| alike(e, &exposure.parts)).unwrap_or_else(|| {
+        exposures.push(exposure.parts.clone());
+        exposures.len() - 1
+    });
+    list.ledger.systems += 1;
+    // Figures among the steps have no names of their own.
+    let steps = &list.steps;
+    let named = list.ledger.names.len();
+    list.ledger.names.extend(steps.iter().skip(named).map(|s| vec![s.thing.clone()]));
     let mut writer = Writer {
         model,
         system,
@@ -65,28 +72,42 @@ pub fn write(
         exposure,
         list,
         results,
-        known: FxHashMap::default(),
         blocks: vec![None; plan.len()],
-        names,
-        named: FxHashSet::default(),
+        under,
         own: plan.shared().into_iter().collect(),
         inner: inner_nodes(model, system),
     };
-    let before = writer.list.steps.len();
     for id in plan.blocks() {
         if !plan.is_case(id) {
             let operand = writer.main_block(id);
             writer.blocks[id.0 as usize] = Some(operand);
         }
     }
-    let root = writer.operand(plan.root());
-    writer.finish_names(before);
-    let root = match root {
-        Operand::Step(step) => Ok(step),
-        Operand::Works => Err(true),
-        Operand::Fails => Err(false),
-    };
-    (writer.list, root)
+    writer.finish_names();
+    (writer.list, Written { blocks: writer.blocks })
+}
+
+/// Whether two exposures are the same, wherever they are written.
+fn alike(a: &[Part], b: &[Part]) -> bool {
+    let what = |p: &Part| (p.name, p.base, p.amount.clone(), p.stress.clone());
+    a.len() == b.len() && a.iter().zip(b).all(|(a, b)| what(a) == what(b))
+}
+
+/// What the blocks of a system came to among the steps.
+#[derive(Clone, Debug)]
+pub struct Written {
+    blocks: Vec<Option<Operand>>,
+}
+
+impl Written {
+    /// The last step of a main block, or whether it works for certain.
+    pub fn of(&self, block: BlockId) -> Result<usize, bool> {
+        match self.blocks.get(block.0 as usize).copied().flatten() {
+            Some(Operand::Step(step)) => Ok(step),
+            Some(Operand::Works) => Err(true),
+            Some(Operand::Fails) | None => Err(false),
+        }
+    }
 }
 
 impl Writer<'_, '_> {
@@ -102,7 +123,7 @@ impl Writer<'_, '_> {
             Block::Independent { need, .. } => {
                 let members: Vec<Operand> = self.plan.members(id).iter().map(|m| self.operand(*m)).collect();
                 let (name, place) = self.about(id);
-                let case = if self.own.contains(&id) { format!("own {} ", id.0) } else { String::new() };
+                let case = if self.own.contains(&id) { format!("own {name} ") } else { String::new() };
                 self.vote(need as usize, &members, name, place, &case)
             }
             Block::Conditioned { .. } => {
@@ -126,7 +147,16 @@ impl Writer<'_, '_> {
         }
     }
 
+    /// The name of a node; where a part of it is taken for granted, with that.
     fn node_name(&self, node: NodeId) -> String {
+        let name = self.own_name(node);
+        match self.system.given(node) {
+            Some(given) => format!("{name}, given {given}"),
+            None => name,
+        }
+    }
+
+    fn own_name(&self, node: NodeId) -> String {
         if let Some(name) = self.model.node_name(self.system, node) {
             return name;
         }
@@ -185,17 +215,21 @@ impl Writer<'_, '_> {
         tails: (Formula, Formula),
         shown: Side,
     ) -> usize {
-        if let Some(&step) = self.known.get(&key) {
-            if self.named.insert((step, name.clone())) {
-                self.names[step].push(name);
+        let ledger = &mut self.list.ledger;
+        if let Some(&step) = ledger.known.get(&key) {
+            if ledger.named.insert((step, name.clone())) {
+                ledger.names[step].push(name);
             }
             return step;
         }
         let (works, fails) = tails;
         let chance = Chance::new(works.evaluate(&self.results).0, fails.evaluate(&self.results).0);
         self.results.push(chance);
-        self.names.push(vec![name.clone()]);
-        self.named.insert((self.list.steps.len(), name.clone()));
+        let step = self.list.steps.len();
+        let ledger = &mut self.list.ledger;
+        ledger.names.push(vec![name.clone()]);
+        ledger.named.insert((step, name.clone()));
+        ledger.known.insert(key, step);
         self.list.steps.push(Step {
             symbol: name.clone(),
             thing: name,
@@ -206,14 +240,14 @@ impl Writer<'_, '_> {
             shown,
             outcome: Outcome::Chance(chance),
         });
-        let step = self.list.steps.len() - 1;
-        self.known.insert(key, step);
         step
     }
 
-    fn finish_names(&mut self, before: usize) {
-        for (step, names) in self.list.steps.iter_mut().zip(&self.names).skip(before) {
-            (step.thing, step.symbol) = super::names::head_and_symbol(names);
+    fn finish_names(&mut self) {
+        for (step, names) in self.list.steps.iter_mut().zip(&self.list.ledger.names) {
+            if let Outcome::Chance(_) = step.outcome {
+                (step.thing, step.symbol) = super::names::head_and_symbol(names);
+            }
         }
     }
 
@@ -224,7 +258,11 @@ impl Writer<'_, '_> {
         let place = self.model.tree.span(leaf.template);
         let (rule, tails, shown) = self.item_formula(item);
         // Copies of one template have the same data; so do items on one right side.
-        let key = if own { format!("thing {number}") } else { format!("item {}", leaf.item) };
+        let under = self.under;
+        // What has a step of its own from another system of the list is not stated twice.
+        let alone = format!("{under} thing {name}");
+        let own = own || self.list.ledger.known.contains_key(&alone);
+        let key = if own { alone } else { format!("{under} item {}", leaf.item) };
         self.add(key, name, Some(place), rule, tails, shown)
     }
 
@@ -366,7 +404,7 @@ impl Writer<'_, '_> {
         item.clauses.iter().find(|c| c.word == word).and_then(|c| c.value)
     }
 
-    fn phase(&self, part: &crate::system::Part, base: Base) -> Formula {
+    fn phase(&self, part: &Part, base: Base) -> Formula {
         let names = &self.model.tree.names;
         let symbol = match (part.name, base) {
             (Some(name), _) => format!("t({})", names.text(name)),
@@ -519,7 +557,14 @@ impl Writer<'_, '_> {
         let of = |side| Formula::Network(network.clone(), members.clone(), side);
         let tails = (of(Side::Works), of(Side::Fails));
         let shown = if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
-        Operand::Step(self.add(format!("network {}", id.0), name, place, Rule::Network, tails, shown))
+        Operand::Step(self.add(
+            format!("{} network {}", self.list.ledger.systems, id.0),
+            name,
+            place,
+            Rule::Network,
+            tails,
+            shown,
+        ))
     }
 
     /// One step for each node of a diagram, from the ends up.
@@ -561,7 +606,7 @@ impl Writer<'_, '_> {
                             };
                             let shown =
                                 if self.smaller_is_failure(&tails) { Side::Fails } else { Side::Works };
-                            let key = format!("node {} {at}", id.0);
+                            let key = format!("{} node {} {at}", self.list.ledger.systems, id.0);
                             Operand::Step(self.add(key, own, place, rule, tails, shown))
                         }
                     }

@@ -11,6 +11,10 @@ struct JsonStep {
     thing: String,
     file: Option<String>,
     line: Option<usize>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    sheet: Option<String>,
+    #[serde(skip_serializing_if = "Option::is_none")]
+    cell: Option<String>,
     rule: &'static str,
     source: &'static str,
     left: String,
@@ -42,7 +46,9 @@ pub fn json(list: &StepList, sources: &Sources, digits: u8) -> String {
         .zip(texts)
         .enumerate()
         .map(|(i, (step, text))| {
-            let place = step.place.and_then(|p| sources.line(p));
+            let cell = step.place.and_then(|p| sources.cell(p));
+            let file = step.place.and_then(|p| sources.find(p)).map(|(file, _)| file.name.clone());
+            let line = step.place.filter(|_| cell.is_none()).and_then(|p| sources.line(p)).map(|l| l.1);
             let (works, fails, value) = match &step.outcome {
                 Outcome::Chance(c) => (Some(super::plain(c.works())), Some(super::plain(c.fails())), None),
                 Outcome::Figure(v, _) => (None, None, Some(super::plain(*v))),
@@ -50,8 +56,10 @@ pub fn json(list: &StepList, sources: &Sources, digits: u8) -> String {
             JsonStep {
                 number: i + 1,
                 thing: text.thing,
-                file: place.map(|(f, _)| f.to_string()),
-                line: place.map(|(_, l)| l),
+                file,
+                line,
+                sheet: cell.and_then(|c| c.sheet).map(str::to_string),
+                cell: cell.map(|c| c.cell()),
                 rule: text.rule,
                 source: text.source,
                 left: text.left,

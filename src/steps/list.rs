@@ -3,6 +3,8 @@
 use super::formula::{Formula, Side};
 use crate::number::{Chance, Real};
 use crate::source::Span;
+use crate::system::Part;
+use rustc_hash::{FxHashMap, FxHashSet};
 
 /// How a step computes, with its published source.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
@@ -33,6 +35,8 @@ pub enum Rule {
     Network,
     /// Arithmetic that the note asks for.
     Arithmetic,
+    /// A measure of importance.
+    Importance,
 }
 
 impl Rule {
@@ -52,6 +56,7 @@ impl Rule {
             Rule::NetworkState => "state of a network",
             Rule::Network => "frontier method",
             Rule::Arithmetic => "arithmetic",
+            Rule::Importance => "importance",
         }
     }
 
@@ -68,6 +73,7 @@ impl Rule {
             Rule::TotalProbability => {
                 "Barlow and Proschan, Statistical Theory of Reliability (1975), pivotal decomposition"
             }
+            Rule::Importance => "Birnbaum (1969); Rausand and Hoyland, System Reliability Theory, ch. 5",
             Rule::NetworkState | Rule::Network => {
                 "Carlier and Lucet, Discrete Applied Mathematics 65 (1996); Hardy, Lucet and Limnios, IEEE Trans. Reliability 56 (2007)"
             }
@@ -125,6 +131,22 @@ pub struct StepList {
     pub assumptions: Vec<String>,
     /// What the reader should know of the list itself.
     pub remarks: Vec<String>,
+    pub(super) ledger: Ledger,
+}
+
+/// What has been written, so that several systems in one list state what they
+/// have in common once.
+#[derive(Clone, PartialEq, Debug, Default)]
+pub(super) struct Ledger {
+    /// The step that computes something, by what it computes.
+    pub(super) known: FxHashMap<String, usize>,
+    /// The names of the things that a step is about.
+    pub(super) names: Vec<Vec<String>>,
+    pub(super) named: FxHashSet<(usize, String)>,
+    /// The exposures so far: data under different ones are different.
+    pub(super) exposures: Vec<Vec<Part>>,
+    /// How many systems have been written.
+    pub(super) systems: usize,
 }
 
 impl StepList {

@@ -11,7 +11,7 @@ mod names;
 mod render;
 
 pub(crate) use build::plain;
-pub use build::write;
+pub use build::{Written, write};
 pub use formula::{Formula, Side, Tails};
 pub use json::json;
 pub use list::{Outcome, Rule, Step, StepList};

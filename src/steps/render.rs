@@ -14,7 +14,7 @@ const BOUND: f64 = 1e-25;
 pub struct Shown {
     /// The thing.
     pub thing: String,
-    /// `line 12`, or empty.
+    /// `line 12`, `Power!C7`, or empty.
     pub place: String,
     /// Rule and source.
     pub rule: &'static str,
@@ -73,8 +73,7 @@ fn show(list: &StepList, step: &Step, sources: &Sources, digits: u8) -> Shown {
             (step.thing.clone(), result, String::new())
         }
     };
-    let place =
-        step.place.and_then(|p| sources.line(p)).map_or(String::new(), |(_, line)| format!("line {line}"));
+    let place = step.place.filter(|p| sources.find(*p).is_some()).map_or(String::new(), |p| sources.words(p));
     Shown {
         thing: step.thing.clone(),
         place,
@@ -123,7 +122,12 @@ impl Renderer<'_> {
             }
             Formula::Step(step, side) => (self.step(*step, *side), self.step_binding(*step, *side)),
             Formula::Whole(n) => (n.to_string(), POWER + 1),
-            Formula::Sum(terms) => (self.joined(terms, " + ", SUM, TERMS), SUM),
+            Formula::Sum(terms) => match terms.as_slice() {
+                [a, Formula::Negate(b)] => {
+                    (format!("{} - {}", self.text(a, SUM), self.text(b, PRODUCT)), SUM)
+                }
+                _ => (self.joined(terms, " + ", SUM, TERMS), SUM),
+            },
             Formula::Product(factors) => (self.joined(factors, " · ", PRODUCT, FACTORS), PRODUCT),
             Formula::Quotient(a, b) => {
                 (format!("{} / {}", self.text(a, PRODUCT), self.text(b, POWER)), PRODUCT)
@@ -141,11 +145,8 @@ impl Renderer<'_> {
             Formula::AtLeast(need, members, side) => (self.at_least(*need, members, *side), POWER + 1),
             Formula::Network(network, members, side) => (self.network(network, members, *side), POWER + 1),
         };
-        if own < around || (own == around && own == SUM && text.starts_with("1 - ")) {
-            format!("({text})")
-        } else {
-            text
-        }
+        let less = matches!(formula, Formula::OneMinus(_)) || text.starts_with("1 - ");
+        if own < around || (own == around && own == SUM && less) { format!("({text})") } else { text }
     }
 
     /// The parts, those in the middle of more than `most` left out and counted.

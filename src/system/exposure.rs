@@ -91,6 +91,17 @@ impl Model<'_> {
                         .mend("add them, or name them as phases: `mission climb 0.2 h, cruise 9 h`"),
                 ));
             }
+            if phase.name.is_some()
+                && let Some(twice) = parts.iter().find(|p| p.base == base && p.name == phase.name)
+            {
+                let first = self.tree.span(twice.written);
+                let name = phase.name.map_or(String::new(), |n| self.written(n));
+                return Err(self.fault(
+                    Problem::error(Code::BadSetting, place, format!("the phase `{name}` is given twice"))
+                        .label(first, "first here")
+                        .mend("give each phase a name of its own, or add the two"),
+                ));
+            }
             parts.push(Part { name: phase.name, base, amount, stress, written: phase.amount });
         }
         Ok(Exposure { parts, asked, span })

@@ -404,13 +404,18 @@ impl Model<'_> {
         };
         let Some(dim) = a.dim.times(&b.dim, sign) else { return Err(self.no_value(place)) };
         let size = value.to_f64().abs();
+        if size == 0.0 && !a.value.is_zero() && !b.value.is_zero() {
+            return Ok(too_small(a.value.is_negative() != b.value.is_negative(), dim));
+        }
         let relative = a.relative_error() + b.relative_error();
         let error = match op {
             ArithOp::Mul if size == 0.0 => {
                 a.value.to_f64().abs() * b.error + b.value.to_f64().abs() * a.error + a.error * b.error
             }
             _ if size == 0.0 => a.error / b.value.to_f64().abs(),
-            _ => size * (relative + STEP) * (1.0 + relative),
+            ArithOp::Mul => size * (relative + a.relative_error() * b.relative_error() + STEP),
+            _ if b.relative_error() >= 1.0 => f64::INFINITY,
+            _ => size * (relative / (1.0 - b.relative_error()) + STEP),
         };
         self.finite(Quantity { value, complement: None, dim, error }, place)
     }
@@ -440,7 +445,10 @@ impl Model<'_> {
         let Some(dim) = Dim::NONE.times(&a.dim, if a.dim.is_none() { 0 } else { exponent as i16 }) else {
             return Err(self.no_value(place));
         };
-        let log = a.value.to_f64().abs().ln().abs();
+        if value.is_zero() && !a.value.is_zero() {
+            return Ok(too_small(a.value.is_negative() && exponent % 2.0 != 0.0, dim));
+        }
+        let log = a.value.abs().ln().to_f64().abs();
         let relative = exponent.abs() * a.relative_error() + log * b.error + (1.0 + exponent.abs()) * STEP;
         let error =
             if a.value.is_zero() { a.error } else { value.to_f64().abs() * relative * (1.0 + relative) };
@@ -492,7 +500,8 @@ impl Model<'_> {
             return Err(self.fault(problem.mend("look at the figure in its parentheses")));
         }
         let (value, slope) = match name {
-            "exp" => (x.value.exp(), x.value.to_f64().exp()),
+            "exp" if x.value.exp().is_zero() => return Ok(too_small(false, Dim::NONE)),
+            "exp" => (x.value.exp(), x.value.exp().to_f64()),
             "ln" => (x.value.ln(), 1.0 / x.value.to_f64()),
             _ => (x.value.log10(), 1.0 / x.value.to_f64() / std::f64::consts::LN_10),
         };
@@ -533,6 +542,13 @@ impl Model<'_> {
         }
         Ok(best)
     }
+}
+
+/// A figure that is not zero and yet below all numbers that there are: the least
+/// of them, known only to be smaller than what is ever written.
+fn too_small(negative: bool, dim: Dim) -> Quantity {
+    let least = Real::from(f64::from_bits(1));
+    Quantity { value: if negative { -least } else { least }, complement: None, dim, error: 1e-300 }
 }
 
 /// A decimal's value and complement, each rounded once.

@@ -7,7 +7,7 @@ use super::quantity::Quantity;
 use super::units::Units;
 use crate::language::{ExprId, Line, Sym, Tree, words};
 use crate::source::{Code, Level, Problem, Sources, Span};
-use rustc_hash::FxHashMap;
+use rustc_hash::{FxHashMap, FxHashSet};
 use std::hash::BuildHasher;
 
 /// A definition, by number.
@@ -65,7 +65,7 @@ pub struct Model<'a> {
     /// The same for units.
     pub(super) unknown_units: FxHashMap<Sym, Fault>,
     /// Faults that only carry the place of a line which has been told already.
-    below: Vec<Fault>,
+    below: FxHashSet<Fault>,
     pub(super) items: FxHashMap<ExprId, Out<u32>>,
     pub(super) item_list: Vec<Item>,
     pub(super) figures: FxHashMap<ExprId, Out<Quantity>>,
@@ -92,7 +92,7 @@ impl<'a> Model<'a> {
             faulty: FxHashMap::default(),
             unknown: FxHashMap::default(),
             unknown_units: FxHashMap::default(),
-            below: Vec::new(),
+            below: FxHashSet::default(),
             items: FxHashMap::default(),
             item_list: Vec::new(),
             figures: FxHashMap::default(),
@@ -148,10 +148,9 @@ impl<'a> Model<'a> {
 
     /// A fault for what rests on a line that the reader has found in error.
     pub(super) fn broken_line(&mut self, what: &str, place: Span) -> Fault {
-        let line = self.sources.line(place).map_or(0, |l| l.1);
-        let message = format!("`{what}` rests on line {line}, which is in error");
+        let message = format!("`{what}` rests on {}, which is in error", self.sources.words(place));
         let fault = self.fault(Problem::error(Code::UnexpectedToken, place, message));
-        self.below.push(fault);
+        self.below.insert(fault);
         fault
     }
 
@@ -224,11 +223,13 @@ impl<'a> Model<'a> {
         if slot != NONE {
             let first = self.defs[slot as usize].span;
             let text = self.written(name);
-            let fault = self.fault(
-                Problem::error(Code::DefinedTwice, span, format!("`{text}` is defined twice"))
-                    .label(first, "first here")
-                    .mend("one name is one thing: give the second another name, or delete one of the two"),
-            );
+            let problem = Problem::error(Code::DefinedTwice, span, format!("`{text}` is defined twice"))
+                .label(first, "first here")
+                .mend("one name is one thing: give the second another name, or delete one of the two");
+            let fault = self.fault(match self.sources.cell(span) {
+                Some(_) => problem.mend("several of one sort are one row with their number under `qty`"),
+                None => problem,
+            });
             self.defs[slot as usize].broken = Some(fault);
             return;
         }

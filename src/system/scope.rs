@@ -10,6 +10,9 @@ use unicode_security::skeleton;
 /// Places shown beside the first where one cause has many.
 const MOST_LABELS: usize = 8;
 
+/// Unknown names for which the nearest known one is looked for.
+const MOST_HINTS: usize = 200;
+
 /// What a node is used as.
 #[derive(Clone, Copy, PartialEq, Eq, Debug)]
 enum Use {
@@ -228,6 +231,10 @@ impl Model<'_> {
             None if self.units.hours(text).is_some() => {
                 problem.mend(format!("a unit stands directly after its number, as in `4 {text}`"))
             }
+            // A search for each of many would take the square of their number.
+            None if self.unknown.len() >= MOST_HINTS => {
+                problem.mend("define it, or give it the name that it has elsewhere")
+            }
             None => self.with_nearest(problem, text),
         };
         let fault = self.fault(problem);
@@ -417,6 +424,6 @@ fn roots(line: &Line) -> SmallVec<[ExprId; 2]> {
         }
         Line::Require { left, right, .. } => smallvec![*left, *right],
         Line::Mission(phases) => phases.iter().flat_map(|p| [Some(p.amount), p.stress]).flatten().collect(),
-        Line::Exposure(_) | Line::Attribute(_) | Line::Broken(_) => SmallVec::new(),
+        Line::Exposure(_) | Line::Attribute(_) | Line::Use(_) | Line::Broken(_) => SmallVec::new(),
     }
 }

@@ -129,6 +129,32 @@ impl Structure {
         made.pop()
     }
 
+    /// Adds what is left of a network whose members have come to this, in the
+    /// order of their places; whether it works, where that is certain.
+    ///
+    /// # Errors
+    /// `Err` is no failure here: it says what is certain.
+    pub fn network_left(
+        &mut self,
+        shape: &Network,
+        members: &[Result<NodeId, bool>],
+    ) -> Result<NodeId, bool> {
+        let mut network = shape.clone();
+        for (at, member) in members.iter().enumerate() {
+            if *member == Err(false) {
+                network = network.given(at as u32, false);
+            }
+        }
+        for stop in &mut network.stops {
+            *stop = stop.and_then(|at| members.get(at as usize).and_then(|m| m.ok()).map(|node| node.0));
+        }
+        match self.network(&network) {
+            Some(node) if self.node(node) == Node::Works => Err(true),
+            Some(node) => Ok(node),
+            None => Err(false),
+        }
+    }
+
     /// Adds a network that no reduction makes smaller; the numbers at its stops
     /// are places in `members`.
     pub fn shaped(&mut self, shape: Arc<Network>, members: &[NodeId]) -> NodeId {

@@ -60,7 +60,12 @@ fn fences() {
     finds("# T\n\n```tieback\nA = 1\n\nR(A) ?\n```\nx\n", &[r#"fence ["A = 1", "", "R(A) ?"]"#], &[]);
     finds("~~~~~ tieback title\nA\n~~~\n~~~~~~\n", &[r#"fence ["A", "~~~"]"#], &[]);
     finds("``` \ttieback\n```\n", &["fence []"], &[]);
-    finds("```tiebacks\nA\n```\n```rust tieback\n```\n    ```tieback\n", &[], &[]);
+    finds("```tiebackish\nA\n```\n```rust tieback\n```\n    ```tieback\n", &[], &[]);
+    for near in ["tiebacks", "Tieback", "tieback,", "tibeack", "tieack", "{tieback}"] {
+        finds(&format!("tieback\n~~~{near} x\nA\n~~~\n"), &[], &[Code::NearlyABlock]);
+    }
+    finds("\n```tieback\u{feff}\\|\n", &[], &[Code::NearlyABlock]);
+    finds("tieback\n```tie\n```\n```text\n```\n```back\n```\n", &[], &[]);
     finds("````md\n```tieback\nA\n```\n````\n", &[], &[]);
     finds("\u{feff}```tieback\nA\n```\n", &[r#"fence ["A"]"#], &[]);
     finds(

@@ -59,6 +59,22 @@ pub(super) fn walk(text: &str, base: u32, mark: usize, part: Range<usize>) -> (F
     (walk.found, walk.raw)
 }
 
+/// Whether a word is tieback's but for case, a sign behind it, or one letter
+/// left out, put in, or another.
+fn nearly_ours(word: &str) -> bool {
+    let word = word.trim_matches(|c: char| !c.is_alphanumeric()).to_lowercase();
+    let (a, b) = (word.as_bytes(), INFO_WORD.as_bytes());
+    let before = a.iter().zip(b).take_while(|(x, y)| x == y).count();
+    let behind = a.iter().rev().zip(b.iter().rev()).take_while(|(x, y)| x == y).count();
+    let swapped = || {
+        let (x, y) = (a.get(before..before + 2), b.get(before..before + 2));
+        a.len() == b.len()
+            && before + 2 + behind >= b.len()
+            && matches!((x, y), (Some([p, q]), Some([r, s])) if p == s && q == r)
+    };
+    a.len().abs_diff(b.len()) <= 1 && (before + behind + 1 >= a.len().max(b.len()) || swapped())
+}
+
 /// Length of the YAML or TOML block that a note may begin with.
 ///
 /// Done by hand because it is one only at the very start: pulldown-cmark
@@ -192,6 +208,10 @@ impl<'a> Walk<'a> {
                 if matches!(kind, CodeBlockKind::Fenced(_)) && self.is_ours(range.start) {
                     let seen = self.next_line(range.start);
                     self.fence = Some(Lines { range, seen, lines: Vec::new() });
+                } else if let CodeBlockKind::Fenced(info) = kind
+                    && let Some(word) = info.split_whitespace().next().filter(|w| nearly_ours(w))
+                {
+                    self.nearly(range.start, word);
                 }
             }
             Tag::Table(_) => self.table(),
@@ -291,6 +311,19 @@ impl<'a> Walk<'a> {
             .trim_start_matches([' ', '\t'])
             .strip_prefix(INFO_WORD)
             .is_some_and(|rest| rest.chars().next().is_none_or(char::is_whitespace))
+    }
+
+    /// A block whose info word was most probably meant to be tieback's.
+    fn nearly(&mut self, at: usize, word: &str) {
+        let line = self.text[at..].lines().next().unwrap_or("");
+        // With a backslash in it the word stands otherwise in the text than it reads.
+        let (from, length) = line.find(word).map_or((0, line.len()), |from| (from, word.len()));
+        let start = at + from;
+        let message = format!("a block with the info word `{word}` is not read");
+        self.found.problems.push(
+            Problem::remark(Code::NearlyABlock, self.span(start..start + length), message)
+                .mend("write `tieback`, in small letters and alone, for a block that is"),
+        );
     }
 
     fn next_line(&self, at: usize) -> usize {

@@ -7,6 +7,8 @@ use std::hash::BuildHasher;
 
 use rustc_hash::FxBuildHasher;
 
+pub use crate::source::cell_name as a1;
+
 /// What a cell shows.
 #[derive(Clone, Copy, PartialEq, Debug)]
 pub enum Value<'a> {
@@ -57,20 +59,6 @@ pub struct Cell<'a> {
     pub merged_into: Option<(u32, u32)>,
     /// Whether the sheet's protection keeps users from typing here.
     pub protected: bool,
-}
-
-/// The address of a cell, both counted from 0: `(1, 27)` is `AB2`.
-pub fn a1(row: u32, column: u32) -> String {
-    let mut letters = Vec::new();
-    let mut rest = u64::from(column) + 1;
-    while rest > 0 {
-        rest -= 1;
-        letters.push(b'A' + u8::try_from(rest % 26).unwrap_or(0));
-        rest /= 26;
-    }
-    let mut out: String = letters.iter().rev().map(|b| char::from(*b)).collect();
-    out.push_str(&(u64::from(row) + 1).to_string());
-    out
 }
 
 /// The largest row and column that a sheet can have, counted from 0.

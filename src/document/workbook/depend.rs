@@ -2,7 +2,7 @@
 
 use std::collections::{BTreeMap, BTreeSet};
 
-use super::cells::{Block, LAST_COLUMN, LAST_ROW, a1};
+use super::cells::{Block, LAST_COLUMN, LAST_ROW};
 use super::package::Package;
 use super::refs::{Scope, refers};
 use super::sheet::{Item, Walk};
@@ -34,7 +34,7 @@ impl Stale {
     }
 }
 
-pub(super) fn depending(book: &Book, cells: &[(usize, u32, u32)]) -> Vec<(usize, String)> {
+pub(super) fn depending(book: &Book, cells: &[(usize, u32, u32)]) -> Vec<(usize, u32, u32)> {
     if cells.is_empty() || !book.holds_formula() {
         return Vec::new();
     }
@@ -61,7 +61,7 @@ pub(super) fn depending(book: &Book, cells: &[(usize, u32, u32)]) -> Vec<(usize,
         }
     }
     let hits = held.iter().zip(&found).filter(|(_, found)| **found);
-    hits.map(|(f, _)| (f.at.0, a1(f.at.1, f.at.2))).collect()
+    hits.map(|(f, _)| f.at).collect()
 }
 
 fn of_xlsx(book: &Book, workbook: &str) -> Result<Vec<Held>, BookTrouble> {

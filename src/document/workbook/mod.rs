@@ -65,6 +65,13 @@ impl Limits {
     pub fn with_unzipped(bytes: u64) -> Limits {
         Limits { unzipped: bytes, ..Limits::default() }
     }
+
+    /// The same limits but for the cells.
+    #[must_use]
+    pub fn with_cells(mut self, cells: u64) -> Limits {
+        self.cells = cells;
+        self
+    }
 }
 
 /// Why a workbook could not be read or written.
@@ -74,6 +81,8 @@ pub struct BookTrouble {
     pub sheet: Option<String>,
     /// The cell's address, where the trouble is in one.
     pub cell: Option<String>,
+    /// The same as row and column, counted from 0.
+    pub at: Option<(u32, u32)>,
     /// What is wrong.
     pub cause: String,
     /// What to do about it.
@@ -82,7 +91,7 @@ pub struct BookTrouble {
 
 impl BookTrouble {
     fn file(cause: impl Into<String>, mend: impl Into<String>) -> BookTrouble {
-        BookTrouble { sheet: None, cell: None, cause: cause.into(), mend: mend.into() }
+        BookTrouble { sheet: None, cell: None, at: None, cause: cause.into(), mend: mend.into() }
     }
 
     fn sheet(sheet: &str, cause: impl Into<String>, mend: impl Into<String>) -> BookTrouble {
@@ -90,7 +99,7 @@ impl BookTrouble {
     }
 
     fn cell(sheet: &str, at: (u32, u32), cause: impl Into<String>, mend: impl Into<String>) -> BookTrouble {
-        BookTrouble { cell: Some(a1(at.0, at.1)), ..BookTrouble::sheet(sheet, cause, mend) }
+        BookTrouble { cell: Some(a1(at.0, at.1)), at: Some(at), ..BookTrouble::sheet(sheet, cause, mend) }
     }
 
     /// A part whose XML is not what it should be.
@@ -302,6 +311,11 @@ impl Book {
         self.read_only.is_none()
     }
 
+    /// The bytes that were read.
+    pub fn bytes(&self) -> &[u8] {
+        &self.bytes
+    }
+
     /// Why it cannot: the workbook is of a kind that is only read, or signed.
     pub fn read_only_because(&self) -> Option<&str> {
         self.read_only.as_deref()
@@ -353,14 +367,14 @@ impl Book {
     }
 
     /// The formulas whose stored values are stale once these cells (sheet, row,
-    /// column) are written: sheet and address of each, in order.
+    /// column) are written, in order.
     ///
     /// Found are formulas that name such a cell, a range, a whole row or column
     /// over it, a defined name or a table that holds it, and formulas that
     /// refer to those formulas in turn. Not found are references that a formula
     /// only computes (`INDIRECT`, `OFFSET`), those of other workbooks, and what
     /// charts, rules and validations refer to. In xls and xlsb none are found.
-    pub fn formulas_depending_on(&self, cells: &[(usize, u32, u32)]) -> Vec<(usize, String)> {
+    pub fn formulas_depending_on(&self, cells: &[(usize, u32, u32)]) -> Vec<(usize, u32, u32)> {
         depend::depending(self, cells)
     }
 

@@ -59,8 +59,10 @@ pub fn of(code: Code) -> Explanation {
         Code::TableHeader => places::TABLE_HEADER,
         Code::TableCell => places::TABLE_CELL,
         Code::UnclosedFence => places::UNCLOSED_FENCE,
+        Code::NearlyABlock => places::NEARLY_A_BLOCK,
         Code::NotUtf8 => places::NOT_UTF8,
         Code::FileAccess => places::FILE_ACCESS,
+        Code::UnusableFile => places::UNUSABLE_FILE,
         Code::NothingToDo => places::NOTHING_TO_DO,
         Code::UnknownName => things::UNKNOWN_NAME,
         Code::DefinedTwice => things::DEFINED_TWICE,
@@ -92,6 +94,8 @@ pub fn of(code: Code) -> Explanation {
         Code::TooLarge => data::TOO_LARGE,
         Code::CutShort => data::CUT_SHORT,
         Code::NotMet => data::NOT_MET,
+        Code::OutOfDateFormula => places::OUT_OF_DATE_FORMULA,
+        Code::OpenElsewhere => places::OPEN_ELSEWHERE,
         Code::Stale => data::STALE,
     }
 }

@@ -117,6 +117,21 @@ pub(super) const TABLE_CELL: Explanation = Explanation {
     ),
 };
 
+pub(super) const NEARLY_A_BLOCK: Explanation = Explanation {
+    what: "A block has nearly the info word that is read. It differs from `tieback` by case, by a sign or by one letter. Only \
+           exactly `tieback` is read, so that blocks of other languages are left alone; this one was most probably meant to be.",
+    wrong: lines!("```tieback", "pump = 0.98", "```", "", "```Tieback", "R(pump) ?", "```"),
+    mended: lines!("```tieback", "pump = 0.98", "```", "", "```tieback", "R(pump) ?", "```"),
+};
+
+pub(super) const UNUSABLE_FILE: Explanation = Explanation {
+    what: "A file that the note uses cannot be had, or defines nothing. Its path is written relative to the note, with `/`, \
+           without `..`, and the file lies at or below the note's folder, also after links are followed. The option \
+           `--use-from FOLDER` allows files of another folder.",
+    wrong: note!("use \"../stores/parts.md\"", "pump = 0.98", "R(pump) ?"),
+    mended: note!("pump = 0.98", "R(pump) ?"),
+};
+
 pub(super) const UNCLOSED_FENCE: Explanation = Explanation {
     what: "A block is never closed. Markdown then takes everything up to the end of the note for its content, prose as well. Close \
            the block with as many backticks or tildes as open it, on a line of their own.",
@@ -138,6 +153,22 @@ pub(super) const FILE_ACCESS: Explanation = Explanation {
            file that could not be written is as it was.",
     wrong: lines!("tieback fill fload-gate.md"),
     mended: lines!("tieback fill flood-gate.md"),
+};
+
+pub(super) const OUT_OF_DATE_FORMULA: Explanation = Explanation {
+    what: "A formula of the workbook rests on an answer that has just changed. tieback writes answers and never the stored value \
+           of a formula. The workbook asks for all formulas to be computed when it is opened next; a program that \
+           only reads stored values would take the old ones until then. Open the workbook and save it.",
+    wrong: lines!("tieback fill parts.xlsx", "# where a sum in parts.xlsx takes in a column of answers"),
+    mended: lines!("tieback fill parts.xlsx", "# then open parts.xlsx in a spreadsheet program and save it"),
+};
+
+pub(super) const OPEN_ELSEWHERE: Explanation = Explanation {
+    what: "The workbook seems to be open in a spreadsheet program. A lock file of such a program lies beside it. The answers are written \
+           all the same; what is saved from the open window later replaces them. Close the workbook there, or \
+           open it anew after filling. A lock file that a crash left behind may be deleted.",
+    wrong: lines!("tieback fill parts.xlsx", "# while parts.xlsx is open"),
+    mended: lines!("tieback fill parts.xlsx", "# after parts.xlsx was closed"),
 };
 
 pub(super) const NOTHING_TO_DO: Explanation = Explanation {

@@ -20,6 +20,86 @@ pub struct System {
     pub places: Vec<Option<ExprId>>,
     /// Nodes that stand in several places.
     pub repeated: Vec<NodeId>,
+    /// What is taken for granted, and of which nodes it changes something.
+    given: Option<(String, Vec<bool>)>,
+}
+
+impl System {
+    /// What is taken for granted of a part of this node, in words.
+    pub fn given(&self, node: NodeId) -> Option<&str> {
+        let (words, touched) = self.given.as_ref()?;
+        touched.get(node.0 as usize).copied().unwrap_or(false).then_some(words)
+    }
+
+    /// What is left of the system where a node is known to work or to have
+    /// failed, said in `words`; whether it works, where that is then certain.
+    ///
+    /// # Errors
+    /// `Ok` of no system, but what is certain.
+    pub fn knowing(&self, pinned: NodeId, works: bool, words: String) -> Result<System, bool> {
+        let old = &self.structure;
+        let mut left = System {
+            structure: Structure::default(),
+            root: NodeId(0),
+            leaves: self.leaves.clone(),
+            labels: Vec::new(),
+            places: Vec::new(),
+            repeated: Vec::new(),
+            given: None,
+        };
+        let mut touched: Vec<bool> = Vec::new();
+        // Whether each old node works for certain, or its new node and whether it has changed.
+        let mut now: Vec<Result<(NodeId, bool), bool>> = Vec::with_capacity(old.len());
+        let mut members = Vec::new();
+        for id in (0..old.len() as u32).map(NodeId) {
+            let value = match old.node(id) {
+                _ if id == pinned => Err(works),
+                Node::Works => Err(true),
+                Node::Leaf(leaf) => Ok((left.structure.leaf(leaf), false)),
+                Node::AtLeast { need, .. } => {
+                    let mut need = need as usize;
+                    let mut changed = false;
+                    members.clear();
+                    for member in old.members(id) {
+                        match now[member.0 as usize] {
+                            Ok((node, has_changed)) => {
+                                members.push(node);
+                                changed |= has_changed;
+                            }
+                            Err(works) => {
+                                need = need.saturating_sub(usize::from(works));
+                                changed = true;
+                            }
+                        }
+                    }
+                    if need == 0 {
+                        Err(true)
+                    } else if need > members.len() {
+                        Err(false)
+                    } else {
+                        Ok((left.structure.at_least(need as u32, &members), changed))
+                    }
+                }
+                Node::Network { shape, .. } => {
+                    let of = |m: &NodeId| now[m.0 as usize];
+                    let changed = old.members(id).iter().map(of).any(|m| m.is_ok_and(|m| m.1) || m.is_err());
+                    let known: Vec<_> = old.members(id).iter().map(|m| of(m).map(|m| m.0)).collect();
+                    left.structure.network_left(old.shape(shape), &known).map(|node| (node, changed))
+                }
+            };
+            // A node of one member is that member and adds none; a network may add many.
+            let changed = value.is_ok_and(|(_, changed)| changed);
+            while left.structure.len() > touched.len() {
+                touched.push(changed);
+                left.labels.push(self.labels.get(id.0 as usize).copied().unwrap_or(NONE));
+                left.places.push(self.places.get(id.0 as usize).copied().flatten());
+            }
+            now.push(value);
+        }
+        left.root = now[self.root.0 as usize]?.0;
+        left.given = Some((words, touched));
+        Ok(left)
+    }
 }
 
 /// Tables that each system takes over from the one before.
@@ -71,6 +151,7 @@ impl Model<'_> {
             labels: Vec::with_capacity(order.len()),
             places: Vec::with_capacity(order.len()),
             repeated: Vec::new(),
+            given: None,
         };
         system.structure.reserve(order.len());
         let (places, members) = (&mut room.places, &mut room.members);
