@@ -33,7 +33,7 @@ impl Shelf for Beside {
     fn fetch(&self, from: &str, path: &str) -> Result<Fetched, NotFetched> {
         let path = Path::new(from).with_file_name(path);
         let bytes = std::fs::read(&path).unwrap();
-        Ok(Fetched { name: path.display().to_string(), bytes })
+        Ok(Fetched { name: path.display().to_string(), key: path.display().to_string(), bytes })
     }
 }
 

@@ -6,7 +6,7 @@ use dashu_float::round::mode::HalfEven;
 use std::collections::BTreeSet;
 use tieback::answer::{Desk, Number};
 use tieback::language::{self, Expr, Line};
-use tieback::note::{fill, syntax};
+use tieback::note::{Fetched, NotFetched, Shelf, fill, fill_from, syntax_from};
 use tieback::number::{Chance, Real};
 use tieback::source::Sources;
 use tieback::steps::{Formula, Outcome, Rule, Side, StepList, shown};
@@ -331,7 +331,7 @@ fn each_step_list_of_note(
     questions: &[&str],
     mut check: impl FnMut(&str, &StepList, &Number, &Sources),
 ) {
-    let (mut sources, mut tree, mut problems) = syntax("note", text);
+    let (mut sources, mut tree, mut problems) = syntax_from("note.md", text, &Examples);
     let first = tree.statements.len();
     for question in questions {
         let at = sources.add("question", *question).unwrap();
@@ -542,6 +542,16 @@ fn steps_can_be_computed_again() {
     }
 }
 
+/// The folder of the examples, whose notes use its parts lists.
+struct Examples;
+
+impl Shelf for Examples {
+    fn fetch(&self, _: &str, path: &str) -> Result<Fetched, NotFetched> {
+        let bytes = std::fs::read(std::path::Path::new("examples").join(path)).unwrap();
+        Ok(Fetched { name: path.to_string(), key: path.to_string(), bytes })
+    }
+}
+
 /// Questions of the examples, where there are any.
 #[test]
 fn steps_of_the_examples_can_be_computed_again() {
@@ -552,7 +562,7 @@ fn steps_of_the_examples_can_be_computed_again() {
         }
         let text = std::fs::read_to_string(entry.path()).unwrap();
         let mut questions: Vec<&str> = Vec::new();
-        for asked in fill("example.md", &text).asked {
+        for asked in fill_from("example.md", text.as_str().into(), &Examples).asked {
             let question =
                 text[asked.place.start as usize..asked.place.end as usize].split('?').next().unwrap();
             let word = question.trim_start();

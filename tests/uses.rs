@@ -54,13 +54,15 @@ fn definitions_come_and_nothing_else() {
 #[test]
 fn a_prefix_keeps_files_apart() {
     let note = block(
-        "use \"a.md\" as A\nuse \"a.md\" as B\nuse \"b.md\" as B2\npump = 0.5\nR(A.line -> pump) ?\nR(A.pump // B.pump) ?\nB.pump.rate ?\nR(B2.A.pump) ?\nR(B2.two) ?\nR(A.lane(pump)) ?",
+        "use \"a.md\" as A\nuse \"a2.md\" as B\nuse \"b.md\" as B2\npump = 0.5\nR(A.line -> pump) ?\nR(A.pump // B.pump) ?\nB.pump.rate ?\nR(B2.A.pump) ?\nR(B2.two) ?\nR(A.lane(pump)) ?",
     );
     let parts = "pump = rate 2e-3 /h\nlane(s) = s -> pump\nline = lane(psu)\npsu = 0.9\n\"out put\" = pump -> psu\nk = pump.rate * 2 h\nq = psu -> k";
-    let b = block("use \"a.md\" as A\ntwo = 2 of 2 A.pump");
+    let b = block("use \"a3.md\" as A\ntwo = 2 of 2 A.pump");
     let files = folder(&[
         ("note.md", &(note + "\n```tieback\nmission 100 h\n```\n")),
         ("a.md", &block(parts)),
+        ("a2.md", &block(parts)),
+        ("a3.md", &block(parts)),
         ("b.md", &b),
     ]);
     let (code, text, said) = fill(files.path(), &["fill", "note.md"], "note.md");
@@ -144,6 +146,31 @@ fn a_year_of_another_length_is_told() {
         let (found, _, said) = fill(files.path(), &["fill", "note.md"], "note.md");
         assert_eq!(found, code, "{said}");
         assert_eq!(said.contains("the length of a year"), code == 2, "{said}");
+    }
+}
+
+/// One file under two prefixes would make two things of one.
+#[test]
+fn one_thing_is_not_made_two() {
+    let bus = block("bus = 0.9\nlife = mttf 1 yr");
+    let files = folder(&[
+        ("bus.md", &bus),
+        ("left.md", &block("use \"bus.md\"\nleft = bus")),
+        ("a.md", &block("use \"bus.md\" as P\nuse \"bus.md\" as Q\nR(P.bus -> Q.bus) ?")),
+        ("b.md", &block("use \"left.md\"\nuse \"bus.md\" as B\nR(left // B.bus) ?")),
+        ("c.md", &block("use \"bus.md\"\nuse \"left.md\"\nR(left -> bus) ?")),
+        ("d.md", &block("year 8766 h\nmission 1 h\nuse \"bus.md\"\nR(life) ?")),
+    ]);
+    for (note, code, part) in [
+        ("a.md", 2, "would count twice"),
+        ("b.md", 2, "would count twice"),
+        ("c.md", 0, "stand"),
+        ("d.md", 2, "has data in years"),
+    ] {
+        let (found, text, said) = fill(files.path(), &["fill", note], note);
+        assert_eq!(found, code, "{note}: {said}");
+        assert!(said.contains(part) || code == 0, "{note}: {said}");
+        assert!(code != 0 || text.contains("R(left -> bus) ? 0.9000"), "{text}");
     }
 }
 

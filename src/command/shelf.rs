@@ -66,8 +66,16 @@ impl Shelf for Disk {
                 "put the file at or below the note's folder, or allow its folder with `--use-from FOLDER`",
             ));
         }
-        let bytes = files::read(&target).map_err(|trouble| not(trouble.cause, trouble.mend))?;
-        Ok(Fetched { name: tidy(&target), bytes })
+        // A pipe would be waited for without end.
+        if !real.is_file() {
+            return Err(not("it is no file", "name a note or a parts list"));
+        }
+        let bytes = files::read(&real).map_err(|trouble| not(trouble.cause, trouble.mend))?;
+        Ok(Fetched { name: tidy(&target), key: real.to_string_lossy().into_owned(), bytes })
+    }
+
+    fn key(&self, name: &str) -> String {
+        Path::new(name).canonicalize().map_or(name.to_string(), |real| real.to_string_lossy().into_owned())
     }
 
     fn limits(&self) -> Limits {

@@ -9,10 +9,9 @@ use super::ahead::Ahead;
 use super::read::read_own;
 use crate::document::markdown::find;
 use crate::document::workbook::Limits;
-use crate::language::{Line, Tree, Use};
+use crate::language::{Line, Suffix, Tree, Use};
 use crate::sheets::{self, SheetForm};
 use crate::source::{Code, Problem, Sources, Span};
-use rustc_hash::FxHashSet;
 
 /// Where the files come from that a note uses.
 pub trait Shelf: Sync {
@@ -21,6 +20,11 @@ pub trait Shelf: Sync {
     /// # Errors
     /// Why it cannot be had, and what the writer can do.
     fn fetch(&self, from: &str, path: &str) -> Result<Fetched, NotFetched>;
+
+    /// What the file with this name is, whatever path leads to it.
+    fn key(&self, name: &str) -> String {
+        name.to_string()
+    }
 
     /// How much a workbook may ask for.
     fn limits(&self) -> Limits {
@@ -31,8 +35,10 @@ pub trait Shelf: Sync {
 /// A file that a note uses.
 #[derive(Clone, Debug)]
 pub struct Fetched {
-    /// The name that messages show; one file has one name.
+    /// The name that messages show.
     pub name: String,
+    /// What the file is, whatever path leads to it.
+    pub key: String,
     /// Its bytes.
     pub bytes: Vec<u8>,
 }
@@ -65,6 +71,7 @@ pub(super) const ELSEWHERE: u32 = u32::MAX;
 /// A file that is being brought in: its name, and the line that uses it.
 struct Open {
     name: String,
+    key: String,
     place: Span,
     /// The lines of it that use others, the first last.
     waiting: Vec<Use>,
@@ -87,10 +94,16 @@ pub(super) fn bring_in(
         return;
     }
     let own = tree.statements.len();
-    let mut bringing = Bringing { shelf, sources, tree, problems, done: FxHashSet::default(), own };
+    let mut bringing = Bringing { shelf, sources, tree, problems, done: Vec::new(), own };
     // Files that use files that use files: the way down is kept here.
-    let mut open =
-        vec![Open { name: name.to_string(), place: Span::default(), waiting, first: 0, prefix: None }];
+    let mut open = vec![Open {
+        name: name.to_string(),
+        key: shelf.key(name),
+        place: Span::default(),
+        waiting,
+        first: 0,
+        prefix: None,
+    }];
     while let Some(top) = open.last_mut() {
         match top.waiting.pop() {
             Some(used) => {
@@ -120,8 +133,9 @@ struct Bringing<'a> {
     sources: &'a mut Sources,
     tree: &'a mut Tree,
     problems: &'a mut Vec<Problem>,
-    /// Files, sheets of them and prefixes that have been brought in.
-    done: FxHashSet<(String, Option<String>, Option<String>)>,
+    /// Files that have been brought in: what they are, the sheet of each, what
+    /// stands before its names, and where.
+    done: Vec<(String, Option<String>, Option<String>, Span)>,
     /// How many statements are the note's own.
     own: usize,
 }
@@ -144,7 +158,8 @@ impl Bringing<'_> {
             }
         };
         let name = fetched.name.clone();
-        if let Some(at) = open.iter().position(|o| o.name == name) {
+        let key = fetched.key.clone();
+        if let Some(at) = open.iter().position(|o| o.key == key) {
             self.circle(&open[at..], &name, place);
             return None;
         }
@@ -152,10 +167,17 @@ impl Bringing<'_> {
         let outer: Vec<String> =
             open.iter().filter_map(|o| text(o.prefix.map(|p| (p, place)), self.tree)).collect();
         let whole = outer.into_iter().chain(prefix).reduce(|a, b| format!("{a}.{b}"));
-        if !self.done.insert((name.clone(), sheet.clone(), whole)) {
+        let before =
+            self.done.iter().find(|d| d.0 == key && (d.1 == sheet || d.1.is_none() || sheet.is_none()));
+        if let Some((_, before_sheet, before_whole, first)) = before {
+            if *before_sheet != sheet || *before_whole != whole {
+                self.two_names(&path, place, *first);
+            }
             return None;
         }
+        self.done.push((key.clone(), sheet.clone(), whole, place));
         let first = self.tree.statements.len();
+        let first_literal = self.tree.literals.len();
         let form = name.rsplit_once('.').and_then(|(_, ending)| SheetForm::of_ending(ending));
         match form {
             Some(form) => self.sheets(&fetched, form, sheet.as_deref(), place),
@@ -168,9 +190,10 @@ impl Bringing<'_> {
             }
             None => self.note(fetched, place),
         }
+        self.years_of_its_own(first, first_literal, place, &name);
         self.keep_definitions(first, place, &name);
         let waiting = uses(self.tree, first);
-        Some(Open { name, place, waiting, first, prefix: used.prefix.map(|p| p.0) })
+        Some(Open { name, key, place, waiting, first, prefix: used.prefix.map(|p| p.0) })
     }
 
     fn sheets(&mut self, fetched: &Fetched, form: SheetForm, sheet: Option<&str>, place: Span) {
@@ -280,6 +303,37 @@ impl Bringing<'_> {
         self.tree.statements.append(&mut new);
     }
 
+    /// A file that says nothing of the year means the usual one by it: in a note
+    /// that sets another its data would change.
+    fn years_of_its_own(&mut self, first: usize, first_literal: usize, place: Span, name: &str) {
+        let own = self.tree.statements[..self.own].iter().find_map(|s| match s.line {
+            Line::Year(value) => Some(value),
+            _ => None,
+        });
+        let Some(ours) = own else { return };
+        // The settings of a parts list are cells of its text and become no lines.
+        let in_cells = |text: &str| {
+            text.lines()
+                .any(|cell| cell.split_whitespace().next().is_some_and(|w| w.eq_ignore_ascii_case("year")))
+        };
+        let says = self.tree.statements[first..].iter().any(|s| matches!(s.line, Line::Year(_)))
+            || self.sources.files().last().is_some_and(|f| f.cells.is_some() && in_cells(&f.text));
+        let in_years = self.tree.literals[first_literal..].iter().any(|l| match l.suffix {
+            Suffix::Unit(unit) => matches!(self.tree.names.text(unit.word), "yr" | "year" | "years"),
+            _ => false,
+        });
+        if !says && in_years {
+            let message = format!(
+                "this note sets the length of a year, and \"{name}\" has data in years without saying so"
+            );
+            self.problems.push(
+                Problem::error(Code::BadSetting, place, message)
+                    .label(self.tree.span(ours), "set here")
+                    .mend("set the same year in both, or give its data in hours"),
+            );
+        }
+    }
+
     /// A year of another length in the used file would change what its data mean.
     fn other_year(&mut self, value: crate::language::ExprId, place: Span, name: &str) {
         let words = |value: crate::language::ExprId, this: &Self| {
@@ -300,6 +354,16 @@ impl Bringing<'_> {
                     .mend("set the same year in both, or give its data in hours"),
             );
         }
+    }
+
+    /// A file whose things would get two names: one physical thing would count as two.
+    fn two_names(&mut self, path: &str, place: Span, first: Span) {
+        let message = format!("\"{path}\" is used already under other names: its things would count twice");
+        self.problems.push(
+            Problem::error(Code::SeveralNames, place, message)
+                .label(first, "used here")
+                .mend("use it in the same way everywhere: with the same prefix, or with none"),
+        );
     }
 
     fn circle(&mut self, way: &[Open], name: &str, place: Span) {
