@@ -22,7 +22,7 @@ fn fill(folder: &Path, arguments: &[&str], note: &str) -> (i32, String, String) 
         .args(arguments)
         .output()
         .unwrap();
-    let text = std::fs::read_to_string(folder.join(note)).unwrap();
+    let text = std::fs::read_to_string(folder.join(note)).unwrap_or_default();
     (output.status.code().unwrap(), text, String::from_utf8_lossy(&output.stderr).into_owned())
 }
 
@@ -129,6 +129,10 @@ fn errors_say_their_file() {
     let (code, text, said) = fill(files.path(), &["fill", "note.md"], "note.md");
     assert_eq!(code, 2);
     assert!(text.contains("R(x) ? ! rests on deep/two.md line 2, which is in error"), "{text}\n{said}");
+    // From another folder the answer reads the same.
+    let from_above =
+        fill(files.path().parent().unwrap(), &["check", files.path().join("note.md").to_str().unwrap()], "x");
+    assert!(!from_above.2.contains("stale"), "{}", from_above.2);
     assert!(said.contains("deep/two.md:2:10") && said.contains("`y` is defined twice"), "{said}");
     assert!(said.contains("deep/one.md:5:1") && said.contains("note.md:5:1"), "{said}");
     let year = block("year 8766 h\np = mttf 2 yr");

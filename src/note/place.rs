@@ -136,7 +136,8 @@ impl Work<'_> {
         let elsewhere = |place| match model.sources.find(place) {
             // Of a file that the note uses, whose lines stay as they are.
             Some((file, _)) if file.base != self.base => {
-                format!("{} {}", file.name, model.sources.words(place))
+                let own = model.sources.files().first().map_or("", |f| f.name.as_str());
+                format!("{} {}", from_folder_of(own, &file.name), model.sources.words(place))
             }
             _ => format!("line {}", self.line_once_filled(place, model)),
         };
@@ -309,6 +310,13 @@ impl Work<'_> {
         }
         self.edits.sort_by_key(|e| (e.span.start, e.span.end));
     }
+}
+
+/// A path as it reads from the folder of a note: an answer must not depend on
+/// the folder that the program was started in.
+fn from_folder_of<'p>(note: &str, path: &'p str) -> &'p str {
+    let folder = note.rfind(['/', '\\']).map_or("", |end| &note[..=end]);
+    path.strip_prefix(folder).unwrap_or(path)
 }
 
 /// Whether a text is one that tieback writes, whatever blanks stand between its words.
