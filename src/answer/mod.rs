@@ -21,7 +21,6 @@ pub use reply::Reply;
 pub(crate) use require::require_parts;
 pub use require::{Verdict, require};
 pub use round::StepsForm;
-#[allow(unused_imports)] // the face of sheets uses them all
 pub(crate) use round::{Answered, Inquiry, MANY, Outcome, Own, answer_all, misfit, show_readings, told_once};
 pub use steps::End;
 
